@@ -1,0 +1,75 @@
+"""Histories with known closed forms, shaped like a real one."""
+
+from dataclasses import make_dataclass
+from types import SimpleNamespace
+
+import numpy as np
+import pytest
+
+Landmarks = make_dataclass("Landmarks", [("drag_redshift", float), ("drag_sound_horizon", float)])
+
+AGE_TODAY = 12_000.0  # [Myr] of the matter-dominated universe below; any number would do
+
+
+@pytest.fixture
+def make_history():
+    """Return a function that builds a history from curves of ln a, one per mode.
+
+    Each curve is a pair of functions (value, derivative by ln a).
+    """
+
+    def make(dark, baryon, *, redshift=(9.0, 0.0), start=-9.0, step=0.01, has_dark_matter=True):
+        knots = np.linspace(start, 0.0, round(-start / step) + 1)
+        log_a = -np.log1p(np.asarray(redshift, dtype=float))
+
+        def sampled(curves, part, where):
+            return np.array([curve[part](where) for curve in curves], dtype=float)
+
+        at_redshift = [sampled(dark, 0, log_a), sampled(baryon, 0, log_a)]
+        return SimpleNamespace(
+            scenario=SimpleNamespace(
+                to_mapping=lambda: {"title": "Saltmarsh test"},
+                assumptions=lambda: ("primordial.tilt = 0.965",),
+            ),
+            universe=SimpleNamespace(
+                age=lambda a: AGE_TODAY * a**1.5,  # Einstein-de Sitter
+                landmarks=Landmarks(1060.123456, 147.05),
+            ),
+            wavenumber=np.arange(1.0, len(dark) + 1),
+            redshift=np.asarray(redshift, dtype=float),
+            delta_dark=at_redshift[0],
+            delta_baryon=at_redshift[1],
+            theta_baryon=-at_redshift[1],
+            delta_gas_temperature=at_redshift[1] / 2,
+            has_dark_matter=has_dark_matter,
+            warnings=("a sentence of warning",),
+            constraint=np.full(len(dark), 1.5e-5),
+            trace=SimpleNamespace(
+                log_scale_factor=np.tile(knots, (len(dark), 1)),
+                delta_dark=sampled(dark, 0, knots),
+                delta_dark_slope=sampled(dark, 1, knots),
+                delta_baryon=sampled(baryon, 0, knots),
+                delta_baryon_slope=sampled(baryon, 1, knots),
+            ),
+        )
+
+    return make
+
+
+def power(exponent, factor=1.0):
+    """Curve factor * a^exponent with its derivative."""
+    return (lambda x: factor * np.exp(exponent * x), lambda x: factor * exponent * np.exp(exponent * x))
+
+
+def wave(middle, amplitude, rate, phase):
+    """Curve that oscillates in ln a and rises through its middle at ln a = -phase, with its derivative."""
+    return (
+        lambda x: middle + amplitude * np.sin(rate * (x + phase)),
+        lambda x: amplitude * rate * np.cos(rate * (x + phase)),
+    )
+
+
+@pytest.fixture
+def curves():
+    """Return the curve makers."""
+    return SimpleNamespace(power=power, wave=wave, age_today=AGE_TODAY)

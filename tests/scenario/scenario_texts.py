@@ -1,0 +1,63 @@
+"""One valid scenario with every key on a line of its own, and ways to spoil it."""
+
+import pytest
+
+from twofluid.scenario import ScenarioError, parse_scenario
+
+VALUES = {
+    "title": "Saltmarsh test",
+    "cosmology": "",
+    "cosmology.hubble_constant": "67.5 km/(s Mpc)",
+    "cosmology.baryon_density": "0.0223",
+    "cosmology.dark_matter_density": "0.1195",
+    "cosmology.photon_temperature": "2.7 K",
+    "cosmology.helium_mass_fraction": "0.25",
+    "cosmology.curvature_fraction": "0.01",
+    "cosmology.cosmological_constant_fraction": "0.7",
+    "cosmology.neutrinos": "",
+    "cosmology.neutrinos.effective_number": "3",
+    "cosmology.neutrinos.masses": "[]",
+    "primordial": "",
+    "primordial.amplitude": "2e-9",
+    "primordial.tilt": "0.96",
+    "primordial.pivot": "0.002 1/Mpc",
+    "sampling": "",
+    "sampling.wavenumbers": "",
+    "sampling.wavenumbers.from": "0.01 1/Mpc",
+    "sampling.wavenumbers.to": "100 1/Mpc",
+    "sampling.wavenumbers.per_decade": "5",
+    "sampling.redshifts": "[1000, 100, 10]",
+    "products": "",
+    "products.lag": "",
+    "products.lag.fractions": "[0.5, 0.9]",
+}
+
+
+def full_text(changes=None, names=None):
+    """Write the scenario, some values or names changed; a value of None leaves the line out."""
+    changes, names = changes or {}, names or {}
+    lines = []
+    for path, value in VALUES.items():
+        spoilt = changes.get(path, value)
+        if spoilt is not None:
+            name = names.get(path, path.rpartition(".")[2])
+            lines.append(f"{'  ' * path.count('.')}{name}: {spoilt}")
+    return "\n".join(lines) + "\n"
+
+
+def wavenumber_text(value):
+    """Write the scenario with other wavenumbers, on one line."""
+    parts = dict.fromkeys(path for path in VALUES if path.startswith("sampling.wavenumbers."))
+    return full_text({"sampling.wavenumbers": value, **parts})
+
+
+def line_of(path):
+    """Return the line of a key, counted from 1."""
+    return list(VALUES).index(path) + 1
+
+
+def refusal(text, name="box.yaml"):
+    """Return the error that the text causes."""
+    with pytest.raises(ScenarioError) as caught:
+        parse_scenario(text, name=name)
+    return caught.value

@@ -1,0 +1,191 @@
+"""The command line: parse, call, report."""
+
+from __future__ import annotations
+
+import argparse
+import io
+import os
+import sys
+from pathlib import Path
+
+STATUS_FAILED = 1  # the input was good, but solving or writing failed
+STATUS_REFUSED = 2  # the request was refused: nothing was solved, nothing was written
+STATUS_INTERRUPTED = 130  # what shells report for a program ended by Ctrl-C
+
+DESCRIPTION = "Baryons and dark matter as coupled linear fluids, from the radiation era to today."
+EPILOG = (
+    "Exit status: 0 done; 1 solving or writing failed; 2 the request was refused, nothing solved and nothing "
+    "written; 130 interrupted. A file stands in the output directory complete or not at all."
+)
+
+
+class RequestError(ValueError):
+    """A request that cannot be served; the text is the sentence for the user."""
+
+
+def main(arguments=None):
+    """Run the program.
+
+    Parameters
+    ----------
+    arguments : list of str, optional
+        Command line without the program's name; that of the process by default.
+
+    Returns
+    -------
+    int
+        Exit status: 0 done, 1 solving or writing failed, 2 refused, 130 interrupted.
+    """
+    for stream in (sys.stdout, sys.stderr):
+        if isinstance(stream, io.TextIOWrapper):
+            # A title must not break a terminal that lacks its letters.
+            stream.reconfigure(errors="backslashreplace")
+    options = _parser().parse_args(arguments)
+    try:
+        return options.command(options)
+    except KeyboardInterrupt:
+        print("\ntwofluid: interrupted; no file is half-written", file=sys.stderr)
+        return STATUS_INTERRUPTED
+
+
+def _parser():
+    from twofluid import __version__
+
+    words = {"epilog": EPILOG, "allow_abbrev": False}
+    parser = argparse.ArgumentParser(prog="twofluid", description=DESCRIPTION, **words)
+    parser.add_argument("--version", action="version", version=f"twofluid {__version__}")
+    commands = parser.add_subparsers(title="commands", required=True, metavar="COMMAND")
+
+    check = commands.add_parser("check", help="read a scenario, print its universe's landmarks", **words)
+    check.add_argument("file", metavar="FILE", help="scenario file (YAML)")
+    check.set_defaults(command=_check)
+
+    run = commands.add_parser("run", help="solve scenarios and write tables and figures", **words)
+    run.add_argument("files", metavar="FILE", nargs="+", help="scenario file (YAML)")
+    run.add_argument("--out", metavar="DIR", type=Path, required=True,
+                     help="output directory; with several files each gets a directory of its name in it")
+    run.add_argument("--overwrite", action="store_true", help="replace files of an earlier run")
+    run.set_defaults(command=_run)
+
+    template = commands.add_parser("template", help="print a scenario with every key explained", **words)
+    template.set_defaults(command=_template)
+    return parser
+
+
+def _template(options):
+    from twofluid.scenario import scenario_template
+
+    _say(scenario_template())
+    return 0
+
+
+def _check(options):
+    from twofluid.report import check_lines
+
+    try:
+        scenario, universe = _prepare(options.file)
+    except RequestError as error:
+        return _complain(error, STATUS_REFUSED)
+    _say("\n".join(check_lines(scenario, universe)))
+    return 0
+
+
+def _run(options):
+    from twofluid.solver import SolverFailure
+
+    try:
+        # Everything that can be refused is refused before the first equation is solved.
+        scenarios = [_prepare(file)[0] for file in options.files]
+        directories = _directories(options.files, options.out)
+        for scenario, directory in zip(scenarios, directories, strict=True):
+            _check_outputs(scenario, directory, options.overwrite)
+    except RequestError as error:
+        return _complain(error, STATUS_REFUSED)
+    for file, scenario, directory in zip(options.files, scenarios, directories, strict=True):
+        try:
+            _solve_and_write(scenario, directory)
+        except SolverFailure as failure:
+            return _complain(f"{file}: {failure}", STATUS_FAILED)
+        except OSError as error:
+            place, reason = error.filename or directory, error.strerror or error
+            return _complain(f"cannot write {place}: {reason}", STATUS_FAILED)
+    return 0
+
+
+def _prepare(file):
+    """Read a scenario and build its universe, landmarks and all."""
+    from twofluid import read_scenario
+    from twofluid.scenario import ScenarioError
+    from twofluid.universe import Universe, UniverseError
+
+    try:
+        scenario = read_scenario(file)
+    except ScenarioError as error:
+        raise RequestError(str(error)) from error
+    try:
+        universe = Universe(scenario.cosmology)
+        _ = universe.landmarks  # a universe without them is refused now
+    except UniverseError as error:
+        raise RequestError(f"{file}: {error}") from error
+    return scenario, universe
+
+
+def _directories(files, out):
+    """Return the directory of each scenario's output."""
+    if len(files) == 1:
+        return [out]
+    stems = [Path(file).stem for file in files]
+    for number, stem in enumerate(stems):
+        if stem in stems[:number]:
+            both = f"{files[stems.index(stem)]} and {files[number]}"
+            raise RequestError(f"{both} would both write to {out / stem}; rename one, or run them apart")
+    return [out / stem for stem in stems]
+
+
+def _check_outputs(scenario, directory, overwrite):
+    from twofluid.registry import output_names
+
+    try:
+        names = output_names(scenario)
+    except ValueError as error:
+        raise RequestError(f"{scenario.source}: {error}") from error
+    nearest = next(path for path in (directory, *directory.absolute().parents) if path.exists())
+    if not nearest.is_dir():
+        raise RequestError(f"--out: {nearest} is not a directory")
+    if not os.access(nearest, os.W_OK | os.X_OK):
+        raise RequestError(f"--out: no permission to write in {nearest}")
+    present = [name for name in names if (directory / name).exists()]
+    if present and not overwrite:
+        names = ", ".join(present)
+        raise RequestError(f"--out: {directory} already holds {names}; add --overwrite to replace them")
+
+
+def _solve_and_write(scenario, directory):
+    from twofluid import evolve
+    from twofluid.files import write_file
+    from twofluid.registry import make_outputs, output_names
+    from twofluid.report import progress_bar, run_lines
+
+    history = evolve(scenario, progress=progress_bar(sys.stderr))
+    outputs, summary = make_outputs(history)
+    directory.mkdir(parents=True, exist_ok=True)
+    for name, content in outputs.items():
+        write_file(directory / name, content)
+    for name in set(output_names(scenario)) - set(outputs):
+        (directory / name).unlink(missing_ok=True)  # a figure of an earlier run that this one does not draw
+    for warning in history.warnings:
+        print(f"twofluid: warning: {warning}", file=sys.stderr)
+    _say("\n".join([*run_lines(history), *summary, f"  written to {directory}: {', '.join(outputs)}"]))
+
+
+def _say(text):
+    """Print; a reader who has gone away (`| head`) does not stop the work."""
+    try:
+        print(text.rstrip("\n"), flush=True)
+    except BrokenPipeError:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+
+
+def _complain(message, status):
+    print(f"twofluid: error: {message}", file=sys.stderr)
+    return status

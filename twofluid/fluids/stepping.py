@@ -1,0 +1,134 @@
+"""How densely the clock of each mode has to tick, read off the universe at hand.
+
+Three things ask for steps: the smooth course of the background, the rapid change of the scattering
+rate while the plasma recombines, and the acoustic oscillation of the mode for as long as it
+matters. Once it no longer does it is left unresolved and the method damps it. It matters while
+
+* diffusion has not yet damped it, (k / k_D)^2 < `Stepping.diffusion_exponent`, and
+* photons still push baryons, r kappa' > `Stepping.drag_ratio` times the expansion rate, and
+* its gravity is felt, k tau < `Stepping.felt_phase` / sqrt(dark-matter fraction), or diffusion
+  will not have damped it when the baryons are released. Without dark matter there is no such bound.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ..solver import Clock, lay_out
+from ..universe import Universe
+
+NODES_PER_UNIT = 60  # nodes of the density per unit of log conformal time
+
+
+@dataclass(frozen=True)
+class Stepping:
+    """Step settings.
+
+    Attributes
+    ----------
+    smooth_step : float
+        Longest step in ln a where nothing else asks for steps [unitless].
+    scattering_change : float
+        Largest change of the logarithm of the scattering rate, beyond the a^-2 of dilution, in a step [unitless].
+    phase_step : float
+        Largest k dtau while the oscillation matters [unitless].
+    diffusion_exponent : float
+        (k / k_D)^2 at which an oscillation counts as damped [unitless].
+    felt_phase : float
+        k tau up to which an oscillation that will be damped is resolved for its gravity, for dark
+        matter alone [unitless].
+    drag_ratio : float
+        Photon drag on baryons over expansion rate below which the gas counts as free [unitless].
+    """
+
+    smooth_step: float
+    scattering_change: float
+    phase_step: float
+    diffusion_exponent: float
+    felt_phase: float
+    drag_ratio: float = 1e-3
+
+
+def clock(
+    universe: Universe, wavenumber: np.ndarray, start: np.ndarray, marks: np.ndarray, stepping: Stepping
+) -> Clock:
+    """Lay out the clock of every mode in log conformal time.
+
+    Parameters
+    ----------
+    universe : Universe
+    wavenumber : array, shape (mode,)
+        Comoving wavenumbers [1/Mpc].
+    start : array, shape (mode,)
+        Conformal time of each start [Mpc].
+    marks : array, shape (mark,)
+        Increasing conformal times to be met exactly, the last one is the end [Mpc].
+    stepping : Stepping
+
+    Returns
+    -------
+    Clock
+        Boundaries in log conformal time.
+    """
+    first, last = np.log(start.min()), np.log(marks[-1])
+    grid = np.linspace(first, last, 2 + int(NODES_PER_UNIT * (last - first)))
+    time = np.exp(grid)
+    time[-1] = marks[-1]
+    density = step_density(universe, wavenumber, time, stepping)
+    return lay_out(grid, density, np.log(start), np.log(marks))
+
+
+def step_density(universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping) -> np.ndarray:
+    """Steps wanted per unit of log conformal time.
+
+    Parameters
+    ----------
+    universe : Universe
+    wavenumber : array, shape (mode,)
+        Comoving wavenumbers [1/Mpc].
+    time : array, shape (node,)
+        Increasing conformal times [Mpc].
+    stepping : Stepping
+
+    Returns
+    -------
+    array, shape (mode, node)
+    """
+    now = universe.conditions(time)
+    per_expansion = now.hubble_rate * time  # d ln a / d ln tau
+    log_scattering = np.log(now.scattering_rate * now.scale_factor**2)
+    change = np.abs(np.gradient(log_scattering, np.log(time)))
+    smooth = per_expansion / stepping.smooth_step + change / stepping.scattering_change
+    phase = wavenumber[:, None] * time
+    oscillation = phase / stepping.phase_step
+    matters = oscillation_matters(universe, wavenumber, time, stepping)
+    return np.where(matters, np.hypot(smooth, oscillation), smooth)
+
+
+def oscillation_matters(
+    universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping
+) -> np.ndarray:
+    """Whether the acoustic oscillation of a mode still has to be resolved; see the module's text.
+
+    Parameters
+    ----------
+    universe : Universe
+    wavenumber : array, shape (mode,)
+        Comoving wavenumbers [1/Mpc].
+    time : array, shape (node,)
+        Increasing conformal times [Mpc].
+    stepping : Stepping
+
+    Returns
+    -------
+    array of bool, shape (mode, node)
+    """
+    now = universe.conditions(time)
+    pushed = now.photon_baryon_ratio * now.scattering_rate > stepping.drag_ratio * now.hubble_rate
+    exponent = (wavenumber[:, None] / universe.diffusion_wavenumber(now.scale_factor)) ** 2
+    alive = exponent < stepping.diffusion_exponent
+    at_release = exponent[:, np.flatnonzero(pushed)[-1]] if pushed.any() else exponent[:, 0]
+    survives = at_release < stepping.diffusion_exponent
+    dark_fraction = now.gravity_dark[0] / (now.gravity_dark[0] + now.gravity_baryon[0])
+    felt = wavenumber[:, None] * time * np.sqrt(dark_fraction) < stepping.felt_phase
+    return alive & pushed & (felt | survives[:, None])

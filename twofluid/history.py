@@ -1,0 +1,213 @@
+"""The result of a run: amplitudes on (mode, redshift) axes, interpolation, saving and loading."""
+
+from dataclasses import dataclass, field, fields
+from pathlib import Path
+
+import numpy as np
+
+from .files import replace_atomically
+from .scenario import Scenario, scenario_from_mapping
+from .universe import Universe
+
+#: Quantities a history carries, in the order of their columns.
+EVOLVED = ("delta_dark", "delta_baryon", "theta_baryon", "delta_gas_temperature")
+
+_FORMAT = 1  # raised whenever a saved history changes its layout
+
+
+@dataclass(frozen=True)
+class Trace:
+    """Every step of every mode, on the mode's own clock.
+
+    Attributes
+    ----------
+    log_scale_factor : array, shape (mode, step)
+        ln a, non-decreasing; a mode with fewer steps than others repeats its end, a = 1 [unitless].
+    delta_dark, delta_baryon, theta_baryon, delta_gas_temperature : array, shape (mode, step)
+        As in `History`.
+    delta_dark_slope, delta_baryon_slope, theta_baryon_slope, delta_gas_temperature_slope : array, shape (mode, step)
+        Their derivatives by ln a, in the unit of the quantity.
+    """
+
+    log_scale_factor: np.ndarray
+    delta_dark: np.ndarray
+    delta_baryon: np.ndarray
+    theta_baryon: np.ndarray
+    delta_gas_temperature: np.ndarray
+    delta_dark_slope: np.ndarray
+    delta_baryon_slope: np.ndarray
+    theta_baryon_slope: np.ndarray
+    delta_gas_temperature_slope: np.ndarray
+
+
+@dataclass(frozen=True)
+class History:
+    """What became of each mode.
+
+    Synchronous frame at rest with the dark matter; unit primordial comoving curvature; signs such
+    that densities grow positive.
+
+    Attributes
+    ----------
+    scenario : Scenario
+        What was asked.
+    universe : Universe
+        The smooth universe of the scenario.
+    wavenumber : array, shape (mode,)
+        Comoving wavenumbers as asked [1/Mpc].
+    redshift : array, shape (redshift,)
+        Redshifts as asked [unitless].
+    delta_dark, delta_baryon : array, shape (mode, redshift)
+        Density contrasts [unitless]. Without dark matter, `delta_dark` is that of the massless dust
+        that carries the frame.
+    theta_baryon : array, shape (mode, redshift)
+        Velocity divergence of the baryons, by conformal time [1/Mpc].
+    delta_gas_temperature : array, shape (mode, redshift)
+        Relative contrast of the gas temperature [unitless].
+    trace : Trace
+        Every step taken.
+    constraint : array, shape (mode,)
+        Drift of the Einstein energy constraint, summed over the run, relative to its largest term [unitless].
+    counts : dict of str to int
+        What the run cost: "steps" over all modes, "lanes" with padding, "factorizations", "rate_evaluations".
+    warnings : tuple of str
+        What the user has to know about this run.
+    """
+
+    scenario: Scenario
+    universe: Universe
+    wavenumber: np.ndarray
+    redshift: np.ndarray
+    delta_dark: np.ndarray
+    delta_baryon: np.ndarray
+    theta_baryon: np.ndarray
+    delta_gas_temperature: np.ndarray
+    trace: Trace
+    constraint: np.ndarray
+    counts: dict[str, int]
+    warnings: tuple[str, ...] = field(default=())
+
+    @property
+    def has_dark_matter(self) -> bool:
+        """Whether there is any dark matter for baryons to lag."""
+        return self.scenario.cosmology.dark_matter_density > 0.0
+
+    def at(self, name: str, redshift, wavenumber=None) -> np.ndarray:
+        """Interpolate a quantity to other redshifts and wavenumbers.
+
+        Cubic Hermite interpolation in ln a over the steps taken; cubic spline in ln k over the modes.
+
+        Parameters
+        ----------
+        name : str
+            One of `EVOLVED`.
+        redshift : float or array, shape (redshift,)
+            Redshifts [unitless].
+        wavenumber : float or array, shape (mode,), optional
+            Wavenumbers within the range of the run [1/Mpc]; the run's own if left out.
+
+        Returns
+        -------
+        array, shape (mode, redshift)
+
+        Raises
+        ------
+        ValueError
+            If the name is unknown, or a redshift or wavenumber lies outside the run.
+        """
+        if name not in EVOLVED:
+            raise ValueError(f"no quantity is named {name!r}: choose one of {', '.join(EVOLVED)}")
+        log_a = -np.log1p(np.atleast_1d(np.asarray(redshift, dtype=float)))
+        values = _hermite(
+            self.trace.log_scale_factor, getattr(self.trace, name), getattr(self.trace, name + "_slope"), log_a
+        )
+        return values if wavenumber is None else self._at_wavenumber(values, wavenumber)
+
+    def _at_wavenumber(self, values: np.ndarray, wavenumber) -> np.ndarray:
+        from scipy.interpolate import CubicSpline
+
+        asked = np.atleast_1d(np.asarray(wavenumber, dtype=float))
+        known, first = np.unique(self.wavenumber, return_index=True)
+        if len(known) < 2:
+            raise ValueError("interpolation in wavenumber needs a run of at least two wavenumbers")
+        if not np.all((asked >= known[0]) & (asked <= known[-1])):
+            raise ValueError(f"wavenumbers must lie within the run, {known[0]:g} to {known[-1]:g} 1/Mpc")
+        return CubicSpline(np.log(known), values[first])(np.log(asked))
+
+    def save(self, path) -> None:
+        """Save everything without loss to a NumPy archive; an existing file is replaced in one move.
+
+        Parameters
+        ----------
+        path : str or path
+            File to write.
+        """
+        import yaml
+
+        mine = ("delta_dark", "delta_baryon", "theta_baryon", "delta_gas_temperature", "wavenumber", "redshift", "constraint")
+        arrays = {name: getattr(self, name) for name in mine}
+        arrays |= {f"trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
+        words = {
+            "format": _FORMAT,
+            "scenario": self.scenario.to_mapping(),
+            "assumed": list(self.scenario.assumed),
+            "counts": self.counts,
+            "warnings": list(self.warnings),
+        }
+        with replace_atomically(path) as stream:
+            np.savez_compressed(stream, words=np.array(yaml.safe_dump(words)), **arrays)
+
+
+def load_history(path) -> History:
+    """Load a history saved by `History.save`.
+
+    Parameters
+    ----------
+    path : str or path
+
+    Returns
+    -------
+    History
+
+    Raises
+    ------
+    ValueError
+        If the file is not a saved history of this version's layout.
+    """
+    from dataclasses import replace
+
+    import yaml
+
+    try:
+        with np.load(Path(path), allow_pickle=False) as archive:
+            arrays = {name: archive[name] for name in archive.files}
+        words = yaml.safe_load(str(arrays.pop("words")))
+    except (ValueError, KeyError) as problem:
+        raise ValueError(f"{path} is not a saved history: {problem}") from None
+    if words["format"] != _FORMAT:
+        raise ValueError(f"{path} has layout {words['format']}, this version reads layout {_FORMAT}: run it again")
+    scenario = replace(scenario_from_mapping(words["scenario"]), assumed=tuple(words["assumed"]))
+    trace = Trace(**{part.name: arrays.pop(f"trace_{part.name}") for part in fields(Trace)})
+    return History(
+        scenario=scenario,
+        universe=Universe(scenario.cosmology),
+        trace=trace,
+        counts=words["counts"],
+        warnings=tuple(words["warnings"]),
+        **arrays,
+    )
+
+
+def _hermite(log_a: np.ndarray, values: np.ndarray, slopes: np.ndarray, asked: np.ndarray) -> np.ndarray:
+    """Cubic Hermite interpolation of every mode at the same log scale factors, shape (mode, asked)."""
+    if not np.all((asked >= log_a[:, 0].max()) & (asked <= 0.0)):
+        raise ValueError(f"redshifts must lie within the run, 0 to {np.expm1(-log_a[:, 0].max()):.6g}")
+    steps = log_a.shape[1]
+    right = np.stack([np.searchsorted(row, asked) for row in log_a]).clip(1, steps - 1)
+    rows = np.arange(len(log_a))[:, None]
+    left = right - 1
+    width = log_a[rows, right] - log_a[rows, left]
+    t = np.divide(asked - log_a[rows, left], width, out=np.zeros(width.shape), where=width > 0.0)
+    rise = values[rows, right] - values[rows, left]
+    start, end = slopes[rows, left] * width - rise, rise - slopes[rows, right] * width
+    return values[rows, left] + t * rise + t * (1.0 - t) * ((1.0 - t) * start + t * end)

@@ -1,0 +1,128 @@
+"""How every table is put together: described columns, and a header that says where it came from."""
+
+from __future__ import annotations
+
+from dataclasses import asdict
+
+import numpy as np
+
+from twofluid.quantities import QUANTITIES
+
+CLOSURE = "kinetic"  # photons and neutrinos by their full chains of moments
+FRAME = (
+    "synchronous, at rest with the dark matter (without dark matter: carried by massless dust); "
+    "amplitudes per unit comoving curvature, signed so that densities grow positive"
+)
+NO_DARK_MATTER = "this universe has no dark matter; whatever is measured against it is empty"
+LANDMARK_DIGITS = 6  # significant, of a landmark in a header; the physics behind is good to four or five
+
+
+def column(name, values, *, masked=None, describe_as=None, **words):
+    """Return one described column.
+
+    Parameters
+    ----------
+    name : str
+        Name of the column.
+    values : array, shape (row,)
+        Its entries.
+    masked : array of bool, shape (row,), optional
+        Entries to leave empty. Without it the column holds every entry.
+    describe_as : str, optional
+        Entry of `QUANTITIES` to describe it by, if that is not `name`.
+    **words : str
+        Words to put in place of others in the description, e.g. ``N="50"``.
+
+    Returns
+    -------
+    astropy.table.Column or astropy.table.MaskedColumn
+        With unit and description.
+    """
+    from astropy.table import Column, MaskedColumn
+
+    quantity = QUANTITIES[describe_as or name]
+    meaning = " ".join(words.get(word, word) for word in quantity.meaning.split(" "))
+    labels = {"name": name, "unit": quantity.unit or None, "description": meaning}
+    values = np.asarray(values, dtype=float)
+    if masked is None:
+        return Column(values, **labels)
+    # What lies under the mask is set to NaN, so that nobody who drops the mask reads a number.
+    return MaskedColumn(np.where(masked, np.nan, values), mask=masked, **labels)
+
+
+def sample_columns(history):
+    """Return the wavenumber and redshift columns: one row per mode and redshift, redshift running fastest.
+
+    Parameters
+    ----------
+    history : History
+        The run.
+
+    Returns
+    -------
+    list of astropy.table.Column
+        Wavenumber [1/Mpc] and redshift [unitless], shape (mode x redshift,).
+    """
+    modes, redshifts = history.delta_baryon.shape
+    return [
+        column("wavenumber", np.repeat(history.wavenumber, redshifts)),
+        column("redshift", np.tile(history.redshift, modes)),
+    ]
+
+
+def make_table(history, columns, **extra):
+    """Return a table of these columns whose header holds the whole provenance.
+
+    Parameters
+    ----------
+    history : History
+        The run the columns were computed from.
+    columns : list of astropy.table.Column
+        The columns.
+    **extra
+        Further header entries, in plain Python types.
+
+    Returns
+    -------
+    astropy.table.Table
+        The table.
+    """
+    from astropy.table import Table
+
+    return Table(columns, meta=header(history) | extra)
+
+
+def header(history):
+    """Return the provenance of a run as a plain mapping that YAML can hold.
+
+    Parameters
+    ----------
+    history : History
+        The run.
+
+    Returns
+    -------
+    dict
+        Program and version, scenario, what was assumed, closure, frame, landmarks, accuracy, warnings.
+    """
+    from twofluid import __version__
+
+    landmarks = asdict(history.universe.landmarks)
+    provenance = {
+        "program": f"twofluid {__version__}",
+        "scenario": history.scenario.to_mapping(),
+        "assumed": list(history.scenario.assumptions()),
+        "closure": CLOSURE,
+        "frame": FRAME,
+        "landmarks": {name: _rounded(name, value) for name, value in landmarks.items()},
+        "accuracy": f"energy constraint held to {np.max(history.constraint):.1e} of its largest term",
+        "warnings": list(history.warnings),
+    }
+    if not history.has_dark_matter:
+        provenance["no_dark_matter"] = NO_DARK_MATTER
+    return provenance
+
+
+def _rounded(name, value):
+    text, unit = f"{value:.{LANDMARK_DIGITS}g}", QUANTITIES[name].unit
+    return f"{text} {unit}" if unit else float(text)

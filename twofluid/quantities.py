@@ -1,0 +1,95 @@
+"""One nomenclature: every quantity of every table, with its symbol, unit and meaning.
+
+Table columns, axis labels, the terminal report and the documentation all read this table, so a
+quantity is described in one place only.
+"""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True)
+class Quantity:
+    """One named quantity.
+
+    Attributes
+    ----------
+    name : str
+        Name in code and in table headers.
+    symbol : str
+        Symbol as mathtext, without the dollar signs.
+    unit : str
+        Unit as read by astropy.units; empty for none.
+    meaning : str
+        What it is, and what an empty or infinite entry says where a table can hold one.
+    """
+
+    name: str
+    symbol: str
+    unit: str
+    meaning: str
+
+    @property
+    def plain_symbol(self) -> str:
+        """The symbol for a terminal: mathtext commands and braces dropped."""
+        return re.sub(r"\\mathrm|[\\{}]", "", self.symbol)
+
+
+_AXES = (
+    Quantity("wavenumber", "k", "1/Mpc", "comoving wavenumber"),
+    Quantity("redshift", "z", "", "redshift"),
+)
+
+_AMPLITUDES = (
+    Quantity("delta_dark", r"\delta_\mathrm{c}", "",
+             "dark-matter density contrast per unit comoving curvature; empty: no dark matter"),
+    Quantity("delta_baryon", r"\delta_\mathrm{b}", "", "baryon density contrast per unit comoving curvature"),
+    Quantity("theta_baryon", r"\theta_\mathrm{b}", "1/Mpc",
+             "divergence of the baryon velocity (conformal time) per unit comoving curvature"),
+    Quantity("delta_gas_temperature", r"\delta_T", "",
+             "relative contrast of the gas temperature per unit comoving curvature"),
+)
+
+_LAG = (
+    Quantity("ratio", r"\delta_\mathrm{b}/\delta_\mathrm{c}", "",
+             "baryon over dark-matter density contrast; empty: no dark matter"),
+    Quantity("delay", r"\Delta t", "Myr",
+             "time since the dark matter last had the amplitude the baryons have at this redshift; "
+             "empty: it never had it, or the baryons are not behind"),
+    Quantity("redshift_at_N_percent", r"z_N", "",
+             "redshift at which the ratio last rises through N per cent; empty: never by today; "
+             "inf: not below it at any time since the start of the run"),
+    Quantity("ratio_today", r"(\delta_\mathrm{b}/\delta_\mathrm{c})_0", "",
+             "baryon over dark-matter density contrast at redshift 0; empty: no dark matter"),
+)
+
+_LANDMARKS = (
+    Quantity("equality_redshift", r"z_\mathrm{eq}", "", "matter and radiation have equal density"),
+    Quantity("equality_wavenumber", r"k_\mathrm{eq}", "1/Mpc", "conformal expansion rate at equality"),
+    Quantity("last_scattering_redshift", r"z_*", "", "photon optical depth from today is one"),
+    Quantity("last_scattering_sound_horizon", r"r_*", "Mpc", "comoving sound horizon at last scattering"),
+    Quantity("last_scattering_age", r"t_*", "Myr", "age of the universe at last scattering"),
+    Quantity("drag_redshift", r"z_\mathrm{drag}", "", "baryon drag depth from today is one"),
+    Quantity("drag_sound_horizon", r"r_\mathrm{drag}", "Mpc", "comoving sound horizon at the drag epoch"),
+    Quantity("diffusion_wavenumber", r"k_\mathrm{D}", "1/Mpc", "photon diffusion scale at last scattering"),
+    Quantity("thermal_decoupling_redshift", r"z_T", "", "Compton heating of the gas falls below expansion"),
+    Quantity("age_today", r"t_0", "Gyr", "age of the universe today"),
+    Quantity("conformal_age", r"\tau_0", "Mpc", "conformal time today"),
+)
+
+QUANTITIES = {quantity.name: quantity for quantity in (*_AXES, *_AMPLITUDES, *_LAG, *_LANDMARKS)}
+
+
+def nomenclature_markdown() -> str:
+    """Return the nomenclature as a Markdown table, one row a quantity.
+
+    Returns
+    -------
+    str
+        The table with its header row, ending in a newline.
+    """
+    rows = ["| name | symbol | unit | meaning |", "| --- | --- | --- | --- |"]
+    rows += [f"| `{q.name}` | ${q.symbol}$ | {q.unit or '-'} | {q.meaning} |" for q in QUANTITIES.values()]
+    return "\n".join(rows) + "\n"

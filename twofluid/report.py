@@ -1,0 +1,191 @@
+"""What the terminal shows: landmarks, a short summary of each product, progress."""
+
+from __future__ import annotations
+
+from dataclasses import asdict
+
+import numpy as np
+
+from twofluid.quantities import QUANTITIES
+
+SCALES_SHOWN = 5  # wavenumbers in a summary
+COLUMNS_SHOWN = 6  # redshifts or fractions in a summary
+BAR_LENGTH = 40  # of the progress bar [characters]
+LANDMARKS_IN_SUMMARY = (
+    "last_scattering_redshift",
+    "drag_redshift",
+    "drag_sound_horizon",
+    "thermal_decoupling_redshift",
+)
+
+
+def aligned(rows, gap="  "):
+    """Return lines in which the cells of each column start at the same place.
+
+    Parameters
+    ----------
+    rows : list of tuple of str
+        Rows of equal length.
+    gap : str
+        What stands between two columns.
+
+    Returns
+    -------
+    list of str
+        One line a row.
+    """
+    widths = [max(map(len, cells)) for cells in zip(*rows, strict=True)]
+    padded = [[cell.ljust(width) for cell, width in zip(row, widths, strict=True)] for row in rows]
+    return [gap.join(cells).rstrip() for cells in padded]
+
+
+def landmark_lines(landmarks):
+    """Return the landmarks of a universe: name, symbol, value with unit, meaning.
+
+    Parameters
+    ----------
+    landmarks : Landmarks
+        The landmarks.
+
+    Returns
+    -------
+    list of str
+        One line a landmark.
+    """
+    rows = []
+    for name, value in asdict(landmarks).items():
+        quantity = QUANTITIES[name]
+        rows.append((name, quantity.plain_symbol, f"{value:.6g}", quantity.unit, quantity.meaning))
+    return aligned(rows)
+
+
+def check_lines(scenario, universe):
+    """Return what `check` prints: what is asked, what was assumed, the landmarks.
+
+    Parameters
+    ----------
+    scenario : Scenario
+        The request.
+    universe : Universe
+        Its smooth universe.
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    assumed = scenario.assumptions()
+    return [
+        scenario.title,
+        f"  asks for  {_request(scenario)}; {', '.join(scenario.products) or 'no products'}",
+        *(f"  {'assumes' if number == 0 else '':7}   {text}" for number, text in enumerate(assumed)),
+        "",
+        *(f"  {line}" for line in landmark_lines(universe.landmarks)),
+    ]
+
+
+def run_lines(history):
+    """Return the head of the summary of a run: what was solved, in which universe.
+
+    Parameters
+    ----------
+    history : History
+        The run.
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    landmarks = asdict(history.universe.landmarks)
+    marks = [
+        f"{QUANTITIES[name].plain_symbol} = {landmarks[name]:.6g} {QUANTITIES[name].unit}".rstrip()
+        for name in LANDMARKS_IN_SUMMARY
+    ]
+    return [history.scenario.title, f"  {_request(history.scenario)}", f"  {', '.join(marks)}"]
+
+
+def lag_lines(tables):
+    """Return the summary of the lag: ratio and redshift of catching up at a few scales.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        The tables of the product, under "lag" and "catchup".
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    lag, catchup = tables["lag"], tables["catchup"]
+    if np.all(np.ma.getmaskarray(np.ma.asarray(lag["ratio"]))):
+        return [f"  lag: {lag.meta['no_dark_matter']}"]
+    modes = _few(len(catchup), SCALES_SHOWN)
+    wavenumbers = [f"{catchup['wavenumber'][mode]:.4g}" for mode in modes]
+    redshifts = np.asarray(lag["redshift"]).reshape(len(catchup), -1)[0]
+    ratio = np.ma.asarray(lag["ratio"]).reshape(len(catchup), -1)
+    unit = QUANTITIES["wavenumber"].unit
+    shown = _few(len(redshifts), COLUMNS_SHOWN)
+    ratio_rows = [("  ratio", *(f"z = {redshifts[i]:g}" for i in shown))]
+    ratio_rows += [
+        (f"    k = {k} {unit}", *(f"{ratio[mode, i]:.4f}" for i in shown))
+        for k, mode in zip(wavenumbers, modes, strict=True)
+    ]
+    fractions = list(catchup.meta["fractions"].items())
+    fractions = [fractions[i] for i in _few(len(fractions), COLUMNS_SHOWN)]
+    catchup_rows = [("  caught up at redshift", *(f"{100 * fraction:g} %" for _, fraction in fractions))]
+    catchup_rows += [
+        (f"    k = {k} {unit}", *(_redshift_text(catchup[name][mode]) for name, _ in fractions))
+        for k, mode in zip(wavenumbers, modes, strict=True)
+    ]
+    return aligned(ratio_rows) + aligned(catchup_rows)
+
+
+def progress_bar(stream):
+    """Return a function that shows progress on a terminal, or None if the stream is none.
+
+    Parameters
+    ----------
+    stream : text stream
+        Where to draw.
+
+    Returns
+    -------
+    callable or None
+        Function (done, total); draws over itself and wipes itself out when all is done.
+    """
+    if not stream.isatty():
+        return None
+
+    def show(done, total):
+        filled = BAR_LENGTH * done // total
+        bar = f"\r[{'=' * filled}{' ' * (BAR_LENGTH - filled)}] {100 * done // total:3d} %"
+        stream.write(bar if done < total else "\r" + " " * len(bar) + "\r")
+        stream.flush()
+
+    return show
+
+
+def _request(scenario):
+    wavenumbers, redshifts = scenario.sampling.wavenumbers, scenario.sampling.redshifts
+    return (
+        f"{_counted(len(wavenumbers), 'wavenumber')} "
+        f"from {min(wavenumbers):g} to {max(wavenumbers):g} {QUANTITIES['wavenumber'].unit}, "
+        f"{_counted(len(redshifts), 'redshift')} from {max(redshifts):g} to {min(redshifts):g}"
+    )
+
+
+def _counted(number, noun):
+    return f"{number} {noun}{'' if number == 1 else 's'}"
+
+
+def _few(count, most):
+    """Return indices of at most `most` entries, spread over all, first and last among them."""
+    return sorted(set(np.linspace(0, count - 1, min(count, most)).round().astype(int).tolist()))
+
+
+def _redshift_text(value):
+    if np.ma.is_masked(value):
+        return "never"
+    return f"{value:.5g}" if np.isfinite(value) else "always"

@@ -1,0 +1,199 @@
+"""The table of keys: everything a scenario file may say, in one place.
+
+Reading, error messages, defaults of the dataclasses, the commented template and the key table of the
+manual all come from here. A new key is one row in `KEYS` and one field of a dataclass; a new product
+option is one row; a product without options is one row in `SECTIONS`.
+"""
+
+from dataclasses import dataclass
+from enum import Enum
+from typing import Any
+
+WAVENUMBER_UNIT = "1/Mpc"
+MOST_WAVENUMBERS = 100_000  # longest list of modes; keeps a slip of the pen from filling the memory
+MOST_REDSHIFTS = 1_000  # longest list of redshifts; the same reason
+MOST_FRACTIONS = 100  # longest list of fractions of one product; the same reason
+
+
+def section_of(path):
+    """Return the dotted path of the section that holds a key, empty at the top."""
+    return path.rpartition(".")[0]
+
+
+def name_of(path):
+    """Return the last name of a dotted path, as it is written in a file."""
+    return path.rpartition(".")[2]
+
+
+class Kind(Enum):
+    """What sort of value a key takes; the text is what a reader of the manual sees."""
+
+    TEXT = "text"
+    NUMBER = "number"
+    QUANTITY = "number with unit"
+    NUMBERS = "list of numbers"
+    QUANTITIES = "list of numbers with unit"
+    WAVENUMBERS = "range, or list of numbers with unit"
+
+
+@dataclass(frozen=True)
+class Allowed:
+    """An interval of allowed values, in the unit of its key."""
+
+    low: float
+    high: float
+    low_open: bool = False
+    high_open: bool = False
+
+    def __str__(self):
+        if not (self.low_open or self.high_open):
+            return f"from {self.low:g} to {self.high:g}"
+        low = "above" if self.low_open else "at least"
+        high = "below" if self.high_open else "at most"
+        return f"{low} {self.low:g} and {high} {self.high:g}"
+
+
+@dataclass(frozen=True)
+class Key:
+    """One row of the table.
+
+    Parameters
+    ----------
+    path : str
+        Dotted key.
+    kind : Kind
+        What sort of value it takes.
+    meaning : str
+        One line for the manual.
+    unit : str
+        Unit of the value and of `allowed`, as astropy.units reads it; empty for a plain number.
+    allowed : Allowed or None
+        Interval of allowed values; for a list, of each of them. None for text and for a list that must be
+        empty.
+    default : object
+        Value where the file says nothing.
+    required : bool
+        Whether the file has to say something.
+    unsaid : str
+        In words, what is done where the file says nothing and there is no fixed default.
+    example : str
+        A valid value as it is written in a file.
+    shortest, longest : int
+        Allowed number of list entries.
+    longest_reason : str
+        Why the list may not be longer, for the message.
+    """
+
+    path: str
+    kind: Kind
+    meaning: str
+    unit: str = ""
+    allowed: Allowed | None = None
+    default: Any = None
+    required: bool = False
+    unsaid: str = ""
+    example: str = ""
+    shortest: int = 1
+    longest: int = 1
+    longest_reason: str = ""
+
+    @property
+    def section(self):
+        """Dotted path of the section that holds the key, empty at the top."""
+        return section_of(self.path)
+
+    @property
+    def name(self):
+        """The key as it is written in its section."""
+        return name_of(self.path)
+
+
+SECTIONS = {
+    "cosmology": "the smooth universe",
+    "cosmology.neutrinos": "neutrinos",
+    "primordial": "primordial curvature perturbations, a power law in wavenumber",
+    "sampling": "where the answer is wanted",
+    "products": "which products to make: {} for none, lag if the section is left out",
+    "products.lag": "how far the baryons lag the dark matter",
+}
+
+DEFAULT_PRODUCTS = ("lag",)  # made when the file has no section `products`
+
+_WAVENUMBER_LIMITS = Allowed(1e-4, 1e5)  # beyond the horizon to far below the Jeans length of the gas
+
+KEYS = (
+    Key("title", Kind.TEXT, "name of the scenario, for tables and figures",
+        unsaid="the file's name without its ending", example="Saltmarsh S, baseline"),
+    Key("cosmology.hubble_constant", Kind.QUANTITY, "expansion rate today",
+        unit="km/(s Mpc)", allowed=Allowed(1, 500), required=True, example="67.5 km/(s Mpc)"),
+    Key("cosmology.baryon_density", Kind.NUMBER, "physical density of baryons today, Omega_b h^2",
+        allowed=Allowed(1e-6, 10), required=True, example="0.0223"),
+    Key("cosmology.dark_matter_density", Kind.NUMBER, "physical density of dark matter today, Omega_c h^2",
+        allowed=Allowed(0, 10), required=True, example="0.1195"),
+    # COBE/FIRAS temperature, Fixsen 2009 (ApJ 707, 916); from memory.
+    Key("cosmology.photon_temperature", Kind.QUANTITY, "temperature of the photon background today",
+        unit="K", allowed=Allowed(0.1, 30), default=2.7255, example="2.7255 K"),
+    # Primordial nucleosynthesis with Planck's baryon density (Planck 2018 VI); from memory.
+    Key("cosmology.helium_mass_fraction", Kind.NUMBER, "helium's share of the baryon mass",
+        allowed=Allowed(0, 1, high_open=True), default=0.2454, example="0.2454"),
+    Key("cosmology.curvature_fraction", Kind.NUMBER,
+        "curvature's share of the critical density today, Omega_k; positive is open",
+        allowed=Allowed(-1, 1), example="0.01",
+        unsaid="0 (flat), unless the cosmological constant is given: then what the densities leave open"),
+    Key("cosmology.cosmological_constant_fraction", Kind.NUMBER,
+        "the cosmological constant's share of the critical density today, Omega_Lambda",
+        allowed=Allowed(-2, 2), example="0.69", unsaid="what the densities and the curvature leave open"),
+    # Three neutrinos slightly heated by electron annihilation, the value Planck 2018 I, Fig. 16 uses.
+    Key("cosmology.neutrinos.effective_number", Kind.NUMBER, "effective number of neutrino species",
+        allowed=Allowed(0, 20), default=3.046, example="3.046"),
+    Key("cosmology.neutrinos.masses", Kind.QUANTITIES, "neutrino masses; for now only the empty list",
+        unit="eV", default=(), example="[]", shortest=0, longest=0,
+        longest_reason="this version follows massless neutrinos only"),
+    Key("primordial.amplitude", Kind.NUMBER, "power of the curvature perturbations at the pivot",
+        allowed=Allowed(0, 1, low_open=True), default=2.1e-9, example="2.1e-9"),
+    Key("primordial.tilt", Kind.NUMBER, "exponent n of the power law, 1 for equal power on all scales",
+        allowed=Allowed(-3, 5), default=0.965, example="0.965"),
+    Key("primordial.pivot", Kind.QUANTITY, "wavenumber at which the amplitude is given",
+        unit=WAVENUMBER_UNIT, allowed=Allowed(1e-6, 1e6), default=0.05, example="0.05 1/Mpc"),
+    Key("sampling.wavenumbers", Kind.WAVENUMBERS, "comoving wavenumbers, as a range or one by one",
+        unit=WAVENUMBER_UNIT, allowed=_WAVENUMBER_LIMITS, required=True, longest=MOST_WAVENUMBERS,
+        longest_reason="more modes are not solved in one run", example="[0.1 1/Mpc, 1 1/Mpc]"),
+    Key("sampling.wavenumbers.from", Kind.QUANTITY, "smallest wavenumber of the range, included",
+        unit=WAVENUMBER_UNIT, allowed=_WAVENUMBER_LIMITS, required=True, example="0.001 1/Mpc"),
+    Key("sampling.wavenumbers.to", Kind.QUANTITY, "largest wavenumber of the range, included",
+        unit=WAVENUMBER_UNIT, allowed=_WAVENUMBER_LIMITS, required=True, example="1000 1/Mpc"),
+    Key("sampling.wavenumbers.per_decade", Kind.NUMBER,
+        "points a factor of ten, equally spaced in the logarithm; the number of intervals is rounded",
+        allowed=Allowed(0, MOST_WAVENUMBERS, low_open=True), required=True, example="20"),
+    Key("sampling.redshifts", Kind.NUMBERS, "redshifts, kept in this order",
+        allowed=Allowed(0, 1e6), required=True, longest=MOST_REDSHIFTS,
+        longest_reason="more redshifts are not tabulated in one run",
+        example="[1000, 500, 200, 100, 50, 20, 10]"),
+    Key("products.lag.fractions", Kind.NUMBERS,
+        "ratios of baryon to dark-matter amplitude whose redshift is wanted",
+        allowed=Allowed(0, 1, low_open=True, high_open=True), default=(0.5, 0.9, 0.95, 0.99),
+        longest=MOST_FRACTIONS, longest_reason="more fractions are not tabulated in one run",
+        example="[0.5, 0.9, 0.95, 0.99]"),
+)  # fmt: skip
+
+KEY_AT = {key.path: key for key in KEYS}
+
+
+def default_of(path):
+    """Return the default of the key at a dotted path."""
+    return KEY_AT[path].default
+
+
+def keys_under(section):
+    """Return the rows that stand directly in a section."""
+    return [key for key in KEYS if key.section == section]
+
+
+def sections_under(section):
+    """Return the dotted paths of the sections that stand directly in a section."""
+    return [path for path in SECTIONS if section_of(path) == section]
+
+
+def names_under(section):
+    """Return every name a section may hold, keys first."""
+    return [key.name for key in keys_under(section)] + [name_of(path) for path in sections_under(section)]

@@ -1,0 +1,85 @@
+"""What the manual says about scenario files: the commented template and the table of keys."""
+
+from .keys import KEYS, SECTIONS, Kind, keys_under, name_of, sections_under
+
+INDENT = "  "  # one level of the template
+RANGE_SECTION = "sampling.wavenumbers"  # the key whose value may be a mapping; the template shows that form
+
+_HEADING = """\
+# A scenario: the whole request in one file. Quantities carry units, in any notation astropy.units reads.
+# Where it says "default" the key may be left out. The values of the required keys are invented.
+
+"""
+
+
+def scenario_template():
+    """Write a scenario with every key, its meaning, unit, allowed values and default.
+
+    Returns
+    -------
+    str
+        Valid YAML; all keys with a fixed default stand at that default.
+    """
+    return _HEADING + "\n".join(_section_lines("", 0)) + "\n"
+
+
+def key_table_markdown():
+    """Write the table of keys for the manual.
+
+    Returns
+    -------
+    str
+        A Markdown table, one row a key.
+    """
+    rows = ["| key | value | allowed | default | meaning |", "| --- | --- | --- | --- | --- |"]
+    for key in KEYS:
+        cells = (f"`{key.path}`", _value_text(key), _allowed_text(key), _default_cell(key), key.meaning)
+        rows.append("| " + " | ".join(cell.replace("|", "\\|") for cell in cells) + " |")
+    return "\n".join(rows) + "\n"
+
+
+def _section_lines(section, depth):
+    lines = []
+    for key in keys_under(section):
+        lines += _key_lines(key, depth)
+    for inner in sections_under(section):
+        lines += ["", f"{INDENT * depth}# {SECTIONS[inner]}", f"{INDENT * depth}{name_of(inner)}:"]
+        lines += _section_lines(inner, depth + 1)
+    return lines
+
+
+def _key_lines(key, depth):
+    """Write one key: two lines of comment, and the key with its default or example."""
+    margin = INDENT * depth
+    facts = [_value_text(key), _allowed_text(key), _default_text(key)]
+    comments = [f"{margin}# {key.meaning}", f"{margin}#   {'; '.join(fact for fact in facts if fact)}"]
+    if key.path == RANGE_SECTION:
+        parts = [line for part in keys_under(key.path) for line in _key_lines(part, depth + 1)]
+        alternative = f"{margin}#   one by one: {key.name}: {key.example}; as a range:"
+        return [*comments, alternative, f"{margin}{key.name}:", *parts]
+    # A key without a fixed default is shown commented out: any value would change the meaning.
+    switch = "# " if key.default is None and not key.required and key.kind is not Kind.TEXT else ""
+    return [*comments, f"{margin}{switch}{key.name}: {key.example}"]
+
+
+def _value_text(key):
+    return f"{key.kind.value} [{key.unit}]" if key.unit else key.kind.value
+
+
+def _allowed_text(key):
+    parts = [str(key.allowed)] if key.allowed else []
+    if key.kind in (Kind.NUMBERS, Kind.QUANTITIES, Kind.WAVENUMBERS):
+        parts.append(f"at most {key.longest} entries" if key.longest else "only []")
+    return ", ".join(parts)
+
+
+def _default_text(key):
+    if key.required:
+        return "required"
+    return "default: " + (key.unsaid or key.example)
+
+
+def _default_cell(key):
+    if key.section == RANGE_SECTION:
+        return "required in a range"
+    return _default_text(key).removeprefix("default: ")

@@ -1,0 +1,218 @@
+"""The request as the rest of the program sees it: frozen dataclasses, plain floats in fixed units."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from operator import attrgetter
+
+from .keys import DEFAULT_PRODUCTS, KEY_AT, KEYS, Kind, default_of, keys_under
+from .spacing import range_of
+
+_FIELD_SECTIONS = ("cosmology", "cosmology.neutrinos", "primordial", "sampling")  # read into dataclasses
+
+
+def _floats(values):
+    return tuple(float(value) for value in values)
+
+
+@dataclass(frozen=True)
+class Neutrinos:
+    """Neutrinos of the universe.
+
+    Parameters
+    ----------
+    effective_number : float
+        Effective number of species [unitless].
+    masses : tuple of float
+        Masses [eV]; only the empty tuple for now.
+    """
+
+    effective_number: float = default_of("cosmology.neutrinos.effective_number")
+    masses: tuple[float, ...] = default_of("cosmology.neutrinos.masses")
+
+    def __post_init__(self):
+        object.__setattr__(self, "masses", _floats(self.masses))
+
+
+@dataclass(frozen=True)
+class Cosmology:
+    """The smooth universe asked for.
+
+    With neither fraction given the universe is flat and the cosmological constant fills the rest; with
+    one of them given the other fills the rest.
+
+    Parameters
+    ----------
+    hubble_constant : float
+        Expansion rate today [km/(s Mpc)].
+    baryon_density : float
+        Physical density of baryons today, Omega_b h^2 [unitless].
+    dark_matter_density : float
+        Physical density of cold dark matter today, Omega_c h^2 [unitless].
+    photon_temperature : float
+        Temperature of the photon background today [K].
+    helium_mass_fraction : float
+        Helium's share of the baryon mass [unitless].
+    neutrinos : Neutrinos
+        Neutrinos.
+    curvature_fraction : float or None
+        Omega_k today, positive for an open universe [unitless].
+    cosmological_constant_fraction : float or None
+        Omega_Lambda today [unitless].
+    """
+
+    hubble_constant: float
+    baryon_density: float
+    dark_matter_density: float
+    photon_temperature: float = default_of("cosmology.photon_temperature")
+    helium_mass_fraction: float = default_of("cosmology.helium_mass_fraction")
+    neutrinos: Neutrinos = Neutrinos()
+    curvature_fraction: float | None = None
+    cosmological_constant_fraction: float | None = None
+
+
+@dataclass(frozen=True)
+class Primordial:
+    """Primordial curvature perturbations, a power law in wavenumber.
+
+    Parameters
+    ----------
+    amplitude : float
+        Power at the pivot [unitless].
+    tilt : float
+        Exponent n; 1 is equal power on all scales [unitless].
+    pivot : float
+        Wavenumber at which the amplitude is given [1/Mpc].
+    """
+
+    amplitude: float = default_of("primordial.amplitude")
+    tilt: float = default_of("primordial.tilt")
+    pivot: float = default_of("primordial.pivot")
+
+
+@dataclass(frozen=True)
+class Sampling:
+    """Where the answer is wanted. Any sequence of numbers is taken and kept as a tuple.
+
+    Parameters
+    ----------
+    wavenumbers : tuple of float
+        Comoving wavenumbers in the order asked for, shape (mode,) [1/Mpc].
+    redshifts : tuple of float
+        Redshifts in the order asked for, shape (redshift,) [unitless].
+    """
+
+    wavenumbers: tuple[float, ...]
+    redshifts: tuple[float, ...]
+
+    def __post_init__(self):
+        object.__setattr__(self, "wavenumbers", _floats(self.wavenumbers))
+        object.__setattr__(self, "redshifts", _floats(self.redshifts))
+
+
+def default_products():
+    """Return the products made when a scenario does not name any, with their default options."""
+    return {
+        product: {key.name: key.default for key in keys_under(f"products.{product}")}
+        for product in DEFAULT_PRODUCTS
+    }
+
+
+@dataclass(frozen=True)
+class Scenario:
+    """A whole request. Two scenarios are equal if they ask for the same, however that was written.
+
+    A scenario built here by hand is not checked; `scenario_from_mapping(scenario.to_mapping())` applies
+    every rule a file has to obey.
+
+    Parameters
+    ----------
+    title : str
+        Name for tables and figures.
+    cosmology : Cosmology
+        The smooth universe.
+    primordial : Primordial
+        Primordial perturbations.
+    sampling : Sampling
+        Wavenumbers and redshifts.
+    products : mapping of str to mapping
+        Names of the products to make and their options.
+    assumed : tuple of str
+        Dotted keys the file left to their defaults.
+    source : str or None
+        File the scenario was read from.
+    """
+
+    title: str
+    cosmology: Cosmology
+    primordial: Primordial
+    sampling: Sampling
+    products: Mapping[str, Mapping] = field(default_factory=default_products, hash=False)
+    assumed: tuple[str, ...] = field(default=(), compare=False)
+    source: str | None = field(default=None, compare=False)
+
+    def to_mapping(self):
+        """Write the request as a nested mapping of plain values, quantities as text with their unit.
+
+        Returns
+        -------
+        dict
+            Written as YAML and read again it gives an equal scenario. Every value is spelled out,
+            also those that were left to their defaults.
+        """
+        mapping = {"title": str(self.title)}
+        for key in KEYS:
+            if key.section not in _FIELD_SECTIONS:
+                continue
+            value = attrgetter(key.path)(self)
+            if value is not None:
+                _section_of(mapping, key)[key.name] = _plain(value, key)
+        mapping["products"] = {}
+        for product, options in self.products.items():
+            known = {name: KEY_AT.get(f"products.{product}.{name}") for name in options}
+            mapping["products"][product] = {name: _plain(options[name], known[name]) for name in options}
+        return mapping
+
+    def assumptions(self):
+        """Say in words what the file left to its defaults.
+
+        Returns
+        -------
+        tuple of str
+            One ``key = value`` for each key in `assumed`.
+        """
+        mapping = self.to_mapping()
+        return tuple(f"{path} = {_assumed_text(mapping, path)}" for path in self.assumed)
+
+
+def _plain(value, key):
+    """Turn a clean value into what a file would say: plain numbers, and text where a unit is due."""
+    if key is None:
+        return list(value) if isinstance(value, tuple) else value
+    if key.kind is Kind.WAVENUMBERS and (found := range_of(value)):
+        low, high, per_decade = found
+        return {"from": _with_unit(low, key), "to": _with_unit(high, key), "per_decade": per_decade}
+    if key.kind in (Kind.WAVENUMBERS, Kind.QUANTITIES):
+        return [_with_unit(item, key) for item in value]
+    if key.kind is Kind.NUMBERS:
+        return [float(item) for item in value]
+    return _with_unit(value, key) if key.kind is Kind.QUANTITY else float(value)
+
+
+def _with_unit(value, key):
+    """Write a number with the unit of its key, with all its digits."""
+    return f"{float(value)!r} {key.unit}"
+
+
+def _section_of(mapping, key):
+    for name in key.section.split("."):
+        mapping = mapping.setdefault(name, {})
+    return mapping
+
+
+def _assumed_text(mapping, path):
+    value = mapping
+    for name in path.split("."):
+        value = value.get(name)
+        if value is None:
+            return KEY_AT[path].unsaid
+    return value

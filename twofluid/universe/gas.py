@@ -1,0 +1,84 @@
+"""State of the baryonic gas: particle densities, mean weight, sound speeds, exchange with the photons.
+
+The functions of `Baryons` take what they depend on, so that the ionization solution and the tables share
+them; nothing here solves anything.
+"""
+
+from dataclasses import dataclass
+
+from .constants import (
+    BOLTZMANN,
+    CRITICAL_DENSITY_UNIT,
+    ELECTRON_MASS,
+    HELIUM_MASS,
+    HYDROGEN_MASS,
+    MEGAPARSEC,
+    RADIATION_CONSTANT,
+    SPEED_OF_LIGHT,
+    THOMSON_CROSS_SECTION,
+)
+
+
+@dataclass(frozen=True)
+class Baryons:
+    """Composition of the gas and the photons it meets, today.
+
+    Parameters
+    ----------
+    density : float
+        Omega h^2 of the baryons [unitless].
+    helium_mass_fraction : float
+        Share of the baryonic mass in helium-4; the rest is hydrogen [unitless].
+    photon_temperature : float
+        Of the background today [K].
+    """
+
+    density: float
+    helium_mass_fraction: float
+    photon_temperature: float
+
+    @property
+    def hydrogen_density(self):
+        """Hydrogen nuclei today [1/m^3]."""
+        return (1.0 - self.helium_mass_fraction) * self.density * CRITICAL_DENSITY_UNIT / HYDROGEN_MASS
+
+    @property
+    def helium_per_hydrogen(self):
+        """Helium nuclei per hydrogen nucleus [unitless]."""
+        return self.helium_mass_fraction / (1.0 - self.helium_mass_fraction) * HYDROGEN_MASS / HELIUM_MASS
+
+    @property
+    def full_ionization(self):
+        """Electrons per hydrogen nucleus when no electron is bound [unitless]."""
+        return 1.0 + 2.0 * self.helium_per_hydrogen
+
+    def scattering_rate(self, scale_factor, electron_fraction):
+        """Conformal Thomson rate a n_e sigma_T [1/Mpc]."""
+        present = self.hydrogen_density * THOMSON_CROSS_SECTION * MEGAPARSEC
+        return present * electron_fraction / (scale_factor * scale_factor)
+
+    def compton_rate(self, scale_factor, electron_fraction):
+        """Conformal rate a Gamma at which the gas temperature approaches the photons' [1/Mpc].
+
+        Gamma = 8 sigma_T a_R T_gamma^4 x_e / [3 m_e c (1 + f_He + x_e)]; Weymann 1965, as in Seager,
+        Sasselov & Scott 2000, their equation for the matter temperature.
+        """
+        energy = RADIATION_CONSTANT * self.photon_temperature**4 / (ELECTRON_MASS * SPEED_OF_LIGHT**2)
+        present = 8.0 / 3.0 * THOMSON_CROSS_SECTION * energy * MEGAPARSEC
+        share = electron_fraction / (1.0 + self.helium_per_hydrogen + electron_fraction)
+        return present * share / (scale_factor * scale_factor * scale_factor)
+
+    def isothermal_sound_speed_squared(self, temperature, electron_fraction):
+        """Isothermal c_T^2 = k T/(mu m_H c^2) [unitless]; 1/mu = (1 - Y)(1 + f_He + x_e)."""
+        per_mass = (1.0 - self.helium_mass_fraction) * (1.0 + self.helium_per_hydrogen + electron_fraction)
+        return BOLTZMANN / (HYDROGEN_MASS * SPEED_OF_LIGHT**2) * temperature * per_mass
+
+
+def adiabatic_factor(temperature_slope):
+    """c_s^2 over k T/(mu m_H), from d ln T/d ln a: 1 - slope/3 [unitless]."""
+    return 1.0 - temperature_slope / 3.0
+
+
+def plasma_sound_speed(momentum_ratio):
+    """Sound speed of photons and baryons tied together, 1/sqrt(3 (1 + R)) [c]; R = 3 rho_b/(4 rho_gamma)."""
+    return (3.0 * (1.0 + momentum_ratio)) ** -0.5

@@ -1,0 +1,171 @@
+"""The smooth universe of one cosmology: everything that has no wavenumber."""
+
+from functools import cached_property
+
+import numpy as np
+
+from . import gas
+from .conditions import ConditionsTable
+from .expansion import Expansion, log_scale_factor
+from .ionization import Ionization
+from .landmarks import find_landmarks
+
+_POLARIZED_SCATTERING = 16.0 / 15.0  # photon viscosity with polarization; Kaiser 1983, from memory
+
+
+class Universe:
+    """Expansion, ionization, gas and landmarks of one cosmology.
+
+    All functions of the scale factor (1 today) take a float or an array of any shape, from 1e-16 to 1, and
+    return an array of the same shape; outside that range they raise ValueError.
+
+    Parameters
+    ----------
+    cosmology : Cosmology
+        Densities, temperature, helium and rate today.
+
+    Raises
+    ------
+    UniverseError
+        If the cosmology contradicts itself or never expands from a hot beginning to today.
+    """
+
+    def __init__(self, cosmology):
+        self.cosmology = cosmology
+        self._expansion = Expansion(cosmology)
+        self._baryons = gas.Baryons(
+            density=cosmology.baryon_density,
+            helium_mass_fraction=cosmology.helium_mass_fraction,
+            photon_temperature=cosmology.photon_temperature,
+        )
+        self._ionization = Ionization(self._expansion, self._baryons)
+
+    # --- expansion ---------------------------------------------------------------------------------
+    def gravity(self, species, scale_factor):
+        """8 pi G a^2 rho of "photon", "neutrino", "baryon", "dark", "curvature" or "constant" [1/Mpc^2]."""
+        return self._expansion.gravity(species, scale_factor)
+
+    def density_fraction(self, species, scale_factor):
+        """Share of a species (named as for `gravity`) in the critical density of its time [unitless]."""
+        return self._expansion.density_fraction(species, scale_factor)
+
+    def conformal_hubble_rate(self, scale_factor):
+        """Conformal rate a'/a [1/Mpc]."""
+        return self._expansion.conformal_hubble_rate(scale_factor)
+
+    def conformal_time(self, scale_factor):
+        """Conformal time since the beginning [Mpc]."""
+        return self._expansion.conformal_time(scale_factor)
+
+    def scale_factor(self, conformal_time):
+        """Scale factor at a conformal time [Mpc]; the inverse of `conformal_time` [unitless]."""
+        return self._expansion.scale_factor(conformal_time)
+
+    def age(self, scale_factor):
+        """Cosmic time since the beginning [Myr]."""
+        return self._expansion.age(scale_factor)
+
+    def comoving_distance(self, redshift):
+        """Radial comoving distance from today to a redshift [Mpc]."""
+        return self._expansion.comoving_distance(redshift)
+
+    # --- electrons and photons ---------------------------------------------------------------------
+    def electron_fraction(self, scale_factor):
+        """Free electrons per hydrogen nucleus [unitless]."""
+        return self._ionization.electron_fraction(scale_factor)
+
+    def scattering_rate(self, scale_factor):
+        """Conformal Thomson rate a n_e sigma_T [1/Mpc]."""
+        return self._baryons.scattering_rate(scale_factor, self.electron_fraction(scale_factor))
+
+    def momentum_ratio(self, scale_factor):
+        """R = 3 rho_b/(4 rho_gamma) [unitless]."""
+        return 0.75 * self.gravity("baryon", scale_factor) / self.gravity("photon", scale_factor)
+
+    def drag_rate(self, scale_factor):
+        """Conformal rate at which photons drag the baryons along, a n_e sigma_T/R [1/Mpc]."""
+        return self.scattering_rate(scale_factor) / self.momentum_ratio(scale_factor)
+
+    # --- gas ---------------------------------------------------------------------------------------
+    def photon_temperature(self, scale_factor):
+        """Temperature of the background photons [K]."""
+        return self._baryons.photon_temperature / np.asarray(scale_factor, dtype=float)
+
+    def gas_temperature(self, scale_factor):
+        """Temperature of the baryonic gas [K]."""
+        lag = self._ionization.temperature_lag(scale_factor)
+        return self.photon_temperature(scale_factor) * np.exp(-lag)
+
+    def compton_rate(self, scale_factor):
+        """Conformal rate at which the gas temperature approaches the photons' [1/Mpc]."""
+        return self._baryons.compton_rate(scale_factor, self.electron_fraction(scale_factor))
+
+    def gas_temperature_slope(self, scale_factor):
+        """Temperature slope of the gas, d ln T/d ln a [unitless]."""
+        lag = self._ionization.temperature_lag(scale_factor)
+        heating = self.compton_rate(scale_factor) / self.conformal_hubble_rate(scale_factor)
+        return heating * np.expm1(lag) - 2.0
+
+    def isothermal_sound_speed(self, scale_factor):
+        """Sound speed of the gas at fixed temperature, (k T/(mu m_H))^(1/2) [c]."""
+        electrons = self.electron_fraction(scale_factor)
+        return np.sqrt(
+            self._baryons.isothermal_sound_speed_squared(self.gas_temperature(scale_factor), electrons)
+        )
+
+    def gas_sound_speed(self, scale_factor):
+        """Sound speed of the gas, c_s^2 = (k T/(mu m_H)) (1 - (1/3) d ln T/d ln a) [c]."""
+        factor = gas.adiabatic_factor(self.gas_temperature_slope(scale_factor))
+        return self.isothermal_sound_speed(scale_factor) * np.sqrt(factor)
+
+    # --- plasma ------------------------------------------------------------------------------------
+    def plasma_sound_speed(self, scale_factor):
+        """Sound speed of photons and baryons tied together, 1/sqrt(3 (1 + R)) [c]."""
+        return gas.plasma_sound_speed(self.momentum_ratio(scale_factor))
+
+    def sound_horizon(self, scale_factor):
+        """Comoving way of sound in the plasma since the beginning [Mpc]."""
+        return self._sound_way(log_scale_factor(scale_factor))
+
+    def diffusion_wavenumber(self, scale_factor):
+        """k_D of photon diffusion, waves being damped by exp[-(k/k_D)^2] [1/Mpc].
+
+        1/k_D^2 is the integral over conformal time of [R^2 + (16/15)(1 + R)]/[6 a n_e sigma_T (1 + R)^2];
+        Kaiser 1983, Hu & White 1997, from memory.
+        """
+        return self._diffusion_area(log_scale_factor(scale_factor)) ** -0.5
+
+    @cached_property
+    def _sound_way(self):
+        return self._expansion.running_integral(
+            lambda a: self.plasma_sound_speed(a) / self.conformal_hubble_rate(a), power=1
+        )
+
+    @cached_property
+    def _diffusion_area(self):
+        def integrand(a):
+            ratio = self.momentum_ratio(a)
+            weight = (ratio**2 + _POLARIZED_SCATTERING * (1.0 + ratio)) / (6.0 * (1.0 + ratio) ** 2)
+            return weight / self.scattering_rate(a) / self.conformal_hubble_rate(a)
+
+        return self._expansion.running_integral(integrand, power=3)
+
+    # --- taken together ----------------------------------------------------------------------------
+    @cached_property
+    def landmarks(self):
+        """Landmark epochs and scales; UniverseError names one this universe does not have."""
+        return find_landmarks(self)
+
+    def conditions(self, conformal_time):
+        """Conditions at conformal times [Mpc] from the scale factor 1e-14 to today, by table look-up.
+
+        Raises
+        ------
+        ValueError
+            If a time lies outside.
+        """
+        return self._conditions_table(conformal_time)
+
+    @cached_property
+    def _conditions_table(self):
+        return ConditionsTable(self._expansion, self._ionization, self._baryons)
