@@ -1,6 +1,7 @@
 """From a scenario to its history: universe, linear system, clock, integration."""
 
 from collections.abc import Callable
+from dataclasses import replace
 
 import numpy as np
 
@@ -18,7 +19,7 @@ LOCKED_TEMPERATURE = 1e4  # Compton over expansion rate beyond which the gas con
 
 _OBSERVED = (
     "metric_rate", "curvature", "delta_dark", "delta_baryon", "delta_photon", "delta_neutrino",
-    "delta_gas_temperature", "momentum", "slip", "theta_neutrino",
+    "delta_gas_temperature", "theta_baryon", "slip",
 )  # fmt: skip
 
 
@@ -59,6 +60,9 @@ def evolve(
     """
     k = _wavenumbers(scenario.sampling.wavenumbers if wavenumbers is None else wavenumbers)
     z = _redshifts(scenario.sampling.redshifts if redshifts is None else redshifts)
+    if wavenumbers is not None or redshifts is not None:  # the history tells what was done, not what the file said
+        sampling = replace(scenario.sampling, wavenumbers=tuple(k), redshifts=tuple(z))
+        scenario = replace(scenario, sampling=sampling, source=None)
     universe = Universe(scenario.cosmology)
 
     scale_factors = np.unique(np.append(1.0 / (1.0 + z), 1.0))  # the marks: ascending, today included
@@ -101,7 +105,8 @@ def _wavenumbers(values) -> np.ndarray:
     k = np.atleast_1d(np.array(values, dtype=float))
     if k.ndim != 1 or k.size == 0 or not np.all((k >= SMALLEST_WAVENUMBER) & (k <= LARGEST_WAVENUMBER)):
         raise ValueError(
-            f"wavenumbers must be one or more numbers from {SMALLEST_WAVENUMBER:g} to {LARGEST_WAVENUMBER:g} 1/Mpc, got {values}"
+            f"wavenumbers must be one or more numbers from {SMALLEST_WAVENUMBER:g} to {LARGEST_WAVENUMBER:g} 1/Mpc, "
+            f"got {values}"
         )
     return k
 
@@ -125,7 +130,7 @@ def _read_off(universe, k, times, y) -> tuple[Trace, np.ndarray]:
     now = universe.conditions(times)
     hubble = now.hubble_rate
     r = now.photon_baryon_ratio
-    theta = k * r / (1.0 + r) * (y["momentum"] + y["slip"])  # of the baryons
+    theta = k * y["theta_baryon"]
     metric_half = 0.5 * k * y["metric_rate"]
     dark_rate, baryon_rate = -metric_half, -theta - metric_half
     photon_rate = -4 / 3 * (theta - k * y["slip"] + metric_half)

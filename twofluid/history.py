@@ -144,8 +144,7 @@ class History:
         """
         import yaml
 
-        mine = ("delta_dark", "delta_baryon", "theta_baryon", "delta_gas_temperature", "wavenumber", "redshift", "constraint")
-        arrays = {name: getattr(self, name) for name in mine}
+        arrays = {name: getattr(self, name) for name in (*EVOLVED, "wavenumber", "redshift", "constraint")}
         arrays |= {f"trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
         words = {
             "format": _FORMAT,

@@ -5,10 +5,11 @@ densities grow positive. With no dark matter the frame is carried by massless du
 stands in the row of the dark matter.
 
 The metric's trace rate and all velocities are divided by the wavenumber k, and time enters as
-k tau, so that the rates stay near one. The plasma is followed by its momentum
-``M = theta_photon + theta_baryon / r`` and the slip ``u = theta_baryon - theta_photon``, with
-``r = 4 rho_photon / (3 rho_baryon)``: neither contains a difference of large numbers, however fast
-Thomson scattering is, so there is no tight-coupling approximation.
+k tau, so that the rates stay near one. The plasma is followed by the velocity of the baryons and the
+slip ``u = theta_baryon - theta_photon``. However fast Thomson scattering is, the drag
+``-r kappa' u`` with ``r = 4 rho_photon / (3 rho_baryon)`` then is no difference of large numbers,
+since the slip has an equation of its own: there is no tight-coupling approximation. And however
+slow it is, the gas is not touched by the round-off of photons that stream through it.
 
 References
 ----------
@@ -73,7 +74,7 @@ class KineticSystem:
         named = {
             **_gravity(surroundings),
             **_densities(surroundings),
-            **_plasma(surroundings),
+            **_velocities(surroundings),
             **_gas_temperature(surroundings),
             **_quadrupoles(surroundings),
             **_polarization(surroundings),
@@ -97,7 +98,7 @@ def _elimination_order(chains: ChainLengths) -> tuple[str, ...]:
     tails += [f"neutrino_{moment}" for moment in range(chains.neutrino, FIRST_ABSORBED - 1, -1)]
     densities = ["delta_dark", "delta_baryon", "delta_photon", "delta_neutrino"]
     core = ["delta_gas_temperature", "polarization_1", "polarization_0", "neutrino_2", "polarization_2",
-            "photon_2", "slip", "theta_neutrino", "momentum", "metric_rate"]  # fmt: skip
+            "photon_2", "slip", "theta_neutrino", "theta_baryon", "metric_rate"]  # fmt: skip
     return ("curvature", *tails, *densities, *core)
 
 
@@ -125,11 +126,9 @@ class _Surroundings:
         self.gravity_dark = (now.gravity_dark * inertia).reshape(STAGES, -1)
         self.curvature = (-universe.gravity("curvature", 1.0) / 3.0 * inertia).ravel()
         self.r = now.photon_baryon_ratio.reshape(STAGES, -1)
+        self.drag = self.r * self.scattering
         self.pressure = (now.isothermal_sound_speed_squared * phase).reshape(STAGES, -1)
         self.warmth = now.photon_gas_temperature_ratio.reshape(STAGES, -1)
-        # theta_baryon = of_baryon (M + u), theta_photon = of_baryon M - of_photon u
-        self.of_photon = 1.0 / (1.0 + self.r)
-        self.of_baryon = self.r * self.of_photon
 
 
 def _gravity(s: _Surroundings) -> dict:
@@ -145,41 +144,39 @@ def _gravity(s: _Surroundings) -> dict:
         ("metric_rate", "delta_photon"): -2.0 * s.gravity_photon,
         ("metric_rate", "delta_neutrino"): -2.0 * s.gravity_neutrino,
         ("curvature", "metric_rate"): s.curvature / 2,
-        ("curvature", "momentum"): 2 / 3 * s.gravity_photon,
+        ("curvature", "theta_baryon"): 2 / 3 * s.gravity_photon + s.gravity_baryon / 2,
+        ("curvature", "slip"): -2 / 3 * s.gravity_photon,
         ("curvature", "theta_neutrino"): 2 / 3 * s.gravity_neutrino,
     }
 
 
 def _densities(s: _Surroundings) -> dict:
     """Continuity of the four fluids (Ma & Bertschinger 1995, eqs 42, 49, 63, 66)."""
-    flow = -s.x * s.of_baryon
     return {
         ("delta_dark", "metric_rate"): -s.x / 2,
         ("delta_baryon", "metric_rate"): -s.x / 2,
-        ("delta_baryon", "momentum"): flow,
-        ("delta_baryon", "slip"): flow,
+        ("delta_baryon", "theta_baryon"): -s.x,
         ("delta_photon", "metric_rate"): -2 / 3 * s.x,
-        ("delta_photon", "momentum"): 4 / 3 * flow,
-        ("delta_photon", "slip"): 4 / 3 * s.x * s.of_photon,
+        ("delta_photon", "theta_baryon"): -4 / 3 * s.x,
+        ("delta_photon", "slip"): 4 / 3 * s.x,
         ("delta_neutrino", "metric_rate"): -2 / 3 * s.x,
         ("delta_neutrino", "theta_neutrino"): -4 / 3 * s.x,
     }
 
 
-def _plasma(s: _Surroundings) -> dict:
-    """Momentum, slip and neutrino velocity (Ma & Bertschinger 1995, eqs 49, 63, 66 and 67, rearranged)."""
-    force = s.pressure / s.r
+def _velocities(s: _Surroundings) -> dict:
+    """Velocities of baryons and neutrinos, slip of the plasma (Ma & Bertschinger 1995, eqs 49, 63, 66 and 67)."""
     return {
-        ("momentum", "delta_photon"): s.x / 4,
-        ("momentum", "photon_2"): -s.x / 2,
-        ("momentum", "delta_baryon"): force,
-        ("momentum", "delta_gas_temperature"): force,
-        ("slip", "momentum"): -s.hubble * s.of_baryon,
-        ("slip", "slip"): -s.hubble * s.of_baryon - (1.0 + s.r) * s.scattering,
-        ("slip", "delta_photon"): -s.x / 4,
-        ("slip", "photon_2"): s.x / 2,
+        ("theta_baryon", "theta_baryon"): -s.hubble,
+        ("theta_baryon", "slip"): -s.drag,
+        ("theta_baryon", "delta_baryon"): s.pressure,
+        ("theta_baryon", "delta_gas_temperature"): s.pressure,
+        ("slip", "theta_baryon"): -s.hubble,
+        ("slip", "slip"): -s.drag - s.scattering,
         ("slip", "delta_baryon"): s.pressure,
         ("slip", "delta_gas_temperature"): s.pressure,
+        ("slip", "delta_photon"): -s.x / 4,
+        ("slip", "photon_2"): s.x / 2,
         ("theta_neutrino", "delta_neutrino"): s.x / 4,
         ("theta_neutrino", "neutrino_2"): -s.x / 2,
     }
@@ -187,10 +184,8 @@ def _plasma(s: _Surroundings) -> dict:
 
 def _gas_temperature(s: _Surroundings) -> dict:
     """Adiabatic and Compton heating of the gas contrast (Naoz & Barkana 2005)."""
-    flow = -2 / 3 * s.x * s.of_baryon
     return {
-        ("delta_gas_temperature", "momentum"): flow,
-        ("delta_gas_temperature", "slip"): flow,
+        ("delta_gas_temperature", "theta_baryon"): -2 / 3 * s.x,
         ("delta_gas_temperature", "metric_rate"): -s.x / 3,
         ("delta_gas_temperature", "delta_photon"): s.compton * (1.25 * s.warmth - 1.0),
         ("delta_gas_temperature", "delta_gas_temperature"): -s.compton * s.warmth,
@@ -199,19 +194,21 @@ def _gas_temperature(s: _Surroundings) -> dict:
 
 def _quadrupoles(s: _Surroundings) -> dict:
     """Second moments of photons and neutrinos, with the shear of the metric (eqs 49, 63)."""
-    shear_plasma, shear_neutrino = 16 / 15 * s.gravity_photon, 16 / 15 * s.gravity_neutrino
-    third = -3 / 5 * s.x
+    shear_photon, shear_neutrino = 16 / 15 * s.gravity_photon, 16 / 15 * s.gravity_neutrino
+    shear_plasma = shear_photon + 4 / 5 * s.gravity_baryon
+    metric, third = 4 / 15 * s.x, -3 / 5 * s.x
     return {
-        ("photon_2", "metric_rate"): 4 / 15 * s.x,
-        ("photon_2", "momentum"): 8 / 15 * s.x * s.of_baryon + shear_plasma,
-        ("photon_2", "slip"): -8 / 15 * s.x * s.of_photon,
+        ("photon_2", "metric_rate"): metric,
+        ("photon_2", "theta_baryon"): 8 / 15 * s.x + shear_plasma,
+        ("photon_2", "slip"): -8 / 15 * s.x - shear_photon,
         ("photon_2", "theta_neutrino"): shear_neutrino,
         ("photon_2", "photon_3"): third,
         ("photon_2", "photon_2"): -0.9 * s.scattering,
         ("photon_2", "polarization_0"): 0.1 * s.scattering,
         ("photon_2", "polarization_2"): 0.1 * s.scattering,
-        ("neutrino_2", "metric_rate"): 4 / 15 * s.x,
-        ("neutrino_2", "momentum"): shear_plasma,
+        ("neutrino_2", "metric_rate"): metric,
+        ("neutrino_2", "theta_baryon"): shear_plasma,
+        ("neutrino_2", "slip"): -shear_photon,
         ("neutrino_2", "theta_neutrino"): 8 / 15 * s.x + shear_neutrino,
         ("neutrino_2", "neutrino_3"): third,
     }
@@ -219,19 +216,20 @@ def _quadrupoles(s: _Surroundings) -> dict:
 
 def _polarization(s: _Surroundings) -> dict:
     """First moments of the polarization, fed by the quadrupole (eq. 64)."""
+    half, tenth = 0.5 * s.scattering, 0.1 * s.scattering
     return {
         ("polarization_0", "polarization_1"): -s.x,
-        ("polarization_0", "polarization_0"): -0.5 * s.scattering,
-        ("polarization_0", "polarization_2"): 0.5 * s.scattering,
-        ("polarization_0", "photon_2"): 0.5 * s.scattering,
+        ("polarization_0", "polarization_0"): -half,
+        ("polarization_0", "polarization_2"): half,
+        ("polarization_0", "photon_2"): half,
         ("polarization_1", "polarization_0"): s.x / 3,
         ("polarization_1", "polarization_2"): -2 / 3 * s.x,
         ("polarization_1", "polarization_1"): -s.scattering,
         ("polarization_2", "polarization_1"): 2 / 5 * s.x,
         ("polarization_2", "polarization_3"): -3 / 5 * s.x,
-        ("polarization_2", "polarization_2"): -0.9 * s.scattering,
-        ("polarization_2", "polarization_0"): 0.1 * s.scattering,
-        ("polarization_2", "photon_2"): 0.1 * s.scattering,
+        ("polarization_2", "polarization_2"): -9.0 * tenth,
+        ("polarization_2", "polarization_0"): tenth,
+        ("polarization_2", "photon_2"): tenth,
     }
 
 

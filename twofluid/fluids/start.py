@@ -61,7 +61,7 @@ def adiabatic(universe: Universe, wavenumber: np.ndarray, time: np.ndarray) -> d
         "delta_baryon": 0.75 * radiation,
         "delta_dark": 0.75 * radiation,
         "delta_gas_temperature": 0.25 * radiation,
-        "momentum": theta * (1.0 + 1.0 / now.photon_baryon_ratio),
+        "theta_baryon": theta,
         "theta_neutrino": theta * (23.0 + 4.0 * fraction) / (15.0 + 4.0 * fraction),
         "neutrino_2": -4.0 / 3.0 * x**2 / (15.0 + 4.0 * fraction),
     }

@@ -70,8 +70,9 @@ def clock(
     Clock
         Boundaries in log conformal time.
     """
-    first, last = np.log(start.min()), np.log(marks[-1])
-    grid = np.linspace(first, last, 2 + int(NODES_PER_UNIT * (last - first)))
+    last = np.log(marks[-1])
+    nodes = 2 + int(NODES_PER_UNIT * (last - np.log(start.min())))
+    grid = last - np.arange(nodes)[::-1] / NODES_PER_UNIT  # hung up at its end: the same for every choice of modes
     time = np.exp(grid)
     time[-1] = marks[-1]
     density = step_density(universe, wavenumber, time, stepping)
@@ -79,7 +80,7 @@ def clock(
 
 
 def step_density(universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping) -> np.ndarray:
-    """Steps wanted per unit of log conformal time.
+    """Give the steps wanted per unit of log conformal time.
 
     Parameters
     ----------

@@ -88,7 +88,7 @@ def _read_quantity(entry, key):
 @lru_cache(maxsize=256)
 def _conversion_factor(unit, expected):
     """Return what one `unit` is in `expected`, or None if it cannot be read or converted."""
-    from astropy import units  # noqa: PLC0415 - slow to import, and files that use our own units never need it
+    from astropy import units  # slow to import, and files that use our own units never need it
 
     if len(unit) > LONGEST_UNIT:
         return None

@@ -57,8 +57,9 @@ def lay_out(grid: np.ndarray, density: np.ndarray, start: np.ndarray, marks: np.
     """
     if start.min() < grid[0] or marks[-1] > grid[-1] or start.max() >= marks[0]:
         raise ValueError("each mode must start on the grid, before the first mark, and end on the grid")
-    total = np.zeros_like(density)
-    np.cumsum(0.5 * (density[:, 1:] + density[:, :-1]) * np.diff(grid), axis=1, out=total[:, 1:])
+    total = np.zeros_like(density)  # counted back from the end, so that it does not depend on where the grid begins
+    pieces = 0.5 * (density[:, 1:] + density[:, :-1]) * np.diff(grid)
+    total[:, :-1] = -np.cumsum(pieces[:, ::-1], axis=1)[:, ::-1]
 
     stops = np.concatenate([start[:, None], np.broadcast_to(marks, (len(start), len(marks)))], axis=1)
     share = _on_grid(grid, total, stops)
