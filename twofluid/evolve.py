@@ -5,7 +5,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from .fluids import KineticSystem, Resolution, adiabatic, clock, resolution_for, start_time
+from .fluids import KineticSystem, Resolution, clock, resolution_for, start_time
 from .history import History, Trace
 from .scenario import Scenario
 from .solver import SolverFailure, integrate
@@ -15,12 +15,6 @@ SMALLEST_WAVENUMBER, LARGEST_WAVENUMBER = 1e-4, 1e5  # [1/Mpc]: what the numeric
 HIGHEST_REDSHIFT = 1e6  # every mode has started long before
 CURVATURE_MARGIN = 100.0  # k times the curvature radius below which curvature could show in the modes
 CONSTRAINT_LIMIT = 0.01  # a larger drift of the energy constraint means the run went wrong
-LOCKED_TEMPERATURE = 1e4  # Compton over expansion rate beyond which the gas contrast is the photons'
-
-_OBSERVED = (
-    "metric_rate", "curvature", "delta_dark", "delta_baryon", "delta_photon", "delta_neutrino",
-    "delta_gas_temperature", "theta_baryon", "slip",
-)  # fmt: skip
 
 
 def evolve(
@@ -67,18 +61,17 @@ def evolve(
 
     scale_factors = np.unique(np.append(1.0 / (1.0 + z), 1.0))  # the marks: ascending, today included
     marks = universe.conformal_time(scale_factors)
-    start = start_time(universe, k)
     resolution = resolution or resolution_for(universe)
+    system = KineticSystem(universe, k, resolution.chains)
+    start = start_time(universe, k)
     plan = clock(universe, k, start, marks, resolution.stepping)
     times = np.exp(plan.boundaries)
-    system = KineticSystem(universe, k, resolution.chains)
-    first = _first_state(system, adiabatic(universe, k, start))
     try:
-        course = integrate(system, times, first, _OBSERVED, progress)
+        course = integrate(system, times, system.first_state(start), system.observed, progress)
     except SolverFailure as failure:
         raise _explain(failure, universe, k) from failure
-    observed = dict(zip(_OBSERVED, course.observed, strict=True))
-    trace, drift = _read_off(universe, k, times, observed)
+    reading = system.read_off(times, course.observed)
+    trace = Trace(**{name: np.ascontiguousarray(array.T) for name, array in reading.quantities.items()})
 
     asked = plan.mark_index[np.searchsorted(scale_factors, 1.0 / (1.0 + z))].T  # boundary of each (mode, redshift)
     rows = np.arange(len(k))[:, None]
@@ -92,7 +85,7 @@ def evolve(
         theta_baryon=trace.theta_baryon[rows, asked],
         delta_gas_temperature=trace.delta_gas_temperature[rows, asked],
         trace=trace,
-        constraint=_check_constraint(drift, universe, k, times),
+        constraint=_check_constraint(reading.constraint_drift, universe, k, times),
         counts=course.counts,
         warnings=_curvature_warning(universe, k),
     )
@@ -116,63 +109,6 @@ def _redshifts(values) -> np.ndarray:
     if z.ndim != 1 or z.size == 0 or not np.all((z >= 0.0) & (z <= HIGHEST_REDSHIFT)):
         raise ValueError(f"redshifts must be one or more numbers from 0 to {HIGHEST_REDSHIFT:g}, got {values}")
     return z
-
-
-def _first_state(system: KineticSystem, known: dict[str, np.ndarray]) -> np.ndarray:
-    state = np.zeros((len(system.unknowns), len(system.wavenumber)))
-    for name, values in known.items():
-        state[system.unknowns.index(name)] = values
-    return state
-
-
-def _read_off(universe, k, times, y) -> tuple[Trace, np.ndarray]:
-    """Turn the observed rows, shape (boundary, mode), into the trace and the constraint's drift."""
-    now = universe.conditions(times)
-    hubble = now.hubble_rate
-    r = now.photon_baryon_ratio
-    theta = k * y["theta_baryon"]
-    metric_half = 0.5 * k * y["metric_rate"]
-    dark_rate, baryon_rate = -metric_half, -theta - metric_half
-    photon_rate = -4 / 3 * (theta - k * y["slip"] + metric_half)
-    pressure = k**2 * now.isothermal_sound_speed_squared * (y["delta_baryon"] + y["delta_gas_temperature"])
-    theta_rate = -hubble * theta + pressure - r * now.scattering_rate * k * y["slip"]
-    warmth = now.photon_gas_temperature_ratio
-    heating = warmth * (1.25 * y["delta_photon"] - y["delta_gas_temperature"]) - y["delta_photon"]
-    free_rate = 2 / 3 * baryon_rate + now.compton_rate * heating
-    temperature_rate = np.where(now.compton_rate > LOCKED_TEMPERATURE * hubble, photon_rate / 4, free_rate)
-
-    def by_mode(array: np.ndarray) -> np.ndarray:
-        return np.ascontiguousarray(array.T)
-
-    trace = Trace(
-        log_scale_factor=by_mode(np.log(now.scale_factor)),
-        delta_dark=by_mode(y["delta_dark"]),
-        delta_baryon=by_mode(y["delta_baryon"]),
-        theta_baryon=by_mode(theta),
-        delta_gas_temperature=by_mode(y["delta_gas_temperature"]),
-        delta_dark_slope=by_mode(dark_rate / hubble),
-        delta_baryon_slope=by_mode(baryon_rate / hubble),
-        theta_baryon_slope=by_mode(theta_rate / hubble),
-        delta_gas_temperature_slope=by_mode(temperature_rate / hubble),
-    )
-    return trace, _constraint_drift(now, k, y)
-
-
-def _constraint_drift(now, k, y) -> np.ndarray:
-    """How much ``k^2 eta - H h'/2 + sum g delta / 2`` changed in each step, shape (step, mode).
-
-    The Einstein equations keep it at zero (Ma & Bertschinger 1995, eq. 21 a). What the start
-    leaves of it stays; its changes, relative to its largest term at the time, are the errors of the steps.
-    """
-    terms = np.stack([
-        y["curvature"],
-        -0.5 * now.hubble_rate / k * y["metric_rate"],
-        0.5 * now.gravity_dark / k**2 * y["delta_dark"],
-        0.5 * now.gravity_baryon / k**2 * y["delta_baryon"],
-        0.5 * now.gravity_photon / k**2 * y["delta_photon"],
-        0.5 * now.gravity_neutrino / k**2 * y["delta_neutrino"],
-    ])  # fmt: skip
-    return np.abs(np.diff(terms.sum(axis=0), axis=0)) / np.abs(terms[:, 1:]).max(axis=0)
 
 
 def _check_constraint(drift: np.ndarray, universe: Universe, k: np.ndarray, times: np.ndarray) -> np.ndarray:

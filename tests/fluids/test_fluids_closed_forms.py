@@ -44,7 +44,7 @@ def test_initial_potential_with_neutrinos(effective_number):
 
 def test_radiation_era_dark_matter_without_anisotropic_stress():
     # Closed form of a fluid with c_s^2 = 1/3, no baryons, no neutrinos: delta_c in the Newtonian gauge (Dodelson 2003
-    # chapter 7, from memory; coefficients A = 9, B = 0.6237 verified in the project's list of checks).
+    # chapter 7, from memory; coefficients A = 9, B = 0.6237 verified numerically).
     run = course(cosmology(effective_number=0.0, baryon_density=TRACE_OF_BARYONS), 3000.0, end=2e-7)
     x = run.x / np.sqrt(3.0)
     psi_primordial = 2.0 / 3.0
@@ -123,8 +123,8 @@ def test_growth_with_smooth_baryons_before_decoupling():
 
 def test_tight_coupling_oscillation_phase_amplitude_and_damping():
     # Theta_0 = delta_photon / 4 swings as (1+R)^(-1/4) exp[-(k/k_D)^2] cos(k r_s + phase): sound horizon of
-
-    # of the list of checks). Nothing but plasma, so that R grows; deep inside the horizon gravity is a small offset.
+    # Eisenstein & Hu 1998 eq. 6, WKB amplitude of Hu & Sugiyama 1996, damping of Kaiser 1983 with 16/15 (all from
+    # memory). Nothing but plasma, so that R grows; deep inside the horizon its gravity is a small offset.
     run = course(cosmology(effective_number=0.0, baryon_density=0.3, dark_matter_density=0.0), 2.0, end=4e-4)
     now = run.now
     a = now.scale_factor
@@ -199,7 +199,7 @@ def test_absorbing_layer_lets_no_reflection_return():
 
 def test_two_cold_fluids_after_decoupling():
     # Matter and smooth radiation: delta_b - delta_c is a constant plus ln[(sqrt(1+y)-1)/(sqrt(1+y)+1)] (closed form,
-    # section 7 of the list of checks). From z = 200 drag is gone; pressure is negligible at 2/Mpc.
+    # derived from the growth equation). From z = 200 drag is gone; pressure is negligible at 2/Mpc.
     run = course(cosmology(), 2.0, end=1 / 11.0)
     y = matter_over_radiation(run)
     epochs = y[-1] * 11.0 / np.array([151.0, 41.0, 101.0, 21.0, 11.0])

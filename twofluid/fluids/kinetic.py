@@ -23,6 +23,8 @@ import numpy as np
 
 from ..solver.collocation import STAGES
 from ..universe import Universe
+from .readout import Reading, constraint_drift, read_quantities
+from .start import adiabatic
 
 # Absorbing layer: rate at the last moment in units of k, and the power of l / L with which it fades to low moments.
 # Chosen by measurement on several universes; weaker and broader for photons, whose chain ends in scattering at first.
@@ -59,6 +61,11 @@ class KineticSystem:
     chains : ChainLengths
     """
 
+    observed = (
+        "metric_rate", "curvature", "delta_dark", "delta_baryon", "delta_photon", "delta_neutrino",
+        "delta_gas_temperature", "theta_baryon", "slip",
+    )  # fmt: skip
+
     def __init__(self, universe: Universe, wavenumber: np.ndarray, chains: ChainLengths):
         self.universe = universe
         self.wavenumber = np.asarray(wavenumber, dtype=float)
@@ -67,6 +74,41 @@ class KineticSystem:
         self._row = {name: row for row, name in enumerate(self.unknowns)}
         early = np.full((STAGES, 1, 1), universe.conformal_time(1e-6))  # any epoch tells the pattern
         self.couplings = frozenset(self.step_rates(np.array([0]), early, np.zeros((1, 1))))
+
+    def first_state(self, start: np.ndarray) -> np.ndarray:
+        """State of every mode at its start.
+
+        Parameters
+        ----------
+        start : array, shape (mode,)
+            Conformal time of each start [Mpc].
+
+        Returns
+        -------
+        array, shape (unknown, mode)
+        """
+        state = np.zeros((len(self.unknowns), len(self.wavenumber)))
+        for name, values in adiabatic(self.universe, self.wavenumber, start).items():
+            state[self._row[name]] = values
+        return state
+
+    def read_off(self, times: np.ndarray, observed: np.ndarray) -> Reading:
+        """Turn what was observed into quantities.
+
+        Parameters
+        ----------
+        times : array, shape (boundary, mode)
+            Conformal times [Mpc].
+        observed : array, shape (unknown, boundary, mode)
+            The unknowns named in `observed`.
+
+        Returns
+        -------
+        Reading
+        """
+        now = self.universe.conditions(times)
+        y = dict(zip(self.observed, observed, strict=True))
+        return Reading(read_quantities(now, self.wavenumber, y), constraint_drift(now, self.wavenumber, y))
 
     def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict:
         """Evaluate step times rate; see `twofluid.solver.LinearSystem`."""
