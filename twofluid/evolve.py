@@ -14,7 +14,7 @@ from .universe import Universe
 SMALLEST_WAVENUMBER, LARGEST_WAVENUMBER = 1e-4, 1e5  # [1/Mpc]: what the numerics were measured for
 HIGHEST_REDSHIFT = 1e6  # every mode has started long before
 CURVATURE_MARGIN = 100.0  # k times the curvature radius below which curvature could show in the modes
-CONSTRAINT_LIMIT = 0.01  # a larger drift of the energy constraint means the run went wrong
+CONSTRAINT_LIMIT = 0.03  # a larger drift of the energy constraint means the run went wrong
 
 
 def evolve(

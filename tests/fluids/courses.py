@@ -10,7 +10,15 @@ from twofluid.solver import integrate
 from twofluid.universe import Universe
 
 FINE = Resolution(
-    Stepping(smooth_step=0.05, scattering_change=0.5, phase_step=0.4, diffusion_exponent=40.0, felt_phase=400.0),
+    Stepping(
+        outside_step=0.1,
+        smooth_step=0.05,
+        free_step=0.05,
+        scattering_change=0.5,
+        phase_step=0.4,
+        diffusion_exponent=40.0,
+        felt_phase=400.0,
+    ),
     ChainLengths(photon=12, polarization=12, neutrino=16),
 )
 

@@ -72,8 +72,6 @@ class KineticSystem:
         self.chains = chains
         self.unknowns = _elimination_order(self.chains)
         self._row = {name: row for row, name in enumerate(self.unknowns)}
-        early = np.full((STAGES, 1, 1), universe.conformal_time(1e-6))  # any epoch tells the pattern
-        self.couplings = frozenset(self.step_rates(np.array([0]), early, np.zeros((1, 1))))
 
     def first_state(self, start: np.ndarray) -> np.ndarray:
         """State of every mode at its start.
