@@ -4,7 +4,7 @@ import pytest
 from astropy import units
 from scenario_texts import VALUES, full_text, wavenumber_text
 
-from twofluid.scenario import Cosmology, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
+from twofluid.scenario import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
 
 MINIMAL = """
 cosmology: {hubble_constant: 70 km/(s Mpc), baryon_density: 0.02, dark_matter_density: 0.1}
@@ -34,6 +34,7 @@ def test_every_key_reaches_its_field():
         primordial=Primordial(amplitude=2e-9, tilt=0.96, pivot=0.002),
         sampling=Sampling(wavenumbers=wavenumbers, redshifts=(1000.0, 100.0, 10.0)),
         products={"lag": {"fractions": (0.5, 0.9)}},
+        method=Method("sound-speed"),
     )
     assert len(wavenumbers) == 21  # four decades, five points each, both ends
     assert scenario.assumed == ()

@@ -65,6 +65,8 @@ class KineticSystem:
         "metric_rate", "curvature", "delta_dark", "delta_baryon", "delta_photon", "delta_neutrino",
         "delta_gas_temperature", "theta_baryon", "slip",
     )  # fmt: skip
+    switches = ()  # one set of equations from first step to last
+    cautions = ()
 
     def __init__(self, universe: Universe, wavenumber: np.ndarray, chains: ChainLengths):
         self.universe = universe
