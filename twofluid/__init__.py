@@ -1,6 +1,7 @@
 """Baryons and dark matter followed as coupled linear fluids from the radiation era to today."""
 
-from .evolve import evolve
+from .certify import certify
+from .evolve import evolve, evolve_many
 from .history import History, load_history
 from .scenario import Scenario, ScenarioError, parse_scenario, read_scenario
 from .solver import SolverFailure
@@ -16,7 +17,9 @@ __all__ = [
     "Universe",
     "UniverseError",
     "__version__",
+    "certify",
     "evolve",
+    "evolve_many",
     "load_history",
     "parse_scenario",
     "read_scenario",

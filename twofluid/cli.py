@@ -10,12 +10,14 @@ from pathlib import Path
 
 STATUS_FAILED = 1  # the input was good, but solving or writing failed
 STATUS_REFUSED = 2  # the request was refused: nothing was solved, nothing was written
+STATUS_UNCERTAIN = 3  # all is written, but the numerical error exceeds what the accuracy asked for promises
 STATUS_INTERRUPTED = 130  # what shells report for a program ended by Ctrl-C
 
 DESCRIPTION = "Baryons and dark matter as coupled linear fluids, from the radiation era to today."
 EPILOG = (
     "Exit status: 0 done; 1 solving or writing failed; 2 the request was refused, nothing solved and nothing "
-    "written; 130 interrupted. A file stands in the output directory complete or not at all."
+    "written; 3 all written, but the numerical error exceeds what was promised; 130 interrupted. A file stands in "
+    "the output directory complete or not at all."
 )
 
 
@@ -34,7 +36,7 @@ def main(arguments=None):
     Returns
     -------
     int
-        Exit status: 0 done, 1 solving or writing failed, 2 refused, 130 interrupted.
+        Exit status: 0 done, 1 solving or writing failed, 2 refused, 3 less certain than promised, 130 interrupted.
     """
     for stream in (sys.stdout, sys.stderr):
         if isinstance(stream, io.TextIOWrapper):
@@ -65,6 +67,8 @@ def _parser():
     run.add_argument("--out", metavar="DIR", type=Path, required=True,
                      help="output directory; with several files each gets a directory of its name in it")
     run.add_argument("--overwrite", action="store_true", help="replace files of an earlier run")
+    run.add_argument("--no-certificate", dest="certificate", action="store_false",
+                     help="do not estimate the numerical error; the tables then say so")
     run.set_defaults(command=_run)
 
     template = commands.add_parser("template", help="print a scenario with every key explained", **words)
@@ -101,15 +105,17 @@ def _run(options):
             _check_outputs(scenario, directory, options.overwrite)
     except RequestError as error:
         return _complain(error, STATUS_REFUSED)
+    status = 0
     for file, scenario, directory in zip(options.files, scenarios, directories, strict=True):
         try:
-            _solve_and_write(scenario, directory)
+            if not _solve_and_write(scenario, directory, options.certificate):
+                status = STATUS_UNCERTAIN
         except SolverFailure as failure:
             return _complain(f"{file}: {failure}", STATUS_FAILED)
         except OSError as error:
             place, reason = error.filename or directory, error.strerror or error
             return _complain(f"cannot write {place}: {reason}", STATUS_FAILED)
-    return 0
+    return status
 
 
 def _prepare(file):
@@ -160,13 +166,16 @@ def _check_outputs(scenario, directory, overwrite):
         raise RequestError(f"--out: {directory} already holds {names}; add --overwrite to replace them")
 
 
-def _solve_and_write(scenario, directory):
-    from twofluid import evolve
+def _solve_and_write(scenario, directory, certificate):
+    """Solve one scenario and write all it asks for; return whether its accuracy is what was promised."""
+    from twofluid import certify, evolve
     from twofluid.files import write_file
     from twofluid.registry import make_outputs, output_names
     from twofluid.report import progress_bar, run_lines
 
     history = evolve(scenario, progress=progress_bar(sys.stderr))
+    if certificate:
+        history = certify(history)
     outputs, summary = make_outputs(history)
     directory.mkdir(parents=True, exist_ok=True)
     for name, content in outputs.items():
@@ -176,6 +185,10 @@ def _solve_and_write(scenario, directory):
     for warning in history.warnings:
         print(f"twofluid: warning: {warning}", file=sys.stderr)
     _say("\n".join([*run_lines(history), *summary, f"  written to {directory}: {', '.join(outputs)}"]))
+    kept = history.certificate is None or history.certificate.kept
+    if not kept:
+        print(f"twofluid: warning: {history.certificate.sentence()}; the tables say so too", file=sys.stderr)
+    return kept
 
 
 def _say(text):

@@ -5,6 +5,7 @@ from pathlib import Path
 
 import numpy as np
 
+from .certificate import Certificate
 from .files import replace_atomically
 from .scenario import Scenario, scenario_from_mapping
 from .universe import Universe
@@ -73,6 +74,8 @@ class History:
         What the run cost: "steps" over all modes, "lanes" with padding, "factorizations", "rate_evaluations".
     warnings : tuple of str
         What the user has to know about this run.
+    certificate : Certificate or None
+        Estimated numerical error, once `twofluid.certify` has worked it out.
     """
 
     scenario: Scenario
@@ -87,6 +90,7 @@ class History:
     constraint: np.ndarray
     counts: dict[str, int]
     warnings: tuple[str, ...] = field(default=())
+    certificate: Certificate | None = None
 
     @property
     def has_dark_matter(self) -> bool:
@@ -147,6 +151,8 @@ class History:
 
         arrays = {name: getattr(self, name) for name in (*EVOLVED, "wavenumber", "redshift", "constraint")}
         arrays |= {f"trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
+        if self.certificate is not None:
+            arrays |= {f"certificate_{part.name}": getattr(self.certificate, part.name) for part in fields(Certificate)}
         words = {
             "format": _FORMAT,
             "scenario": self.scenario.to_mapping(),
@@ -188,12 +194,16 @@ def load_history(path) -> History:
         raise ValueError(f"{path} has layout {words['format']}, this version reads layout {_FORMAT}: run it again")
     scenario = replace(scenario_from_mapping(words["scenario"]), assumed=tuple(words["assumed"]))
     trace = Trace(**{part.name: arrays.pop(f"trace_{part.name}") for part in fields(Trace)})
+    certificate = None
+    if "certificate_promise" in arrays:
+        certificate = Certificate(**{part.name: arrays.pop(f"certificate_{part.name}") for part in fields(Certificate)})
     return History(
         scenario=scenario,
         universe=Universe(scenario.cosmology),
         trace=trace,
         counts=words["counts"],
         warnings=tuple(words["warnings"]),
+        certificate=certificate,
         **arrays,
     )
 

@@ -102,7 +102,10 @@ def run_lines(history):
         f"{QUANTITIES[name].plain_symbol} = {landmarks[name]:.6g} {QUANTITIES[name].unit}".rstrip()
         for name in LANDMARKS_IN_SUMMARY
     ]
-    return [history.scenario.title, f"  {_request(history.scenario)}", f"  {', '.join(marks)}"]
+    lines = [history.scenario.title, f"  {_request(history.scenario)}", f"  {', '.join(marks)}"]
+    if history.certificate is not None:
+        lines += [f"  {part}" for part in history.certificate.sentence().split("; ", maxsplit=2)]
+    return lines
 
 
 def lag_lines(tables):

@@ -2,12 +2,13 @@
 
 from .closures import CLOSURES
 from .kinetic import ChainLengths, KineticSystem
-from .resolution import Resolution, resolution_for
+from .resolution import ACCURACIES, Resolution, resolution_for
 from .sound_speed import SoundSpeedSystem
 from .start import adiabatic, start_time
 from .stepping import Stepping, clock
 
 __all__ = [
+    "ACCURACIES",
     "CLOSURES",
     "ChainLengths",
     "KineticSystem",

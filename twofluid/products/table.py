@@ -13,6 +13,7 @@ FRAME = (
     "amplitudes per unit comoving curvature, signed so that densities grow positive"
 )
 NO_DARK_MATTER = "this universe has no dark matter; whatever is measured against it is empty"
+NO_CERTIFICATE = "none: the numerical error of this run was not estimated"
 LANDMARK_DIGITS = 6  # significant, of a landmark in a header; the physics behind is good to four or five
 
 
@@ -102,7 +103,7 @@ def header(history):
     Returns
     -------
     dict
-        Program and version, scenario, what was assumed, closure, frame, landmarks, accuracy, warnings.
+        Program and version, scenario, what was assumed, closure, frame, landmarks, certificate, warnings.
     """
     from twofluid import __version__
 
@@ -114,19 +115,12 @@ def header(history):
         "closure": history.scenario.method.closure,
         "frame": FRAME,
         "landmarks": {name: _rounded(name, value) for name, value in landmarks.items()},
-        "accuracy": _accuracy(history),
+        "certificate": NO_CERTIFICATE if history.certificate is None else history.certificate.sentence(),
         "warnings": list(history.warnings),
     }
     if not history.has_dark_matter:
         provenance["no_dark_matter"] = NO_DARK_MATTER
     return provenance
-
-
-def _accuracy(history):
-    drift = np.max(history.constraint)
-    if np.isnan(drift):
-        return "this closure has no energy constraint to check"
-    return f"energy constraint held to {drift:.1e} of its largest term"
 
 
 def _rounded(name, value):

@@ -117,9 +117,12 @@ class Method:
     ----------
     closure : str
         Which equations are solved: "kinetic" or "sound-speed".
+    accuracy : str
+        How finely they are followed: "draft", "standard" or "reference".
     """
 
     closure: str = default_of("method.closure")
+    accuracy: str = default_of("method.accuracy")
 
 
 def default_products():
