@@ -1,5 +1,6 @@
 """Baryons and dark matter followed as coupled linear fluids from the radiation era to today."""
 
+from .comparison import Comparison, compare
 from .evolve import evolve
 from .history import History, load_history
 from .scenario import Scenario, ScenarioError, parse_scenario, read_scenario
@@ -9,6 +10,7 @@ from .universe import Universe, UniverseError
 __version__ = "0.1.0"
 
 __all__ = [
+    "Comparison",
     "History",
     "Scenario",
     "ScenarioError",
@@ -16,6 +18,7 @@ __all__ = [
     "Universe",
     "UniverseError",
     "__version__",
+    "compare",
     "evolve",
     "load_history",
     "parse_scenario",

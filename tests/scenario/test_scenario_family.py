@@ -267,7 +267,7 @@ def test_the_family_differs_from_its_baseline_in_what_it_says():
     changes = {
         "no-dark-matter": {"dark_matter_density": 0.0},
         "no-dark-matter-open": {"dark_matter_density": 0.0, "cosmological_constant_fraction": 0.68869},
-        "baryons-instead": {"dark_matter_density": 0.0, "baryon_density": round(omega_b + omega_c, 4)},
+        "all-baryons": {"dark_matter_density": 0.0, "baryon_density": round(omega_b + omega_c, 4)},
         "half-dark-matter": {"dark_matter_density": omega_c / 2},
         "twice-baryons": {"baryon_density": 2 * omega_b},
     }
