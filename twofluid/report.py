@@ -162,8 +162,8 @@ def comparison_lines(comparison):
         Lines.
     """
     histories = comparison.histories
-    numbered = [(f"  {n}", h.scenario.title, h.scenario.source or "")
-                for n, h in enumerate(histories, 1)]  # fmt: skip
+    sources = [history.scenario.source or "" for history in histories]
+    numbered = [(f"  {number}", *names) for number, names in enumerate(zip(comparison.labels, sources, strict=True), 1)]
     return [
         f"{len(histories)} scenarios compared, every ratio to the first",
         *aligned(numbered),

@@ -136,6 +136,20 @@ def test_differences_have_a_row_of_panels_for_each_other_scenario():
     assert [[text.get_text() for text in axes.texts] for axes in bare] == [["no dark matter"], [], ["no dark matter"]]
 
 
+def test_heights_are_linear_where_differences_are_alike_and_logarithmic_where_not():
+    values = tables()["differences"]
+    values["delta_baryon_difference"] = -0.002 - 0.001 * np.sin(values["wavenumber"])
+    axes = difference_figure({"differences": values}).axes[1]
+    assert axes.get_yscale() == "linear"
+    low, high = axes.get_ylim()
+    assert -0.0035 < low < -0.0029
+    assert 0 < high < 0.0005
+    values["delta_baryon_difference"][0] = 500.0  # a wave passing through zero
+    axes = difference_figure({"differences": values}).axes[1]
+    assert axes.get_yscale() == "symlog"
+    assert axes.get_ylim()[1] < 4
+
+
 def test_no_difference_at_all_can_be_drawn():
     values = tables()["differences"]
     values["delta_baryon_difference"] = 0.0

@@ -28,6 +28,7 @@ RATIO_VIEW = (-1.0, 2.0)  # ratios beyond are cut off: dark matter passing throu
 LARGEST_DIFFERENCE = 3.0  # differences beyond are cut off: a wave passing through zero makes them infinite
 DECADES = 3  # of a difference, on either side of zero, that the panel shows; linear inside
 SMALLEST_DIFFERENCE = 1e-9  # round-off: no panel looks closer than this
+EVEN = 10.0  # largest over typical difference, below which a linear panel shows all there is
 ROOM = 0.05  # of the span of an axis left free beyond the data at either end
 ROW_HEIGHT = 1.7  # one row of panels in a figure of several [inch]
 LEGEND_HEIGHT = 0.3  # what a legend above the panels adds [inch]
@@ -104,7 +105,7 @@ def lag_comparison_figure(tables):
         _wavenumber_axis(right, catchup)
         _redshift_axis(right.yaxis, right.set_yscale)
         low, high = _view([np.log1p(np.ma.masked_invalid(y)) for *_, y in caught], (0.0, np.inf))
-        right.set_ylim(np.expm1(low), np.expm1(high))
+        right.set_ylim(np.expm1(max(low, 0.0)), np.expm1(high))
         right.set_ylabel(axis_label("redshift", f"caught up to {100 * fraction:g} % at redshift"))
         share_legend(figure, left)
     return figure
@@ -122,7 +123,8 @@ def difference_figure(tables):
     -------
     matplotlib.figure.Figure
         A figure two columns wide: relative differences of both amplitudes and difference of their ratio against
-        wavenumber, one curve per redshift. Heights are logarithmic but for the smallest differences.
+        wavenumber, one curve per redshift. Where differences vary much, heights are logarithmic but for the
+        smallest.
     """
     table = tables["differences"]
     labels = list(dict.fromkeys(table["scenario"].tolist()))
@@ -179,6 +181,9 @@ def _draw_differences(axes, table, name):
         axes.set_yticks([])
         return
     largest = np.clip(heights.max(), SMALLEST_DIFFERENCE, LARGEST_DIFFERENCE)
+    if largest < EVEN * np.median(heights):
+        axes.set_ylim(*_view([np.zeros(1), *(y for *_, y in curves)], (-largest, largest)))
+        return
     linear = 10.0 ** (np.ceil(np.log10(largest)) - DECADES)
     axes.set_yscale("symlog", linthresh=linear, linscale=1.0)
     axes.set_ylim(*((1 + ROOM) * np.array([-largest, largest])))
@@ -207,7 +212,7 @@ def _view(ordinates, limits):
     values = np.clip(np.ma.masked_invalid(np.ma.concatenate(ordinates)).compressed(), *limits)
     low, high = (values.min(), values.max()) if values.size else (0.0, 1.0)
     room = ROOM * (high - low) or ROOM
-    return max(low - room, limits[0]), high + room
+    return low - room, high + room
 
 
 def _wavenumber_axis(axes, table):
