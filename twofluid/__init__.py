@@ -1,7 +1,8 @@
 """Baryons and dark matter followed as coupled linear fluids from the radiation era to today."""
 
-from .certify import certify
-from .evolve import evolve, evolve_many
+from .certification import certify
+from .comparison import Comparison, compare
+from .evolution import evolve, evolve_many
 from .history import History, load_history
 from .scenario import Scenario, ScenarioError, parse_scenario, read_scenario
 from .solver import SolverFailure
@@ -10,6 +11,7 @@ from .universe import Universe, UniverseError
 __version__ = "0.1.0"
 
 __all__ = [
+    "Comparison",
     "History",
     "Scenario",
     "ScenarioError",
@@ -18,6 +20,7 @@ __all__ = [
     "UniverseError",
     "__version__",
     "certify",
+    "compare",
     "evolve",
     "evolve_many",
     "load_history",

@@ -65,6 +65,19 @@ _LAG = (
              "baryon over dark-matter density contrast at redshift 0; empty: no dark matter"),
 )
 
+_COMPARISON = (
+    Quantity("scenario", r"\mathrm{scenario}", "", "title of the scenario the row belongs to"),
+    Quantity("X_over_first", r"X/X_1", "",
+             "X over that of the first scenario at the same place; empty: one of the two is, or has no finite ratio"),
+    Quantity("delta_dark_difference", r"\Delta\delta_\mathrm{c}/\delta_\mathrm{c}", "",
+             "delta_dark less that of the first scenario, relative to it; empty: one of the two has no dark matter"),
+    Quantity("delta_baryon_difference", r"\Delta\delta_\mathrm{b}/\delta_\mathrm{b}", "",
+             "delta_baryon less that of the first scenario, relative to it"),
+    Quantity("ratio_difference", r"\Delta(\delta_\mathrm{b}/\delta_\mathrm{c})", "",
+             "baryon over dark-matter density contrast less that of the first scenario; "
+             "empty: one of the two has no dark matter"),
+)
+
 _LANDMARKS = (
     Quantity("equality_redshift", r"z_\mathrm{eq}", "", "matter and radiation have equal density"),
     Quantity("equality_wavenumber", r"k_\mathrm{eq}", "1/Mpc", "conformal expansion rate at equality"),
@@ -79,7 +92,7 @@ _LANDMARKS = (
     Quantity("conformal_age", r"\tau_0", "Mpc", "conformal time today"),
 )
 
-QUANTITIES = {quantity.name: quantity for quantity in (*_AXES, *_AMPLITUDES, *_LAG, *_LANDMARKS)}
+QUANTITIES = {quantity.name: quantity for quantity in (*_AXES, *_AMPLITUDES, *_LAG, *_COMPARISON, *_LANDMARKS)}
 
 
 def nomenclature_markdown() -> str:

@@ -9,7 +9,7 @@ from test_evolve_accuracy import scenario
 
 from twofluid import SolverFailure, certify, evolve, load_history
 from twofluid.certificate import Certificate
-from twofluid.certify import BUDGET, FIXED_COST
+from twofluid.certification import BUDGET, FIXED_COST
 from twofluid.fluids import ACCURACIES, ChainLengths, KineticSystem, Resolution, resolution_for
 from twofluid.products import lag_table
 from twofluid.scenario import Method
@@ -78,7 +78,7 @@ def test_a_wrong_coefficient_is_noticed_by_the_constraint(monkeypatch):
     monkeypatch.setattr(KineticSystem, "step_rates", wrong)
     with pytest.raises(SolverFailure, match="Einstein constraint drifts"):
         run(wavenumbers=[0.05, 0.5])
-    monkeypatch.setattr("twofluid.evolve.CONSTRAINT_LIMIT", 1.0)
+    monkeypatch.setattr("twofluid.evolution.CONSTRAINT_LIMIT", 1.0)
     history = certify(run(wavenumbers=[0.05, 0.5]), modes=[0])
     assert history.certificate.kept  # finer steps do not help against a wrong equation
     assert history.certificate.constraint > 1e3 * right.certificate.constraint

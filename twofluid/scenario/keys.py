@@ -25,6 +25,11 @@ def name_of(path):
     return path.rpartition(".")[2]
 
 
+def path_in(section, name):
+    """Return the dotted path of a name in a section."""
+    return f"{section}.{name}" if section else name
+
+
 class Kind(Enum):
     """What sort of value a key takes; the text is what a reader of the manual sees."""
 
@@ -189,6 +194,10 @@ KEYS = (
 
 KEY_AT = {key.path: key for key in KEYS}
 
+# Not part of the request: it is gone once the file is read.
+BASE = Key("base", Kind.TEXT, "another scenario file to start from; everything else here is a change to it",
+           unsaid="none, the file stands alone", example="saltmarsh-baseline.yaml")  # fmt: skip
+
 
 def default_of(path):
     """Return the default of the key at a dotted path."""
@@ -207,4 +216,5 @@ def sections_under(section):
 
 def names_under(section):
     """Return every name a section may hold, keys first."""
-    return [key.name for key in keys_under(section)] + [name_of(path) for path in sections_under(section)]
+    top = [BASE.name] if section == BASE.section else []
+    return top + [key.name for key in keys_under(section)] + [name_of(path) for path in sections_under(section)]

@@ -93,7 +93,7 @@ def evolve_many(
     """
     universes = build_universes([scenario.cosmology for scenario in scenarios])
     requests = [
-        _request(scenario, universe, wavenumbers, redshifts, resolution)
+        _request(scenario, universe, wavenumbers, redshifts, resolution, named=len(scenarios) > 1)
         for scenario, universe in zip(scenarios, universes, strict=True)
     ]
     return _follow(requests, progress)
@@ -125,6 +125,8 @@ class _Request:
         Conformal time at which each mode starts [Mpc].
     plan : Clock
         Its clock, in log conformal time.
+    named : bool
+        Whether a failure has to name the scenario.
     """
 
     scenario: Scenario
@@ -136,9 +138,10 @@ class _Request:
     asked: np.ndarray
     start: np.ndarray
     plan: Clock
+    named: bool
 
 
-def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, resolution) -> _Request:
+def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, resolution, named=False) -> _Request:
     """Check the sampling, choose the resolution and lay out the clock."""
     k = _wavenumbers(scenario.sampling.wavenumbers if wavenumbers is None else wavenumbers)
     z = _redshifts(scenario.sampling.redshifts if redshifts is None else redshifts)
@@ -154,7 +157,7 @@ def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, res
     asked = np.searchsorted(stops, marks)[np.searchsorted(scale_factors, 1.0 / (1.0 + z))]
     start = start_time(universe, k)
     plan = clock(universe, k, start, stops, resolution.stepping)
-    return _Request(scenario, universe, k, z, resolution, system, asked, start, plan)
+    return _Request(scenario, universe, k, z, resolution, system, asked, start, plan, named)
 
 
 def _sweeps(requests: Sequence[_Request]) -> Iterator[list[int]]:
@@ -281,8 +284,9 @@ def _check_constraint(drift: np.ndarray, request: _Request, times: np.ndarray) -
 def _explain(failure: SolverFailure, request: _Request, mode: int) -> SolverFailure:
     """Say which wavenumber failed, and at which redshift."""
     redshift = 1.0 / float(request.universe.scale_factor(failure.time)) - 1.0
+    scenario = f"{request.scenario.title}: " if request.named else ""
     return SolverFailure(
-        f"the integration failed at k = {request.wavenumber[mode]:.6g} 1/Mpc, z = {redshift:.6g}: {failure}",
+        f"{scenario}the integration failed at k = {request.wavenumber[mode]:.6g} 1/Mpc, z = {redshift:.6g}: {failure}",
         mode=mode,
         time=failure.time,
     )

@@ -11,7 +11,7 @@ from dataclasses import replace
 import numpy as np
 
 from .certificate import Certificate
-from .evolve import evolve
+from .evolution import evolve
 from .fluids import ACCURACIES, resolution_for
 from .history import History
 
