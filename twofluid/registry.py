@@ -3,12 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
-from twofluid.drawing import lag_figure
+from twofluid.drawing import lag_figure, scales_figure
 from twofluid.files import FIGURE_FORMATS, figure_bytes, table_bytes
-from twofluid.products import catchup_table, evolution_table, lag_table
-from twofluid.report import lag_lines
+from twofluid.products import (
+    catchup_table,
+    evolution_table,
+    lag_table,
+    map_redshifts,
+    scales_table,
+    verdict_table,
+)
+from twofluid.report import lag_lines, scales_lines
 
 EVOLUTION = "evolution"  # the amplitudes, written whatever products are asked for
 
@@ -26,11 +33,32 @@ class Product:
         under the name of the product.
     summary : callable
         Function (mapping of file name to Table) -> list of lines for the terminal.
+    drawn : mapping of str to callable
+        As `tables`, for tables that only the figure is made from; they are not written.
     """
 
     tables: Mapping[str, Callable]
     figure: Callable
     summary: Callable
+    drawn: Mapping[str, Callable] = field(default_factory=dict)
+
+
+def _given(options, *names):
+    """Return those of the named options that the scenario holds."""
+    return {name: options[name] for name in names if name in options}
+
+
+def _scales(history, options, redshift=None):
+    return scales_table(history, redshift, **_given(options, "mass_radius"))
+
+
+def _verdict(history, options, redshift=None):
+    return verdict_table(history, redshift, **_given(options, "together"))
+
+
+def _on_map(make):
+    """Return the function that makes a table on the redshifts of the map."""
+    return lambda history, options: make(history, options, map_redshifts(**_given(options, "map_from")))
 
 
 PRODUCTS = {
@@ -41,6 +69,12 @@ PRODUCTS = {
         },
         figure=lag_figure,
         summary=lag_lines,
+    ),
+    "scales": Product(
+        tables={"scales": _scales, "verdict": _verdict},
+        figure=scales_figure,
+        summary=scales_lines,
+        drawn={"scales_map": _on_map(_scales), "verdict_map": _on_map(_verdict)},
     ),
 }
 
@@ -94,7 +128,8 @@ def make_outputs(history):
         product = PRODUCTS[name]
         tables = {stem: make(history, options) for stem, make in product.tables.items()}
         outputs |= {f"{stem}.ecsv": table_bytes(table) for stem, table in tables.items()}
-        figure = product.figure(tables)
+        drawn = {stem: make(history, options) for stem, make in product.drawn.items()}
+        figure = product.figure(tables | drawn)
         if figure is not None:
             outputs |= {f"{name}.{form}": figure_bytes(figure, form, scenario) for form in FIGURE_FORMATS}
         summary += product.summary(tables)

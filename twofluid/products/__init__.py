@@ -2,5 +2,7 @@
 
 from twofluid.products.evolution import evolution_table
 from twofluid.products.lag import catchup_table, lag_table
+from twofluid.products.scales import map_redshifts, scales_table
+from twofluid.products.verdict import verdict_table
 
-__all__ = ["catchup_table", "evolution_table", "lag_table"]
+__all__ = ["catchup_table", "evolution_table", "lag_table", "map_redshifts", "scales_table", "verdict_table"]
