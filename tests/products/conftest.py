@@ -96,7 +96,7 @@ def standard_run():
 def bare_run():
     """The same without dark matter."""
     scenario = standard_scenario(dark_matter_density=0.0)
-    return evolve(scenario, wavenumbers=np.geomspace(1e-4, 300.0, 14), redshifts=RUN_REDSHIFTS)
+    return evolve(scenario, wavenumbers=np.geomspace(1e-4, 150.0, 12), redshifts=RUN_REDSHIFTS)
 
 
 @pytest.fixture(scope="session")

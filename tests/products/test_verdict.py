@@ -61,7 +61,7 @@ def test_without_dark_matter_nothing_falls_in_and_all_else_is_judged(bare_run):
     found = verdicts(bare_run, bare_run.redshift)
     assert set(np.unique(found)) == {LARGER, OSCILLATES, DAMPED, HELD, GROWS}
     assert verdict_at(bare_run, 1.0, 20.0) == GROWS
-    assert verdict_at(bare_run, 300.0, 500.0) == HELD
+    assert verdict_at(bare_run, 150.0, 500.0) == HELD
 
 
 def test_waves_die_where_diffusion_has_taken_their_amplitude(standard_run):

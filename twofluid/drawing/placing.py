@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import itertools
+
 import numpy as np
 
 from twofluid.drawing.style import LABEL_SIZE
@@ -15,6 +17,7 @@ CLEARANCE = 1  # cells kept free about a curve
 POINTS = 2000  # of a curve, to mark the cells it runs through
 OFFSETS = (1, 4, 8, 12)  # between a curve and words beside it, over the clearance [cells]
 LEVELNESS = 0.15  # weight of a place near the curve's middle against one far from other curves
+NEARNESS = 1.5  # weight of a place near the curve against one far from others
 LEAST_AREA = 0.002  # of the axes, that is worth a word
 FAR = 40.0  # from other curves, beyond which words are as good as can be [cells]
 
@@ -45,7 +48,7 @@ class Room:
         self._taken = np.ones((COLUMNS, ROWS), dtype=bool)
         self._taken[MARGIN:-MARGIN, MARGIN:-MARGIN] = False
         self._curves = [self._cells_of(x, y) for x, y in curves]
-        for column, row in np.concatenate(self._curves):
+        for column, row in itertools.chain(*self._curves):
             near = np.maximum([column - CLEARANCE, row - CLEARANCE], 0)
             self._taken[near[0] : column + CLEARANCE + 1, near[1] : row + CLEARANCE + 1] = True
 
@@ -112,16 +115,19 @@ class Room:
         half = 0.5 * self._box(words)[0] + CLEARANCE
         shifts = [side * (half + offset) for offset in OFFSETS for side in (1, -1)]
         places = np.concatenate([points + np.round([shift, 0]).astype(int) for shift in shifts])
+        detour = NEARNESS * np.repeat(np.abs(shifts), len(points))
         free = np.zeros(self._taken.shape, dtype=bool)
         free[tuple(_places(~self._taken, self._box(words)).T)] = True
-        places = places[np.all((places >= 0) & (places < free.shape), axis=1)]
-        places = places[free[tuple(places.T)]]
+        within = np.all((places >= 0) & (places < free.shape), axis=1)
+        places, detour = places[within], detour[within]
+        fits = free[tuple(places.T)]
+        places, detour = places[fits], detour[fits]
         if not len(places):
             return None
         others = [cells for other, cells in enumerate(self._curves) if other != number and len(cells)]
         space = np.minimum(_distance(places, np.concatenate(others)), FAR) if others else 0.0
         off_middle = np.linalg.norm(places - points[len(points) // 2], axis=1)
-        return self._take(places[np.argmax(space - LEVELNESS * off_middle)], words)
+        return self._take(places[np.argmax(space - LEVELNESS * off_middle - detour)], words)
 
     def _box(self, words):
         """Width and height of words [cells]."""

@@ -47,6 +47,7 @@ DASHES = {
 LINE_ABOVE = 0.045  # from one line of words above the map to the next [fraction of the axes]
 MAP_HEIGHT = 3.6  # of the figure [inch]
 WIDTHS = (1.75, 1.0)  # of map and masses, relative
+ROOM = 3.0  # factor left free beyond the masses
 GUTTER = 0.03  # between the panels, over what their labels need [fraction of the figure]
 
 
@@ -171,7 +172,7 @@ def _grid(verdict):
 def _edges(centres):
     """Return the edges of cells about increasing centres; the outermost centres are edges themselves."""
     if len(centres) == 1:
-        return centres[0] + np.array([-1.0, 1.0])  # a single mode stands in the middle
+        return centres[0] + np.log([0.1, 10.0])  # a single mode stands in the middle of two decades
     return np.concatenate([centres[:1], 0.5 * (centres[1:] + centres[:-1]), centres[-1:]])
 
 
@@ -221,6 +222,6 @@ def _label_scales(axes, room, curves):
 
 
 def _mass_limits(curves):
-    """Limits that hold the Jeans mass and whatever filtering mass there is of its size."""
-    jeans = curves[0][2]
-    return jeans.min() / 3.0, jeans.max() * 3.0
+    """Limits that hold all masses of today and everything heavier; filtering masses begin at nothing."""
+    masses = [mass.compressed() for *_, mass in curves if mass.count()]
+    return min(mass[-1] for mass in masses) / ROOM, max(mass.max() for mass in masses) * ROOM

@@ -27,7 +27,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-NODES = 2001  # of the integrals, in ln a: trapezoids to 1e-5
+NODES = 801  # of the integrals, in ln a: trapezoids to 1e-4
 ACOUSTIC_END = 5.0  # k over k_D at the drag epoch from where on waves, exp(-25) of what they were, leave no trace
 PLATEAU_END = 0.1  # k over k_F up to where the plateau holds: pressure takes a per cent of the ratio there
 DROP = 0.02  # of -ln(ratio/plateau), where k_F is read off: deep enough to rise out of the run's own errors
