@@ -5,7 +5,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from .fluids import KineticSystem, Resolution, clock, resolution_for, start_time
+from .fluids import CLOSURES, Resolution, clock, resolution_for, start_time
 from .history import History, Trace
 from .scenario import Scenario
 from .solver import SolverFailure, integrate
@@ -14,7 +14,8 @@ from .universe import Universe
 SMALLEST_WAVENUMBER, LARGEST_WAVENUMBER = 1e-4, 1e5  # [1/Mpc]: what the numerics were measured for
 HIGHEST_REDSHIFT = 1e6  # every mode has started long before
 CURVATURE_MARGIN = 100.0  # k times the curvature radius below which curvature could show in the modes
-CONSTRAINT_LIMIT = 0.01  # a larger drift of the energy constraint means the run went wrong
+CONSTRAINT_LIMIT = 0.03  # a larger drift of the energy constraint means the run went wrong
+SAME_MARK = 1e-6  # relative difference of conformal times that one step boundary can stand for
 
 
 def evolve(
@@ -62,9 +63,10 @@ def evolve(
     scale_factors = np.unique(np.append(1.0 / (1.0 + z), 1.0))  # the marks: ascending, today included
     marks = universe.conformal_time(scale_factors)
     resolution = resolution or resolution_for(universe)
-    system = KineticSystem(universe, k, resolution.chains)
+    system = CLOSURES[scenario.method.closure](universe, k, resolution.chains)
     start = start_time(universe, k)
-    plan = clock(universe, k, start, marks, resolution.stepping)
+    stops = _with_switches(marks, system.switches)
+    plan = clock(universe, k, start, stops, resolution.stepping)
     times = np.exp(plan.boundaries)
     try:
         course = integrate(system, times, system.first_state(start), system.observed, progress)
@@ -73,7 +75,8 @@ def evolve(
     reading = system.read_off(times, course.observed)
     trace = Trace(**{name: np.ascontiguousarray(array.T) for name, array in reading.quantities.items()})
 
-    asked = plan.mark_index[np.searchsorted(scale_factors, 1.0 / (1.0 + z))].T  # boundary of each (mode, redshift)
+    place = np.searchsorted(stops, marks)[np.searchsorted(scale_factors, 1.0 / (1.0 + z))]
+    asked = plan.mark_index[place].T  # boundary of each (mode, redshift)
     rows = np.arange(len(k))[:, None]
     return History(
         scenario=scenario,
@@ -87,7 +90,7 @@ def evolve(
         trace=trace,
         constraint=_check_constraint(reading.constraint_drift, universe, k, times),
         counts=course.counts,
-        warnings=_curvature_warning(universe, k),
+        warnings=_curvature_warning(universe, k) + system.cautions,
     )
 
 
@@ -109,6 +112,12 @@ def _redshifts(values) -> np.ndarray:
     if z.ndim != 1 or z.size == 0 or not np.all((z >= 0.0) & (z <= HIGHEST_REDSHIFT)):
         raise ValueError(f"redshifts must be one or more numbers from 0 to {HIGHEST_REDSHIFT:g}, got {values}")
     return z
+
+
+def _with_switches(marks: np.ndarray, switches: tuple[float, ...]) -> np.ndarray:
+    """Add the times at which a closure changes its equations, unless a mark stands there already."""
+    apart = [time for time in switches if np.abs(marks / time - 1.0).min() > SAME_MARK]
+    return np.sort(np.append(marks, apart))
 
 
 def _check_constraint(drift: np.ndarray, universe: Universe, k: np.ndarray, times: np.ndarray) -> np.ndarray:

@@ -67,7 +67,8 @@ class History:
     trace : Trace
         Every step taken.
     constraint : array, shape (mode,)
-        Drift of the Einstein energy constraint, summed over the run, relative to its largest term [unitless].
+        Drift of the Einstein energy constraint, summed over the run, relative to its largest term [unitless];
+        NaN where the closure has no such constraint.
     counts : dict of str to int
         What the run cost: "steps" over all modes, "lanes" with padding, "factorizations", "rate_evaluations".
     warnings : tuple of str

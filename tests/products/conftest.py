@@ -35,6 +35,7 @@ def make_history():
             scenario=SimpleNamespace(
                 to_mapping=lambda: {"title": "Saltmarsh test"},
                 assumptions=lambda: ("primordial.tilt = 0.965",),
+                method=SimpleNamespace(closure="kinetic"),
             ),
             universe=SimpleNamespace(
                 age=lambda a: AGE_TODAY * a**1.5,  # Einstein-de Sitter

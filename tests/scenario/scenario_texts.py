@@ -27,6 +27,8 @@ VALUES = {
     "sampling.wavenumbers.to": "100 1/Mpc",
     "sampling.wavenumbers.per_decade": "5",
     "sampling.redshifts": "[1000, 100, 10]",
+    "method": "",
+    "method.closure": "sound-speed",
     "products": "",
     "products.lag": "",
     "products.lag.fractions": "[0.5, 0.9]",

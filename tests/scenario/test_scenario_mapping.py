@@ -10,6 +10,7 @@ from scenario_texts import NO_PRODUCTS, full_text, wavenumber_text
 
 from twofluid.scenario import (
     Cosmology,
+    Method,
     Neutrinos,
     Primordial,
     Sampling,
@@ -109,6 +110,7 @@ def test_a_scenario_built_by_hand_passes_the_rules_of_a_file():
         ({"sampling": Sampling([], [10])}, "sampling.wavenumbers"),
         ({"products": {"lag": {"fraction": (0.5,)}}}, "products.lag.fraction"),
         ({"products": {"map": {}}}, "products.map"),
+        ({"method": Method("fluid")}, "method.closure"),
     ],
 )
 def test_a_scenario_built_by_hand_can_be_refused(changes, key):
@@ -124,6 +126,12 @@ def test_a_scenario_built_by_hand_can_be_refused(changes, key):
 def test_requests_are_frozen(part):
     with pytest.raises(FrozenInstanceError):
         part.title = "other"
+
+
+def test_a_scenario_without_a_method_has_the_default_and_others_differ():
+    assert built().method == Method("kinetic")
+    assert built(method=Method("sound-speed")) != built()
+    assert built(method=Method("sound-speed")).to_mapping()["method"] == {"closure": "sound-speed"}
 
 
 def test_two_scenarios_do_not_share_their_products():
@@ -200,7 +208,7 @@ def test_the_key_table_has_a_row_for_each_key():
 def test_each_key_stands_in_a_section_the_table_knows():
     for key in KEYS:
         assert key.section in {"", "sampling.wavenumbers", *SECTIONS}
-        assert key.unit or key.kind in (Kind.TEXT, Kind.NUMBER, Kind.NUMBERS)
+        assert key.unit or key.kind in (Kind.TEXT, Kind.NUMBER, Kind.NUMBERS, Kind.CHOICE)
         assert not (key.required and key.default is not None)
 
 

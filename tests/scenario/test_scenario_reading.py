@@ -4,7 +4,7 @@ import pytest
 from astropy import units
 from scenario_texts import NO_PRODUCTS, VALUES, full_text, wavenumber_text
 
-from twofluid.scenario import Cosmology, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
+from twofluid.scenario import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
 
 MINIMAL = """
 cosmology: {hubble_constant: 70 km/(s Mpc), baryon_density: 0.02, dark_matter_density: 0.1}
@@ -37,6 +37,7 @@ def test_every_key_reaches_its_field():
             "lag": {"fractions": (0.5, 0.9)},
             "scales": {"mass_radius": 1.0, "together": 0.95, "map_from": 3e4},
         },
+        method=Method("sound-speed"),
     )
     assert len(wavenumbers) == 21  # four decades, five points each, both ends
     assert scenario.assumed == ()

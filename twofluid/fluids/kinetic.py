@@ -65,6 +65,8 @@ class KineticSystem:
         "metric_rate", "curvature", "delta_dark", "delta_baryon", "delta_photon", "delta_neutrino",
         "delta_gas_temperature", "theta_baryon", "slip",
     )  # fmt: skip
+    switches = ()  # one set of equations from first step to last
+    cautions = ()
 
     def __init__(self, universe: Universe, wavenumber: np.ndarray, chains: ChainLengths):
         self.universe = universe
@@ -72,8 +74,6 @@ class KineticSystem:
         self.chains = chains
         self.unknowns = _elimination_order(self.chains)
         self._row = {name: row for row, name in enumerate(self.unknowns)}
-        early = np.full((STAGES, 1, 1), universe.conformal_time(1e-6))  # any epoch tells the pattern
-        self.couplings = frozenset(self.step_rates(np.array([0]), early, np.zeros((1, 1))))
 
     def first_state(self, start: np.ndarray) -> np.ndarray:
         """State of every mode at its start.

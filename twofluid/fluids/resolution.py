@@ -29,11 +29,27 @@ class Resolution:
 
 
 DARK_RULED = Resolution(
-    Stepping(smooth_step=0.15, scattering_change=0.7, phase_step=1.2, diffusion_exponent=20.0, felt_phase=120.0),
+    Stepping(
+        outside_step=0.6,
+        smooth_step=0.2,
+        free_step=0.3,
+        scattering_change=0.4,
+        phase_step=1.3,
+        diffusion_exponent=20.0,
+        felt_phase=120.0,
+    ),
     ChainLengths(photon=10, polarization=10, neutrino=12),
 )
 BARYON_RULED = Resolution(
-    Stepping(smooth_step=0.05, scattering_change=0.5, phase_step=0.6, diffusion_exponent=30.0, felt_phase=300.0),
+    Stepping(
+        outside_step=0.2,
+        smooth_step=0.05,
+        free_step=0.1,
+        scattering_change=0.5,
+        phase_step=0.6,
+        diffusion_exponent=30.0,
+        felt_phase=300.0,
+    ),
     ChainLengths(photon=16, polarization=16, neutrino=24),
 )
 

@@ -8,7 +8,6 @@ import numpy as np
 
 from twofluid.quantities import QUANTITIES
 
-CLOSURE = "kinetic"  # photons and neutrinos by their full chains of moments
 FRAME = (
     "synchronous, at rest with the dark matter (without dark matter: carried by massless dust); "
     "amplitudes per unit comoving curvature, signed so that densities grow positive"
@@ -116,15 +115,22 @@ def header(history):
         "program": f"twofluid {__version__}",
         "scenario": history.scenario.to_mapping(),
         "assumed": list(history.scenario.assumptions()),
-        "closure": CLOSURE,
+        "closure": history.scenario.method.closure,
         "frame": FRAME,
         "landmarks": {name: _rounded(name, value) for name, value in landmarks.items()},
-        "accuracy": f"energy constraint held to {np.max(history.constraint):.1e} of its largest term",
+        "accuracy": _accuracy(history),
         "warnings": list(history.warnings),
     }
     if not history.has_dark_matter:
         provenance["no_dark_matter"] = NO_DARK_MATTER
     return provenance
+
+
+def _accuracy(history):
+    drift = np.max(history.constraint)
+    if np.isnan(drift):
+        return "this closure has no energy constraint to check"
+    return f"energy constraint held to {drift:.1e} of its largest term"
 
 
 def _rounded(name, value):

@@ -34,6 +34,7 @@ class Kind(Enum):
     NUMBERS = "list of numbers"
     QUANTITIES = "list of numbers with unit"
     WAVENUMBERS = "range, or list of numbers with unit"
+    CHOICE = "one word of a few"
 
 
 @dataclass(frozen=True)
@@ -82,6 +83,8 @@ class Key:
         Allowed number of list entries.
     longest_reason : str
         Why the list may not be longer, for the message.
+    choices : tuple of str
+        The words a choice allows.
     """
 
     path: str
@@ -96,6 +99,7 @@ class Key:
     shortest: int = 1
     longest: int = 1
     longest_reason: str = ""
+    choices: tuple[str, ...] = ()
 
     @property
     def section(self):
@@ -113,6 +117,7 @@ SECTIONS = {
     "cosmology.neutrinos": "neutrinos",
     "primordial": "primordial curvature perturbations, a power law in wavenumber",
     "sampling": "where the answer is wanted",
+    "method": "how the answer is computed",
     "products": "which products to make: {} for none, lag if the section is left out",
     "products.lag": "how far the baryons lag the dark matter",
     "products.scales": "horizon, sound, Jeans, filtering and diffusion scales, and what each mode is doing",
@@ -170,6 +175,9 @@ KEYS = (
         allowed=Allowed(0, 1e6), required=True, longest=MOST_REDSHIFTS,
         longest_reason="more redshifts are not tabulated in one run",
         example="[1000, 500, 200, 100, 50, 20, 10]"),
+    Key("method.closure", Kind.CHOICE,
+        "equations: photons and neutrinos by their full chains of moments, or a plasma with an effective sound speed",
+        choices=("kinetic", "sound-speed"), default="kinetic", example="kinetic"),
     Key("products.lag.fractions", Kind.NUMBERS,
         "ratios of baryon to dark-matter amplitude whose redshift is wanted",
         allowed=Allowed(0, 1, low_open=True, high_open=True), default=(0.5, 0.9, 0.95, 0.99),

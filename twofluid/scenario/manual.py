@@ -68,6 +68,8 @@ def _value_text(key):
 
 def _allowed_text(key):
     parts = [str(key.allowed)] if key.allowed else []
+    if key.choices:
+        parts.append(" or ".join(key.choices))
     if key.kind in (Kind.NUMBERS, Kind.QUANTITIES, Kind.WAVENUMBERS):
         parts.append(f"at most {key.longest} entries" if key.longest else "only []")
     return ", ".join(parts)

@@ -17,7 +17,7 @@ from .keys import (
     section_of,
     sections_under,
 )
-from .request import Cosmology, Neutrinos, Primordial, Sampling, Scenario
+from .request import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
 from .values import read_value
 
 UNTITLED = "untitled"  # title of a scenario that has neither a title nor a file
@@ -123,6 +123,7 @@ def _scenario(entry, title, source):
         products={name: _pick(values, f"products.{name}") for name in entry.content["products"].content},
         assumed=tuple(assumed),
         source=source,
+        method=Method(**_pick(values, "method")),
     )
 
 
