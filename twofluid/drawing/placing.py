@@ -76,7 +76,7 @@ class Room:
         return None
 
     def middle(self, code):
-        """Find the cell of an area nearest to its middle.
+        """Find the cell of an area nearest to its middle, and take what is above it for a line from there.
 
         Parameters
         ----------
@@ -92,6 +92,7 @@ class Room:
         if len(places) < LEAST_AREA * self._area.size:
             return None
         nearest = places[np.argmin(np.linalg.norm(places - places.mean(axis=0), axis=1))]
+        self._taken[max(nearest[0] - CLEARANCE, 0) : nearest[0] + CLEARANCE + 1, nearest[1] :] = True
         return tuple((nearest + 0.5) / (COLUMNS, ROWS))
 
     def beside(self, number, words):
