@@ -3,11 +3,17 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
-from twofluid.drawing import difference_figure, evolution_comparison_figure, lag_comparison_figure, lag_figure
+from twofluid.drawing import (
+    difference_figure,
+    evolution_comparison_figure,
+    lag_comparison_figure,
+    lag_figure,
+    scales_figure,
+)
 from twofluid.files import FIGURE_FORMATS, figure_bytes, table_bytes
 from twofluid.products import (
     catchup_table,
@@ -16,8 +22,11 @@ from twofluid.products import (
     evolution_table,
     joined_table,
     lag_table,
+    map_redshifts,
+    scales_table,
+    verdict_table,
 )
-from twofluid.report import compared_evolution_lines, compared_lag_lines, lag_lines
+from twofluid.report import compared_evolution_lines, compared_lag_lines, lag_lines, scales_lines
 
 EVOLUTION = "evolution"  # the amplitudes, written whatever products are asked for
 
@@ -41,6 +50,8 @@ class Product:
     comparison_figure, comparison_summary : callable, optional
         The same for the tables of several scenarios, stacked by `joined_table`; without them the comparison
         of the product consists of its tables.
+    drawn : mapping of str to callable
+        As `tables`, for tables that only the figure is made from; they are not written.
     """
 
     tables: Mapping[str, Callable]
@@ -48,6 +59,25 @@ class Product:
     summary: Callable
     comparison_figure: Callable | None = None
     comparison_summary: Callable | None = None
+    drawn: Mapping[str, Callable] = field(default_factory=dict)
+
+
+def _given(options, *names):
+    """Return those of the named options that the scenario holds."""
+    return {name: options[name] for name in names if name in options}
+
+
+def _scales(history, options, redshift=None):
+    return scales_table(history, redshift, **_given(options, "mass_radius"))
+
+
+def _verdict(history, options, redshift=None):
+    return verdict_table(history, redshift, **_given(options, "together"))
+
+
+def _on_map(make):
+    """Return the function that makes a table on the redshifts of the map."""
+    return lambda history, options: make(history, options, map_redshifts(**_given(options, "map_from")))
 
 
 PRODUCTS = {
@@ -60,6 +90,12 @@ PRODUCTS = {
         summary=lag_lines,
         comparison_figure=lag_comparison_figure,
         comparison_summary=compared_lag_lines,
+    ),
+    "scales": Product(
+        tables={"scales": _scales, "verdict": _verdict},
+        figure=scales_figure,
+        summary=scales_lines,
+        drawn={"scales_map": _on_map(_scales), "verdict_map": _on_map(_verdict)},
     ),
 }
 
@@ -113,7 +149,8 @@ def make_outputs(history):
         product = PRODUCTS[name]
         tables = {stem: make(history, options) for stem, make in product.tables.items()}
         outputs |= {f"{stem}.ecsv": table_bytes(table) for stem, table in tables.items()}
-        figure = product.figure(tables)
+        drawn = {stem: make(history, options) for stem, make in product.drawn.items()}
+        figure = product.figure(tables | drawn)
         if figure is not None:
             outputs |= {f"{name}.{form}": figure_bytes(figure, form, scenario) for form in FIGURE_FORMATS}
         summary += product.summary(tables)

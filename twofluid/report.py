@@ -151,6 +151,40 @@ def lag_lines(tables):
     return aligned(ratio_rows) + aligned(catchup_rows)
 
 
+def scales_lines(tables):
+    """Return the summary of the scales: masses at a few redshifts, and the verdict on a few wavenumbers.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        The tables of the product, under "scales" and "verdict".
+
+    Returns
+    -------
+    list of str
+        Lines; a dash where there is no value.
+    """
+    scales, verdict = tables["scales"], tables["verdict"]
+    shown = _few(len(scales), COLUMNS_SHOWN)
+    redshifts = [f"z = {scales['redshift'][i]:g}" for i in shown]
+    mass_rows = [(f"  mass [{QUANTITIES['jeans_mass'].unit}]", *redshifts)]
+    mass_rows += [
+        (f"    {words}", *(_dash_or(scales[name][i], "{:.3g}") for i in shown))
+        for words, name in (("Jeans", "jeans_mass"), ("filtering", "filtering_mass_two_fluids"))
+    ]
+    words = np.ma.asarray(verdict["verdict"]).reshape(-1, len(scales))
+    wavenumbers = np.asarray(verdict["wavenumber"]).reshape(-1, len(scales))[:, 0]
+    verdict_rows = [("  verdict", *redshifts)]
+    verdict_rows += [
+        (f"    k = {wavenumbers[mode]:.4g} {QUANTITIES['wavenumber'].unit}",
+         *(_dash_or(words[mode, i], "{}").split()[0] for i in shown))
+        for mode in _few(len(wavenumbers), SCALES_SHOWN)
+    ]  # fmt: skip
+    agrees = np.ma.asarray(verdict["agrees_with_jeans"])
+    agreement = f"  the Jeans criterion agrees with {np.ma.filled(agrees, False).sum()} of {agrees.count()} verdicts"
+    return [*aligned(mass_rows), *aligned(verdict_rows), agreement]
+
+
 def comparison_lines(comparison):
     """Return the head of the summary of a comparison: the scenarios, and what differs in what was put in.
 
@@ -306,3 +340,7 @@ def _redshift_text(value):
     if np.ma.is_masked(value):
         return "never"
     return f"{value:.5g}" if np.isfinite(value) else "always"
+
+
+def _dash_or(value, form):
+    return "-" if np.ma.is_masked(value) else form.format(value)

@@ -1,10 +1,15 @@
 """Histories with known closed forms, shaped like a real one."""
 
-from dataclasses import make_dataclass
+from dataclasses import make_dataclass, replace
 from types import SimpleNamespace
 
 import numpy as np
 import pytest
+
+from twofluid import evolve
+from twofluid.scenario import Cosmology, Primordial, Sampling, Scenario
+
+RUN_REDSHIFTS = (10000.0, 3000.0, 1500.0, 1000.0, 500.0, 300.0, 200.0, 100.0, 50.0, 20.0, 10.0, 5.0, 0.0)
 
 Landmarks = make_dataclass("Landmarks", [("drag_redshift", float), ("drag_sound_horizon", float)])
 
@@ -74,3 +79,30 @@ def wave(middle, amplitude, rate, phase):
 def curves():
     """Return the curve makers."""
     return SimpleNamespace(power=power, wave=wave, age_today=AGE_TODAY)
+
+
+def standard_scenario(**changes):
+    """Saltmarsh's universe, parameters by name changed."""
+    cosmology = replace(Cosmology(67.5, baryon_density=0.0223, dark_matter_density=0.1195), **changes)
+    return Scenario("Saltmarsh test", cosmology, Primordial(), Sampling([0.1], [0.0]))
+
+
+@pytest.fixture(scope="session")
+def standard_run():
+    """A run from beyond the horizon to far below the Jeans scale."""
+    return evolve(standard_scenario(), wavenumbers=np.geomspace(1e-4, 1e4, 97), redshifts=RUN_REDSHIFTS)
+
+
+@pytest.fixture(scope="session")
+def bare_run():
+    """The same without dark matter."""
+    scenario = standard_scenario(dark_matter_density=0.0)
+    return evolve(scenario, wavenumbers=np.geomspace(1e-4, 150.0, 12), redshifts=RUN_REDSHIFTS)
+
+
+@pytest.fixture(scope="session")
+def make_run():
+    """Return a function that runs wavenumbers of the standard universe."""
+    return lambda wavenumbers, redshifts: evolve(
+        standard_scenario(), wavenumbers=wavenumbers, redshifts=redshifts
+    )

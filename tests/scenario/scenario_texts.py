@@ -32,7 +32,13 @@ VALUES = {
     "products": "",
     "products.lag": "",
     "products.lag.fractions": "[0.5, 0.9]",
+    "products.scales": "",
+    "products.scales.mass_radius": "1",
+    "products.scales.together": "0.95",
+    "products.scales.map_from": "3e4",
 }
+
+NO_PRODUCTS = dict.fromkeys(path for path in VALUES if path.startswith("products."))  # as changes: all lines left out
 
 
 def full_text(changes=None, names=None):

@@ -4,7 +4,7 @@ import pickle
 import re
 
 import pytest
-from scenario_texts import VALUES, full_text, line_of, refusal, wavenumber_text
+from scenario_texts import NO_PRODUCTS, VALUES, full_text, line_of, refusal, wavenumber_text
 
 from twofluid.scenario import ScenarioError, parse_scenario
 from twofluid.scenario.keys import KEY_AT, KEYS, SECTIONS, Kind
@@ -94,7 +94,7 @@ def test_a_section_must_hold_keys(path, value):
 
 
 def test_products_without_value_is_ambiguous():
-    error = refusal(full_text({"products.lag": None, "products.lag.fractions": None}))
+    error = refusal(full_text(NO_PRODUCTS))
     check(error, "products", None, "has no value", "write {} for none, or leave the section out for lag")
 
 

@@ -6,7 +6,7 @@ from pathlib import Path
 import numpy
 import pytest
 import yaml
-from scenario_texts import full_text, wavenumber_text
+from scenario_texts import NO_PRODUCTS, full_text, wavenumber_text
 
 from twofluid.scenario import (
     Cosmology,
@@ -23,7 +23,7 @@ from twofluid.scenario import (
     scenario_template,
 )
 from twofluid.scenario.document import entry_from_text
-from twofluid.scenario.keys import BASE, KEYS, SECTIONS, Kind
+from twofluid.scenario.keys import BASE, DEFAULT_PRODUCTS, KEYS, SECTIONS, Kind
 from twofluid.scenario.values import read_value
 
 SHIPPED = sorted((Path(__file__).parents[2] / "scenarios").glob("*.yaml"))
@@ -34,7 +34,7 @@ TEXTS = {
     "template": scenario_template(),
     "two points": full_text({"sampling.wavenumbers.per_decade": "0.01"}),
     "odd density": full_text({"sampling.wavenumbers.per_decade": "66.66"}),
-    "no products": full_text({"products": "{}", "products.lag": None, "products.lag.fractions": None}),
+    "no products": full_text({"products": "{}"} | NO_PRODUCTS),
     "odd title": full_text({"title": '"5: # no"'}),
 } | {path.name: path.read_text() for path in SHIPPED if "\nbase:" not in path.read_text()}
 
@@ -154,6 +154,8 @@ def test_the_template_stands_at_the_defaults():
                       ("hubble_constant", "baryon_density", "dark_matter_density")},
         "sampling": scenario.to_mapping()["sampling"],
     }  # fmt: skip
+    # Every product of the template, with nothing said about it.
+    required["products"] = dict.fromkeys(parse_scenario(scenario_template()).products)
     left_out = scenario_from_mapping(required)
     assert replace(left_out, title=scenario.title) == scenario
 
@@ -229,5 +231,8 @@ def test_shipped_scenarios_read_and_say_that_they_are_invented(path):
 
 def test_the_minimal_scenario_has_only_required_keys():
     scenario = read_scenario(next(path for path in SHIPPED if "minimal" in path.name))
-    optional = {key.path for key in KEYS if not key.required}
+    made = tuple(f"products.{product}." for product in DEFAULT_PRODUCTS)
+    optional = {
+        key.path for key in KEYS if not key.required and (key.path.startswith(made) or "products" not in key.path)
+    }
     assert set(scenario.assumed) == optional

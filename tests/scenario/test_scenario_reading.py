@@ -2,7 +2,7 @@
 
 import pytest
 from astropy import units
-from scenario_texts import VALUES, full_text, wavenumber_text
+from scenario_texts import NO_PRODUCTS, VALUES, full_text, wavenumber_text
 
 from twofluid.scenario import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
 
@@ -33,7 +33,10 @@ def test_every_key_reaches_its_field():
         ),
         primordial=Primordial(amplitude=2e-9, tilt=0.96, pivot=0.002),
         sampling=Sampling(wavenumbers=wavenumbers, redshifts=(1000.0, 100.0, 10.0)),
-        products={"lag": {"fractions": (0.5, 0.9)}},
+        products={
+            "lag": {"fractions": (0.5, 0.9)},
+            "scales": {"mass_radius": 1.0, "together": 0.95, "map_from": 3e4},
+        },
         method=Method("sound-speed"),
     )
     assert len(wavenumbers) == 21  # four decades, five points each, both ends
@@ -57,7 +60,8 @@ def test_defaults_fill_what_is_left_out_and_are_named():
         "cosmology.dark_matter_density",
         "sampling.redshifts",
     }
-    leaves = {path for path, value in VALUES.items() if value} - required
+    not_made = set(NO_PRODUCTS) - {"products.lag.fractions"}
+    leaves = {path for path, value in VALUES.items() if value} - required - not_made
     assert set(scenario.assumed) == {path for path in leaves if "wavenumbers" not in path}
     assert len(scenario.assumed) == len(set(scenario.assumed))
 
@@ -96,7 +100,7 @@ def test_an_empty_section_stands_at_its_defaults(section, empty):
 
 
 def test_products_may_be_none_at_all():
-    scenario = reread({"products": "{}", "products.lag": None, "products.lag.fractions": None})
+    scenario = reread({"products": "{}"} | NO_PRODUCTS)
     assert scenario.products == {}
     assert scenario.assumed == ()
 

@@ -8,6 +8,7 @@ import matplotlib
 import numpy as np
 from matplotlib.colors import LinearSegmentedColormap, to_hex
 from matplotlib.figure import Figure
+from matplotlib.ticker import FixedLocator, NullLocator, ScalarFormatter
 
 from twofluid.quantities import QUANTITIES
 
@@ -26,6 +27,8 @@ JOINING = LinearSegmentedColormap.from_list("joining", [DARK_MATTER, PHOTONS, BA
 SCENARIOS = LinearSegmentedColormap.from_list("scenarios", [BARYONS, PHOTONS])
 # In turn; unit: line width.
 DASHES = ("-", (0, (5, 1.5)), (0, (1.2, 1.2)), (0, (6, 1.5, 1.2, 1.5)), (0, (3, 1.2, 1.2, 1.2, 1.2, 1.2)))
+
+REDSHIFT_TICKS = (0, 1, 3, 10, 30, 100, 300, 1000, 3000, 10**4, 10**5, 10**6)
 
 LABEL_SIZE = 7  # labels at curves [pt]
 LABEL_PITCH = 8.5  # distance between two of them, so that they do not touch [pt]
@@ -92,6 +95,29 @@ def axis_label(name, words=None):
     quantity = QUANTITIES[name]
     label = f"{words or name.replace('_', ' ')} ${quantity.symbol}$"
     return f"{label} [{Unit(quantity.unit).to_string('latex_inline')}]" if quantity.unit else label
+
+
+def redshift_axis(axes, which, limits, words=None):
+    """Make an axis one of redshifts, spaced as ln(1 + z), with ticks at round redshifts.
+
+    Parameters
+    ----------
+    axes : matplotlib.axes.Axes
+        Its axes.
+    which : str
+        "x" or "y".
+    limits : (float, float)
+        Redshifts at its ends [unitless].
+    words : str, optional
+        Words of its label instead of "redshift".
+    """
+    getattr(axes, f"set_{which}scale")("function", functions=(np.log1p, np.expm1))
+    getattr(axes, f"set_{which}lim")(*limits)
+    axis = getattr(axes, f"{which}axis")
+    axis.set_major_locator(FixedLocator(REDSHIFT_TICKS))
+    axis.set_minor_locator(NullLocator())
+    axis.set_major_formatter(ScalarFormatter())
+    axis.set_label_text(axis_label("redshift", words))
 
 
 def draw_curves(axes, curves, palette=JOINING):

@@ -3,6 +3,8 @@
 from twofluid.products.comparison import course_table, difference_table, joined_table
 from twofluid.products.evolution import evolution_table
 from twofluid.products.lag import catchup_table, lag_table
+from twofluid.products.scales import map_redshifts, scales_table
+from twofluid.products.verdict import verdict_table
 
 __all__ = [
     "catchup_table",
@@ -11,4 +13,7 @@ __all__ = [
     "evolution_table",
     "joined_table",
     "lag_table",
+    "map_redshifts",
+    "scales_table",
+    "verdict_table",
 ]

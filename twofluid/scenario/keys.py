@@ -125,6 +125,7 @@ SECTIONS = {
     "method": "how the answer is computed",
     "products": "which products to make: {} for none, lag if the section is left out",
     "products.lag": "how far the baryons lag the dark matter",
+    "products.scales": "horizon, sound, Jeans, filtering and diffusion scales, and what each mode is doing",
 }
 
 DEFAULT_PRODUCTS = ("lag",)  # made when the file has no section `products`
@@ -190,6 +191,14 @@ KEYS = (
         allowed=Allowed(0, 1, low_open=True, high_open=True), default=(0.5, 0.9, 0.95, 0.99),
         longest=MOST_FRACTIONS, longest_reason="more fractions are not tabulated in one run",
         example="[0.5, 0.9, 0.95, 0.99]"),
+    Key("products.scales.mass_radius", Kind.NUMBER,
+        "radius of the sphere whose mass is told, in wavelengths: 0.5, or 1 for eight times the mass",
+        allowed=Allowed(0.1, 1), default=0.5, example="0.5"),
+    Key("products.scales.together", Kind.NUMBER,
+        "ratio of baryon to dark-matter amplitude from which on a mode no longer falls in but grows",
+        allowed=Allowed(0, 1, low_open=True, high_open=True), default=0.9, example="0.9"),
+    Key("products.scales.map_from", Kind.NUMBER, "redshift at which the map of verdicts starts; it ends at 0",
+        allowed=Allowed(1, 1e6), default=1e4, example="1e4"),
 )  # fmt: skip
 
 KEY_AT = {key.path: key for key in KEYS}
