@@ -37,7 +37,7 @@ def test_every_key_reaches_its_field():
             "lag": {"fractions": (0.5, 0.9)},
             "scales": {"mass_radius": 1.0, "together": 0.95, "map_from": 3e4},
         },
-        method=Method("sound-speed"),
+        method=Method("sound-speed", "reference"),
     )
     assert len(wavenumbers) == 21  # four decades, five points each, both ends
     assert scenario.assumed == ()
