@@ -115,6 +115,7 @@ def _run(options):
 def _prepare(file):
     """Read a scenario and build its universe, landmarks and all."""
     from twofluid import read_scenario
+    from twofluid.products import check_products
     from twofluid.scenario import ScenarioError
     from twofluid.universe import Universe, UniverseError
 
@@ -125,7 +126,8 @@ def _prepare(file):
     try:
         universe = Universe(scenario.cosmology)
         _ = universe.landmarks  # a universe without them is refused now
-    except UniverseError as error:
+        check_products(scenario, universe)
+    except (UniverseError, ValueError) as error:
         raise RequestError(f"{file}: {error}") from error
     return scenario, universe
 

@@ -5,10 +5,18 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
-from twofluid.drawing import lag_figure
+from twofluid.drawing import growth_figure, lag_figure, shortfall_figure, spheres_figure
 from twofluid.files import FIGURE_FORMATS, figure_bytes, table_bytes
-from twofluid.products import catchup_table, evolution_table, lag_table
-from twofluid.report import lag_lines
+from twofluid.products import (
+    catchup_table,
+    contrast_table,
+    evolution_table,
+    growth_table,
+    lag_table,
+    shortfall_table,
+    spheres_table,
+)
+from twofluid.report import growth_lines, lag_lines, shortfall_lines, spheres_lines
 
 EVOLUTION = "evolution"  # the amplitudes, written whatever products are asked for
 
@@ -41,6 +49,24 @@ PRODUCTS = {
         },
         figure=lag_figure,
         summary=lag_lines,
+    ),
+    "growth": Product(
+        tables={"growth": lambda history, options: growth_table(history, **options)},
+        figure=growth_figure,
+        summary=growth_lines,
+    ),
+    "spheres": Product(
+        tables={"spheres": lambda history, options: spheres_table(history, **options)},
+        figure=spheres_figure,
+        summary=spheres_lines,
+    ),
+    "shortfall": Product(
+        tables={
+            "shortfall": lambda history, options: shortfall_table(history, **options),
+            "contrast": lambda history, options: contrast_table(history),
+        },
+        figure=shortfall_figure,
+        summary=shortfall_lines,
     ),
 }
 

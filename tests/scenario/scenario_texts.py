@@ -30,7 +30,17 @@ VALUES = {
     "products": "",
     "products.lag": "",
     "products.lag.fractions": "[0.5, 0.9]",
+    "products.growth": "",
+    "products.growth.reference_redshift": "100",
+    "products.spheres": "",
+    "products.spheres.radii": "[1 Mpc, 3 Mpc]",
+    "products.spheres.masses": "[1e6 solMass]",
+    "products.shortfall": "",
+    "products.shortfall.target_redshift": "7",
+    "products.shortfall.radii": "[2 Mpc]",
+    "products.shortfall.masses": "[1e9 solMass]",
 }
+NO_PRODUCT = dict.fromkeys(path for path in VALUES if path.startswith("products."))  # leaves their lines out
 
 
 def full_text(changes=None, names=None):

@@ -1,7 +1,7 @@
 """Files and texts that are no scenario at all, or a hostile one."""
 
 import pytest
-from scenario_texts import full_text, refusal
+from scenario_texts import VALUES, full_text, refusal
 
 from twofluid.scenario import ScenarioError, parse_scenario, read_scenario
 from twofluid.scenario.document import LARGEST_SIZE
@@ -60,7 +60,7 @@ def test_a_forbidden_character_names_its_line_and_code():
 
 def test_duplicate_keys_name_both_lines():
     error = refusal(full_text() + "title: again\n")
-    assert (error.key, error.line) == ("title", 26)
+    assert (error.key, error.line) == ("title", len(VALUES) + 1)
     assert error.rule == "stands here twice, first in line 1"
     inner = refusal("cosmology:\n  baryon_density: 0.02\n  baryon_density: 0.03\n")
     assert (inner.key, inner.line) == ("cosmology.baryon_density", 3)

@@ -2,7 +2,7 @@
 
 import pytest
 from astropy import units
-from scenario_texts import VALUES, full_text, wavenumber_text
+from scenario_texts import NO_PRODUCT, VALUES, full_text, wavenumber_text
 
 from twofluid.scenario import Cosmology, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
 
@@ -33,7 +33,12 @@ def test_every_key_reaches_its_field():
         ),
         primordial=Primordial(amplitude=2e-9, tilt=0.96, pivot=0.002),
         sampling=Sampling(wavenumbers=wavenumbers, redshifts=(1000.0, 100.0, 10.0)),
-        products={"lag": {"fractions": (0.5, 0.9)}},
+        products={
+            "lag": {"fractions": (0.5, 0.9)},
+            "growth": {"reference_redshift": 100.0},
+            "spheres": {"radii": (1.0, 3.0), "masses": (1e6,)},
+            "shortfall": {"target_redshift": 7.0, "radii": (2.0,), "masses": (1e9,)},
+        },
     )
     assert len(wavenumbers) == 21  # four decades, five points each, both ends
     assert scenario.assumed == ()
@@ -57,6 +62,7 @@ def test_defaults_fill_what_is_left_out_and_are_named():
         "sampling.redshifts",
     }
     leaves = {path for path, value in VALUES.items() if value} - required
+    leaves -= set(NO_PRODUCT) - {"products.lag.fractions"}
     assert set(scenario.assumed) == {path for path in leaves if "wavenumbers" not in path}
     assert len(scenario.assumed) == len(set(scenario.assumed))
 
@@ -95,7 +101,7 @@ def test_an_empty_section_stands_at_its_defaults(section, empty):
 
 
 def test_products_may_be_none_at_all():
-    scenario = reread({"products": "{}", "products.lag": None, "products.lag.fractions": None})
+    scenario = reread({"products": "{}", **NO_PRODUCT})
     assert scenario.products == {}
     assert scenario.assumed == ()
 
@@ -132,6 +138,13 @@ def test_wavenumber_units_agree_with_astropy(number, unit):
     expected = (float(number) * units.Unit(unit)).to_value(units.Mpc**-1)
     pivot = reread({"primordial.pivot": f"{number} {unit}"}).primordial.pivot
     assert pivot == pytest.approx(expected, rel=1e-13)
+
+
+def test_radii_and_masses_in_other_units():
+    spheres = reread({"products.spheres.radii": "[8 kpc]", "products.spheres.masses": "[1e6 Msun, 2e36 kg]"})
+    assert spheres.products["spheres"]["radii"] == pytest.approx((0.008,), rel=1e-13)
+    expected = (2e36 * units.kg).to_value(units.solMass)
+    assert spheres.products["spheres"]["masses"] == pytest.approx((1e6, expected), rel=1e-13)
 
 
 def test_temperature_in_millikelvin():

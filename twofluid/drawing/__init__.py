@@ -1,6 +1,23 @@
 """Pictures: functions from tables to matplotlib axes."""
 
+from twofluid.drawing.growth import draw_growth_rate, draw_suppression, growth_figure
 from twofluid.drawing.lag import draw_catchup, draw_ratio, lag_figure
+from twofluid.drawing.shortfall import draw_at_decoupling, draw_at_target, shortfall_figure
+from twofluid.drawing.spheres import draw_baryon_share, draw_spheres, spheres_figure
 from twofluid.drawing.style import journal_style
 
-__all__ = ["draw_catchup", "draw_ratio", "journal_style", "lag_figure"]
+__all__ = [
+    "draw_at_decoupling",
+    "draw_at_target",
+    "draw_baryon_share",
+    "draw_catchup",
+    "draw_growth_rate",
+    "draw_ratio",
+    "draw_spheres",
+    "draw_suppression",
+    "growth_figure",
+    "journal_style",
+    "lag_figure",
+    "shortfall_figure",
+    "spheres_figure",
+]

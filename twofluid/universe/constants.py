@@ -17,6 +17,7 @@ RADIATION_CONSTANT = 8.0 * pi**5 * BOLTZMANN**4 / (15.0 * (PLANCK * SPEED_OF_LIG
 
 # --- lengths and times -----------------------------------------------------------------------------
 MEGAPARSEC = 648000.0 / pi * 149597870700.0 * 1.0e6  # [m]; IAU 2012 and 2015, exact
+SOLAR_MASS_LENGTH = 1.3271244e20 / SPEED_OF_LIGHT**2 / MEGAPARSEC  # G M_sun/c^2 [Mpc]; IAU 2015 B3, nominal
 MEGAYEAR = 365.25 * 86400.0 * 1.0e6  # Julian [s]; exact
 MEGAYEAR_PER_MEGAPARSEC = MEGAPARSEC / SPEED_OF_LIGHT / MEGAYEAR  # light travel time [Myr/Mpc]
 HUBBLE_UNIT = 100.0e3 / SPEED_OF_LIGHT  # 100 km/(s Mpc) over c [1/Mpc]
