@@ -29,6 +29,11 @@ def cold_growth(universe, redshift):
     -------
     growth, rate : array, shape (redshift,)
         D and d ln D/d ln a [unitless].
+
+    Raises
+    ------
+    ArithmeticError
+        If the integration fails; names the redshift.
     """
     from scipy.integrate import solve_ivp
 
@@ -48,6 +53,9 @@ def cold_growth(universe, redshift):
         slope, (start, max(log_a[-1], start)), (1.0 + 1.5 * ratio, momentum), method="DOP853",
         rtol=TOLERANCE, atol=0.0, t_eval=log_a,
     )  # fmt: skip
+    if not solution.success or solution.y.shape[1] != len(log_a) or not np.all(np.isfinite(solution.y)):
+        reached = np.expm1(-solution.t[-1]) if len(solution.t) else np.expm1(-start)
+        raise ArithmeticError(f"the growth of cold matter could not be followed beyond z = {reached:.6g}")
     growth, momentum = solution.y[:, place]
     a = np.exp(log_a[place])
     return growth, momentum / (a * universe.conformal_hubble_rate(a) * growth)

@@ -3,8 +3,8 @@
 sigma^2(R) is the integral over ln k of P(k) delta^2(k) W^2(k R), P being the primordial power and
 W(x) = 3 (sin x - x cos x)/x^3 the window of a sphere. The contrast is a cubic spline in ln k through the
 modes, the integral a sum of Gauss-Legendre panels over the wavenumbers of the run; nothing is added for
-those beyond. Three errors are estimated: of the sampling (against a spline through every second mode, with
-differences of either sign counted alike), of the quadrature (against panels twice as wide), and of the
+those beyond. Three errors are estimated: of the sampling (against splines through every second mode, the odd
+and the even ones, with differences of either sign counted alike), of the quadrature (against panels twice as wide), and of the
 ends: the contrast continued as a power law through its largest values in the last and the last but one
 e-fold, to larger wavenumbers at least level, with W^2 at its upper bound.
 """
@@ -18,6 +18,7 @@ import numpy as np
 PANEL = 0.05  # width of a panel in ln k; ten points in it follow W^2 up to k R of 100, beyond it is below 1e-7
 POINTS = 10  # Gauss-Legendre points a panel
 FEWEST_MODES = 8  # a spline through every second one still has four points
+WIDEST_GAP = 1.4  # factor between neighbouring wavenumbers; with wider ones the sampling error escaped its estimate
 SHORTEST_RANGE = 2.0  # in ln k: the e-folds that the continuation beyond an end is read from
 REACH = 12.0  # of the continuation beyond the largest wavenumber, in ln k
 REACH_POINTS = 481  # trapezoidal points there, of a bound that runs smoothly
@@ -58,7 +59,7 @@ class SphereFilter:
     Raises
     ------
     ValueError
-        If there are too few modes, or too narrow a range of them, to interpolate and judge.
+        If there are too few modes, too narrow a range of them or too wide a gap to interpolate and judge.
     """
 
     def __init__(self, wavenumber, primordial, radius):
@@ -69,6 +70,12 @@ class SphereFilter:
                 f"spheres need at least {FEWEST_MODES} wavenumbers over a factor of "
                 f"{np.exp(SHORTEST_RANGE):.2g} or more; this run has {len(known)} over a factor of "
                 f"{known[-1] / known[0]:.3g}"
+            )
+        gap = np.exp(np.diff(self._log_k).max())
+        if gap > WIDEST_GAP:
+            raise ValueError(
+                f"spheres need neighbouring wavenumbers within a factor of {WIDEST_GAP:g}; in this run some are "
+                f"a factor of {gap:.3g} apart"
             )
         self._primordial = primordial
         self._radius = np.asarray(radius, dtype=float)
@@ -87,12 +94,13 @@ class SphereFilter:
         Rms
         """
         contrast = contrast[self._order]
-        course = self._spline(contrast, 1)
+        course = self._spline(contrast)
         variance = self._weights @ course**2
         value = np.sqrt(variance)
-        sampling = self._weights @ abs(course**2 - self._spline(contrast, 2) ** 2)
+        halves = (self._spline(contrast, first=first, stride=2) for first in (0, 1))
+        sampling = np.maximum(*(self._weights @ abs(course**2 - half**2) for half in halves))
         nodes, weights = self._panels(2.0 * PANEL)
-        coarse = np.sqrt(weights @ self._spline(contrast, 1, nodes) ** 2)
+        coarse = np.sqrt(weights @ self._spline(contrast, nodes) ** 2)
         sampling, beyond = (np.sqrt(variance + more) - value for more in (sampling, self._beyond(course)))
         return Rms(value, sampling + abs(value - coarse) + beyond, beyond)
 
@@ -109,7 +117,7 @@ class SphereFilter:
         value, slope : array, shape (radius, redshift)
             [unitless]
         """
-        contrast, slope = (self._spline(array[self._order], 1) for array in (contrast, slope))
+        contrast, slope = (self._spline(array[self._order]) for array in (contrast, slope))
         value = np.sqrt(self._weights @ contrast**2)
         return value, self._weights @ (contrast * slope) / value
 
@@ -122,11 +130,11 @@ class SphereFilter:
         k = np.exp(nodes)
         return nodes, (half * weights).ravel() * self._primordial.power(k) * window(np.outer(self._radius, k)) ** 2
 
-    def _spline(self, contrast, stride, nodes=None):
-        """Return the contrast at the nodes from every mode, or every second one and both ends."""
+    def _spline(self, contrast, nodes=None, *, first=0, stride=1):
+        """Return the contrast at the nodes from both ends and every `stride`-th mode from the `first` on."""
         from scipy.interpolate import CubicSpline
 
-        kept = np.unique(np.append(np.arange(0, len(self._log_k), stride), len(self._log_k) - 1))
+        kept = np.unique([0, *range(first, len(self._log_k), stride), len(self._log_k) - 1])
         return CubicSpline(self._log_k[kept], contrast[kept])(self._nodes if nodes is None else nodes)
 
     def _beyond(self, contrast):
