@@ -126,8 +126,11 @@ def _prepare(file):
     try:
         universe = Universe(scenario.cosmology)
         _ = universe.landmarks  # a universe without them is refused now
+    except UniverseError as error:
+        raise RequestError(f"{file}: {error}") from error
+    try:
         check_products(scenario, universe)
-    except (UniverseError, ValueError) as error:
+    except ValueError as error:
         raise RequestError(f"{file}: {error}") from error
     return scenario, universe
 

@@ -3,10 +3,10 @@
 sigma^2(R) is the integral over ln k of P(k) delta^2(k) W^2(k R), P being the primordial power and
 W(x) = 3 (sin x - x cos x)/x^3 the window of a sphere. The contrast is a cubic spline in ln k through the
 modes, the integral a sum of Gauss-Legendre panels over the wavenumbers of the run; nothing is added for
-those beyond. Three errors are estimated: of the sampling (against splines through every second mode, the odd
-and the even ones, with differences of either sign counted alike), of the quadrature (against panels twice as wide), and of the
-ends: the contrast continued as a power law through its largest values in the last and the last but one
-e-fold, to larger wavenumbers at least level, with W^2 at its upper bound.
+those beyond. Three errors are estimated: of the sampling (against splines through every second mode, the
+odd and the even ones, with differences of either sign counted alike), of the quadrature (against panels
+twice as wide), and of the ends: the contrast continued as a power law through its largest values in the
+last and the last but one e-fold, to larger wavenumbers at least level, with W^2 at its upper bound.
 """
 
 from __future__ import annotations
