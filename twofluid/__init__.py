@@ -1,6 +1,8 @@
 """Baryons and dark matter followed as coupled linear fluids from the radiation era to today."""
 
-from .evolve import evolve
+from .certification import certify
+from .comparison import Comparison, compare
+from .evolution import evolve, evolve_many
 from .history import History, load_history
 from .scenario import Scenario, ScenarioError, parse_scenario, read_scenario
 from .solver import SolverFailure
@@ -9,6 +11,7 @@ from .universe import Universe, UniverseError
 __version__ = "0.1.0"
 
 __all__ = [
+    "Comparison",
     "History",
     "Scenario",
     "ScenarioError",
@@ -16,7 +19,10 @@ __all__ = [
     "Universe",
     "UniverseError",
     "__version__",
+    "certify",
+    "compare",
     "evolve",
+    "evolve_many",
     "load_history",
     "parse_scenario",
     "read_scenario",

@@ -10,12 +10,14 @@ from pathlib import Path
 
 STATUS_FAILED = 1  # the input was good, but solving or writing failed
 STATUS_REFUSED = 2  # the request was refused: nothing was solved, nothing was written
+STATUS_UNCERTAIN = 3  # all is written, but the numerical error exceeds what the accuracy asked for promises
 STATUS_INTERRUPTED = 130  # what shells report for a program ended by Ctrl-C
 
 DESCRIPTION = "Baryons and dark matter as coupled linear fluids, from the radiation era to today."
 EPILOG = (
     "Exit status: 0 done; 1 solving or writing failed; 2 the request was refused, nothing solved and nothing "
-    "written; 130 interrupted. A file stands in the output directory complete or not at all."
+    "written; 3 all written, but the numerical error exceeds what was promised; 130 interrupted. A file stands in "
+    "the output directory complete or not at all."
 )
 
 
@@ -34,7 +36,7 @@ def main(arguments=None):
     Returns
     -------
     int
-        Exit status: 0 done, 1 solving or writing failed, 2 refused, 130 interrupted.
+        Exit status: 0 done, 1 solving or writing failed, 2 refused, 3 less certain than promised, 130 interrupted.
     """
     for stream in (sys.stdout, sys.stderr):
         if isinstance(stream, io.TextIOWrapper):
@@ -66,6 +68,16 @@ def _parser():
                      help="output directory; with several files each gets a directory of its name in it")
     run.add_argument("--overwrite", action="store_true", help="replace files of an earlier run")
     run.set_defaults(command=_run)
+
+    compare = commands.add_parser("compare", help="solve scenarios and set them side by side", **words)
+    compare.add_argument("files", metavar="FILE", nargs="+",
+                         help="scenario file (YAML), two or more; ratios are to the first")
+    compare.add_argument("--out", metavar="DIR", type=Path, required=True, help="output directory")
+    compare.add_argument("--overwrite", action="store_true", help="replace files of an earlier comparison")
+    compare.set_defaults(command=_compare)
+    for command in (run, compare):
+        command.add_argument("--no-certificate", dest="certificate", action="store_false",
+                             help="do not estimate the numerical error; the tables then say so")
 
     template = commands.add_parser("template", help="print a scenario with every key explained", **words)
     template.set_defaults(command=_template)
@@ -101,15 +113,40 @@ def _run(options):
             _check_outputs(scenario, directory, options.overwrite)
     except RequestError as error:
         return _complain(error, STATUS_REFUSED)
+    status = 0
     for file, scenario, directory in zip(options.files, scenarios, directories, strict=True):
         try:
-            _solve_and_write(scenario, directory)
+            if not _solve_and_write(scenario, directory, options.certificate):
+                status = STATUS_UNCERTAIN
         except SolverFailure as failure:
             return _complain(f"{file}: {failure}", STATUS_FAILED)
         except OSError as error:
-            place, reason = error.filename or directory, error.strerror or error
-            return _complain(f"cannot write {place}: {reason}", STATUS_FAILED)
-    return 0
+            return _complain_of_writing(error, directory)
+    return status
+
+
+def _compare(options):
+    from twofluid.comparison import align
+    from twofluid.registry import comparison_names
+    from twofluid.solver import SolverFailure
+
+    try:
+        scenarios = [_prepare(file)[0] for file in options.files]
+        try:
+            alignment = align(scenarios)
+            names = comparison_names(alignment)
+        except ValueError as error:
+            raise RequestError(f"compare: {error}") from error
+        _check_place(names, options.out, options.overwrite)
+    except RequestError as error:
+        return _complain(error, STATUS_REFUSED)
+    try:
+        kept = _compare_and_write(scenarios, names, options.out, options.certificate)
+    except SolverFailure as failure:
+        return _complain(failure, STATUS_FAILED)
+    except OSError as error:
+        return _complain_of_writing(error, options.out)
+    return 0 if kept else STATUS_UNCERTAIN
 
 
 def _prepare(file):
@@ -154,6 +191,11 @@ def _check_outputs(scenario, directory, overwrite):
         names = output_names(scenario)
     except ValueError as error:
         raise RequestError(f"{scenario.source}: {error}") from error
+    _check_place(names, directory, overwrite)
+
+
+def _check_place(names, directory, overwrite):
+    """Refuse a directory in which these files cannot be written, or stand already."""
     nearest = next(path for path in (directory, *directory.absolute().parents) if path.exists())
     if not nearest.is_dir():
         raise RequestError(f"--out: {nearest} is not a directory")
@@ -165,22 +207,63 @@ def _check_outputs(scenario, directory, overwrite):
         raise RequestError(f"--out: {directory} already holds {names}; add --overwrite to replace them")
 
 
-def _solve_and_write(scenario, directory):
-    from twofluid import evolve
-    from twofluid.files import write_file
+def _solve_and_write(scenario, directory, certificate):
+    """Solve one scenario and write all it asks for; return whether its accuracy is what was promised."""
+    from twofluid import certify, evolve
     from twofluid.registry import make_outputs, output_names
     from twofluid.report import progress_bar, run_lines
 
     history = evolve(scenario, progress=progress_bar(sys.stderr))
+    if certificate:
+        history = certify(history)
     outputs, summary = make_outputs(history)
-    directory.mkdir(parents=True, exist_ok=True)
-    for name, content in outputs.items():
-        write_file(directory / name, content)
-    for name in set(output_names(scenario)) - set(outputs):
-        (directory / name).unlink(missing_ok=True)  # a figure of an earlier run that this one does not draw
+    _write(outputs, output_names(scenario), directory)
     for warning in history.warnings:
         print(f"twofluid: warning: {warning}", file=sys.stderr)
     _say("\n".join([*run_lines(history), *summary, f"  written to {directory}: {', '.join(outputs)}"]))
+    return _promise_kept(history)
+
+
+def _compare_and_write(scenarios, names, directory, certificate):
+    """Solve scenarios and write their comparison; return whether their accuracy is what was promised."""
+    from dataclasses import replace
+
+    from twofluid import certify, compare
+    from twofluid.registry import make_comparison
+    from twofluid.report import comparison_lines, progress_bar
+
+    comparison = compare(scenarios, progress=progress_bar(sys.stderr))
+    if certificate:
+        comparison = replace(comparison, histories=tuple(certify(history) for history in comparison.histories))
+    outputs, summary = make_comparison(comparison)
+    _write(outputs, names, directory)
+    for label, history in zip(comparison.labels, comparison.histories, strict=True):
+        for warning in history.warnings:
+            print(f"twofluid: warning: {label}: {warning}", file=sys.stderr)
+    head = comparison_lines(comparison)
+    _say("\n".join([*head, *summary, f"  written to {directory}: {', '.join(outputs)}"]))
+    kept = [_promise_kept(history) for history in comparison.histories]  # each has its say
+    return all(kept)
+
+
+def _promise_kept(history):
+    """Say so on stderr if the numerical error exceeds what was promised."""
+    certificate = history.certificate
+    if certificate is None or certificate.kept:
+        return True
+    print(f"twofluid: warning: {history.scenario.title}: {certificate.sentence()}", file=sys.stderr)
+    return False
+
+
+def _write(outputs, names, directory):
+    """Write files, each all or nothing; what could have been made but was not does not stay from before."""
+    from twofluid.files import write_file
+
+    directory.mkdir(parents=True, exist_ok=True)
+    for name, content in outputs.items():
+        write_file(directory / name, content)
+    for name in set(names) - set(outputs):
+        (directory / name).unlink(missing_ok=True)
 
 
 def _say(text):
@@ -189,6 +272,10 @@ def _say(text):
         print(text.rstrip("\n"), flush=True)
     except BrokenPipeError:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+
+
+def _complain_of_writing(error, directory):
+    return _complain(f"cannot write {error.filename or directory}: {error.strerror or error}", STATUS_FAILED)
 
 
 def _complain(message, status):

@@ -122,7 +122,7 @@ def table_bytes(table):
     return (text.getvalue().rstrip("\n") + "\n").encode()
 
 
-def figure_bytes(figure, form, scenario):
+def figure_bytes(figure, form, *scenarios):
     """Return a figure as the content of a file; the same figure gives the same bytes.
 
     Parameters
@@ -131,8 +131,8 @@ def figure_bytes(figure, form, scenario):
         The figure.
     form : str
         One of `FIGURE_FORMATS`.
-    scenario : Scenario
-        Title, and the whole as YAML, go to the metadata with the program's version.
+    *scenarios : Scenario
+        Titles, and each whole as a YAML document, go to the metadata with the program's version.
 
     Returns
     -------
@@ -151,14 +151,28 @@ def figure_bytes(figure, form, scenario):
     from twofluid import __version__
     from twofluid.drawing import journal_style
 
-    request = yaml.safe_dump(scenario.to_mapping(), sort_keys=False, allow_unicode=True)
+    mappings = [scenario.to_mapping() for scenario in scenarios]
+    request = yaml.safe_dump_all(mappings, sort_keys=False, allow_unicode=True)
+    title = "; ".join(scenario.title for scenario in scenarios)
     program = f"twofluid {__version__}"
     metadata = {
         # A creation date would make every file differ from the last.
-        "pdf": {"Title": scenario.title, "Subject": request, "Creator": program, "CreationDate": None},
-        "png": {"Title": scenario.title, "Description": request, "Software": program},
+        "pdf": {"Title": title, "Subject": request, "Creator": program, "CreationDate": None},
+        "png": {"Title": title, "Description": request, "Software": program},
     }
     content = io.BytesIO()
     with journal_style():
         figure.savefig(content, format=form, metadata=metadata[form])
-    return content.getvalue()
+    return _with_palette(content) if form == "png" else content.getvalue()
+
+
+def _with_palette(content):
+    """Return a PNG of at most 256 colours, all that lines and type need, in a third of the bytes."""
+    from PIL import Image, PngImagePlugin
+
+    image, words = Image.open(content), PngImagePlugin.PngInfo()
+    for name, text in image.text.items():
+        words.add_itxt(name, text)
+    small = io.BytesIO()
+    image.convert("RGB").quantize(256).save(small, "png", optimize=True, pnginfo=words, dpi=image.info["dpi"])
+    return small.getvalue()

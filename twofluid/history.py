@@ -5,6 +5,7 @@ from pathlib import Path
 
 import numpy as np
 
+from .certificate import Certificate
 from .files import replace_atomically
 from .scenario import Scenario, scenario_from_mapping
 from .universe import Universe
@@ -67,11 +68,14 @@ class History:
     trace : Trace
         Every step taken.
     constraint : array, shape (mode,)
-        Drift of the Einstein energy constraint, summed over the run, relative to its largest term [unitless].
+        Drift of the Einstein energy constraint, summed over the run, relative to its largest term [unitless];
+        NaN where the closure has no such constraint.
     counts : dict of str to int
         What the run cost: "steps" over all modes, "lanes" with padding, "factorizations", "rate_evaluations".
     warnings : tuple of str
         What the user has to know about this run.
+    certificate : Certificate or None
+        Estimated numerical error, once `twofluid.certify` has worked it out.
     """
 
     scenario: Scenario
@@ -86,6 +90,7 @@ class History:
     constraint: np.ndarray
     counts: dict[str, int]
     warnings: tuple[str, ...] = field(default=())
+    certificate: Certificate | None = None
 
     @property
     def has_dark_matter(self) -> bool:
@@ -171,6 +176,8 @@ class History:
 
         arrays = {name: getattr(self, name) for name in (*EVOLVED, "wavenumber", "redshift", "constraint")}
         arrays |= {f"trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
+        if self.certificate is not None:
+            arrays |= {f"certificate_{part.name}": getattr(self.certificate, part.name) for part in fields(Certificate)}
         words = {
             "format": _FORMAT,
             "scenario": self.scenario.to_mapping(),
@@ -212,12 +219,16 @@ def load_history(path) -> History:
         raise ValueError(f"{path} has layout {words['format']}, this version reads layout {_FORMAT}: run it again")
     scenario = replace(scenario_from_mapping(words["scenario"]), assumed=tuple(words["assumed"]))
     trace = Trace(**{part.name: arrays.pop(f"trace_{part.name}") for part in fields(Trace)})
+    certificate = None
+    if "certificate_promise" in arrays:
+        certificate = Certificate(**{part.name: arrays.pop(f"certificate_{part.name}") for part in fields(Certificate)})
     return History(
         scenario=scenario,
         universe=Universe(scenario.cosmology),
         trace=trace,
         counts=words["counts"],
         warnings=tuple(words["warnings"]),
+        certificate=certificate,
         **arrays,
     )
 

@@ -123,6 +123,61 @@ _SHORTFALL = (
              "age at which the contrast at the drag epoch would reach 1 by growing as t^(2/3) alone"),
 )
 
+_COMPARISON = (
+    Quantity("scenario", r"\mathrm{scenario}", "", "title of the scenario the row belongs to"),
+    Quantity("X_over_first", r"X/X_1", "",
+             "X over that of the first scenario at the same place; empty: one of the two is, or has no finite ratio"),
+    Quantity("delta_dark_difference", r"\Delta\delta_\mathrm{c}/\delta_\mathrm{c}", "",
+             "delta_dark less that of the first scenario, relative to it; empty: one of the two has no dark matter"),
+    Quantity("delta_baryon_difference", r"\Delta\delta_\mathrm{b}/\delta_\mathrm{b}", "",
+             "delta_baryon less that of the first scenario, relative to it"),
+    Quantity("ratio_difference", r"\Delta(\delta_\mathrm{b}/\delta_\mathrm{c})", "",
+             "baryon over dark-matter density contrast less that of the first scenario; "
+             "empty: one of the two has no dark matter"),
+)
+
+_NO_FILTERING = "empty: before the drag epoch, no dark matter, or the wavenumbers of the run do not reach it"
+_SCALES = (
+    Quantity("hubble_radius", r"1/(aH)", "Mpc", "comoving Hubble radius"),
+    Quantity("particle_horizon", r"\tau", "Mpc", "comoving way of light since the beginning, the conformal time"),
+    Quantity("sound_horizon", r"r_\mathrm{s}", "Mpc",
+             "comoving way of sound in the plasma since the beginning, up to the drag epoch at most"),
+    Quantity("plasma_sound_speed", r"c_\mathrm{p}", "km/s",
+             "sound speed of photons and baryons tied together; empty: after the drag epoch"),
+    Quantity("gas_sound_speed", r"c_\mathrm{s}", "km/s",
+             "sound speed of the gas alone, from its temperature and the slope of that with the scale factor"),
+    Quantity("gas_temperature", r"T", "K", "temperature of the gas"),
+    Quantity("silk_wavenumber", r"k_\mathrm{S}", "1/Mpc",
+             "photon diffusion up to this redshift: waves are damped by exp[-(k/k_S)^2]; empty: after the drag epoch"),
+    Quantity("jeans_wavenumber", r"k_\mathrm{J}", "1/Mpc",
+             "comoving Jeans wavenumber (a/c) sqrt(4 pi G rho): of the plasma, with rho of all that clusters, before "
+             "the drag epoch; of the gas, with rho of baryons and dark matter, after it"),
+    Quantity("jeans_length", r"\lambda_\mathrm{J}", "Mpc", "comoving Jeans length 2 pi/k_J"),
+    Quantity("jeans_mass", r"M_\mathrm{J}", "solMass",
+             "baryons and dark matter in a sphere of radius mass_radius (see header) times the Jeans length"),
+    Quantity("filtering_wavenumber", r"k_\mathrm{F}", "1/Mpc",
+             "filtering integral of Gnedin & Hui 1998 with the growth of all matter in the run; " + _NO_FILTERING),
+    Quantity("filtering_wavenumber_two_fluids", r"k_\mathrm{F2}", "1/Mpc",
+             "filtering integral with the baryons' own growth and pressure in the run; " + _NO_FILTERING),
+    Quantity("filtering_wavenumber_measured", r"k_\mathrm{Fm}", "1/Mpc",
+             "k_F of exp(-k^2/k_F^2) where delta_baryon/delta_dark has fallen by exp(-0.02) below its plateau; "
+             + _NO_FILTERING),
+    Quantity("smoothed_wavenumber", r"k_\mathrm{e}", "1/Mpc",
+             "where delta_baryon/delta_dark has fallen to 1/e of its plateau; " + _NO_FILTERING),
+    Quantity("filtering_mass", r"M_\mathrm{F}", "solMass",
+             "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber; " + _NO_FILTERING),
+    Quantity("filtering_mass_two_fluids", r"M_\mathrm{F2}", "solMass",
+             "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber_two_fluids; " + _NO_FILTERING),
+    Quantity("filtering_mass_measured", r"M_\mathrm{Fm}", "solMass",
+             "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber_measured; " + _NO_FILTERING),
+    Quantity("verdict", r"\mathrm{verdict}", "",
+             "what the mode is doing: larger than the horizon, oscillates with the plasma, damped, held up by "
+             "pressure, falls in, grows; empty: the steps of the run are too long to follow the wave"),
+    Quantity("agrees_with_jeans", r"\mathrm{agrees}", "",
+             "whether the mode withstands gravity (oscillates, damped, held up) exactly where its wavenumber is "
+             "above jeans_wavenumber; empty: no verdict"),
+)
+
 _LANDMARKS = (
     Quantity("equality_redshift", r"z_\mathrm{eq}", "", "matter and radiation have equal density"),
     Quantity("equality_wavenumber", r"k_\mathrm{eq}", "1/Mpc", "conformal expansion rate at equality"),
@@ -137,7 +192,7 @@ _LANDMARKS = (
     Quantity("conformal_age", r"\tau_0", "Mpc", "conformal time today"),
 )
 
-_GROUPS = (_AXES, _AMPLITUDES, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _LANDMARKS)
+_GROUPS = (_AXES, _AMPLITUDES, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _COMPARISON, _LANDMARKS)
 
 QUANTITIES = {quantity.name: quantity for group in _GROUPS for quantity in group}
 

@@ -3,22 +3,50 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
-from twofluid.drawing import growth_figure, lag_figure, shortfall_figure, spheres_figure
+import numpy as np
+
+from twofluid.drawing import (
+    difference_figure,
+    evolution_comparison_figure,
+    growth_figure,
+    lag_comparison_figure,
+    lag_figure,
+    scales_figure,
+    shortfall_figure,
+    spheres_figure,
+)
 from twofluid.files import FIGURE_FORMATS, figure_bytes, table_bytes
 from twofluid.products import (
     catchup_table,
     contrast_table,
+    course_table,
+    difference_table,
     evolution_table,
     growth_table,
+    joined_table,
     lag_table,
+    map_redshifts,
+    scales_table,
     shortfall_table,
     spheres_table,
+    verdict_table,
 )
-from twofluid.report import growth_lines, lag_lines, shortfall_lines, spheres_lines
+from twofluid.report import (
+    compared_evolution_lines,
+    compared_lag_lines,
+    growth_lines,
+    lag_lines,
+    scales_lines,
+    shortfall_lines,
+    spheres_lines,
+)
 
 EVOLUTION = "evolution"  # the amplitudes, written whatever products are asked for
+
+
+COMPARISON = "comparison-{}"  # what the file names of a comparison look like
 
 
 @dataclass(frozen=True)
@@ -34,11 +62,37 @@ class Product:
         under the name of the product.
     summary : callable
         Function (mapping of file name to Table) -> list of lines for the terminal.
+    comparison_figure, comparison_summary : callable, optional
+        The same for the tables of several scenarios, stacked by `joined_table`; without them the comparison
+        of the product consists of its tables.
+    drawn : mapping of str to callable
+        As `tables`, for tables that only the figure is made from; they are not written.
     """
 
     tables: Mapping[str, Callable]
     figure: Callable
     summary: Callable
+    comparison_figure: Callable | None = None
+    comparison_summary: Callable | None = None
+    drawn: Mapping[str, Callable] = field(default_factory=dict)
+
+
+def _given(options, *names):
+    """Return those of the named options that the scenario holds."""
+    return {name: options[name] for name in names if name in options}
+
+
+def _scales(history, options, redshift=None):
+    return scales_table(history, redshift, **_given(options, "mass_radius"))
+
+
+def _verdict(history, options, redshift=None):
+    return verdict_table(history, redshift, **_given(options, "together"))
+
+
+def _on_map(make):
+    """Return the function that makes a table on the redshifts of the map."""
+    return lambda history, options: make(history, options, map_redshifts(**_given(options, "map_from")))
 
 
 PRODUCTS = {
@@ -49,6 +103,14 @@ PRODUCTS = {
         },
         figure=lag_figure,
         summary=lag_lines,
+        comparison_figure=lag_comparison_figure,
+        comparison_summary=compared_lag_lines,
+    ),
+    "scales": Product(
+        tables={"scales": _scales, "verdict": _verdict},
+        figure=scales_figure,
+        summary=scales_lines,
+        drawn={"scales_map": _on_map(_scales), "verdict_map": _on_map(_verdict)},
     ),
     "growth": Product(
         tables={"growth": lambda history, options: growth_table(history, **options)},
@@ -120,8 +182,94 @@ def make_outputs(history):
         product = PRODUCTS[name]
         tables = {stem: make(history, options) for stem, make in product.tables.items()}
         outputs |= {f"{stem}.ecsv": table_bytes(table) for stem, table in tables.items()}
-        figure = product.figure(tables)
+        drawn = {stem: make(history, options) for stem, make in product.drawn.items()}
+        figure = product.figure(tables | drawn)
         if figure is not None:
             outputs |= {f"{name}.{form}": figure_bytes(figure, form, scenario) for form in FIGURE_FORMATS}
         summary += product.summary(tables)
+    return outputs, summary
+
+
+def comparison_names(alignment):
+    """Return the names of all files a comparison can write.
+
+    Parameters
+    ----------
+    alignment : Alignment
+        What is to be compared.
+
+    Returns
+    -------
+    list of str
+        File names; a figure with nothing to show is not written.
+
+    Raises
+    ------
+    ValueError
+        If a product of that name does not exist.
+    """
+    figures = (EVOLUTION, "differences", *(name for name in alignment.scenarios[0].products))
+    names = dict.fromkeys([*output_names(alignment.scenarios[0]), "courses.ecsv", "differences.ecsv"])
+    names |= dict.fromkeys(f"{name}.{form}" for name in figures for form in FIGURE_FORMATS)
+    return [COMPARISON.format(name) for name in names]
+
+
+def comparison_tables(comparison):
+    """Return the tables of a comparison, see `joined_table` for their layout.
+
+    Parameters
+    ----------
+    comparison : Comparison
+        The runs.
+
+    Returns
+    -------
+    dict of str to astropy.table.Table
+        "evolution", "courses" (one mode step by step), "differences" and every table of the common products.
+    """
+    histories, labels, notes = comparison.histories, comparison.labels, comparison.notes
+
+    def joined(make, **options):
+        return joined_table([make(history) for history in histories], labels, notes, **options)
+
+    middle = int(np.argsort(histories[0].wavenumber)[histories[0].wavenumber.size // 2])
+    tables = {EVOLUTION: joined(evolution_table)}
+    tables["courses"] = joined(lambda history: course_table(history, middle), ratios=False)
+    tables["differences"] = difference_table(tables[EVOLUTION])
+    for name, options in histories[0].scenario.products.items():
+        for stem, make in PRODUCTS[name].tables.items():
+            tables[stem] = joined(lambda history, make=make, options=options: make(history, options))
+    return tables
+
+
+def make_comparison(comparison):
+    """Make everything a comparison consists of, in memory.
+
+    Parameters
+    ----------
+    comparison : Comparison
+        The runs.
+
+    Returns
+    -------
+    outputs : dict of str to bytes
+        Content of each file by its name.
+    summary : list of str
+        Lines for the terminal.
+    """
+    tables = comparison_tables(comparison)
+    products = {name: PRODUCTS[name] for name in comparison.histories[0].scenario.products}
+    figures = {EVOLUTION: evolution_comparison_figure, "differences": difference_figure}
+    figures |= {name: product.comparison_figure for name, product in products.items() if product.comparison_figure}
+    outputs = {COMPARISON.format(f"{stem}.ecsv"): table_bytes(table) for stem, table in tables.items()}
+    for name, draw in figures.items():
+        figure = draw(tables)
+        if figure is not None:
+            scenarios = [history.scenario for history in comparison.histories]
+            outputs |= {
+                COMPARISON.format(f"{name}.{form}"): figure_bytes(figure, form, *scenarios) for form in FIGURE_FORMATS
+            }
+    summary = compared_evolution_lines(tables)
+    for product in products.values():
+        summary += product.comparison_summary(tables) if product.comparison_summary else []
     return outputs, summary

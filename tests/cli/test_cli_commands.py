@@ -418,3 +418,18 @@ def test_checking_loads_neither_figures_nor_tables(scenario_file):
     program = process("-c", code, scenario_file)
     program.communicate()
     assert program.returncode == 0
+
+
+def test_run_with_the_other_closure(scenario_file, out, capsys):
+    scenario_file.write_text(TINY + "method: {closure: sound-speed}\n")
+    assert run("run", scenario_file, "--out", out) == 0
+    assert sorted(os.listdir(out)) == OUTPUTS
+    assert "closure sound-speed is a small model" in capsys.readouterr().err
+    for name in ("evolution", "lag", "catchup"):
+        assert Table.read(out / f"{name}.ecsv").meta["closure"] == "sound-speed"
+
+
+def test_an_unknown_closure_is_refused(scenario_file, out, capsys, nothing_solved):
+    scenario_file.write_text(TINY + "method: {closure: sound speed}\n")
+    told = "tiny.yaml:11: method.closure = sound speed: must be kinetic or sound-speed; did you mean sound-speed?"
+    check_refused(capsys, out, run("run", scenario_file, "--out", out), told)

@@ -4,13 +4,21 @@ from types import SimpleNamespace
 
 import numpy as np
 
-from twofluid.fluids import ChainLengths, KineticSystem, Resolution, Stepping, adiabatic, clock, start_time
+from twofluid.fluids import ChainLengths, KineticSystem, Resolution, Stepping, clock, start_time
 from twofluid.scenario import Cosmology, Neutrinos
 from twofluid.solver import integrate
 from twofluid.universe import Universe
 
 FINE = Resolution(
-    Stepping(smooth_step=0.05, scattering_change=0.5, phase_step=0.4, diffusion_exponent=40.0, felt_phase=400.0),
+    Stepping(
+        outside_step=0.1,
+        smooth_step=0.05,
+        free_step=0.05,
+        scattering_change=0.5,
+        phase_step=0.4,
+        diffusion_exponent=40.0,
+        felt_phase=400.0,
+    ),
     ChainLengths(photon=12, polarization=12, neutrino=16),
 )
 
@@ -31,13 +39,11 @@ def course(asked, wavenumber, end=1.0, resolution=FINE, system_class=KineticSyst
     universe = Universe(asked)
     k = np.array([wavenumber])
     start = start_time(universe, k)
-    marks = universe.conformal_time(np.array([end]))
-    times = np.exp(clock(universe, k, start, marks, resolution.stepping).boundaries)
     system = system_class(universe, k, resolution.chains)
-    state = np.zeros((len(system.unknowns), 1))
-    for name, values in adiabatic(universe, k, start).items():
-        state[system.unknowns.index(name)] = values
-    observed = integrate(system, times, state, system.unknowns).observed[..., 0]
+    last = float(universe.conformal_time(end))
+    marks = np.array([*(time for time in system.switches if time < last), last])
+    times = np.exp(clock(universe, k, start, marks, resolution.stepping).boundaries)
+    observed = integrate(system, times, system.first_state(start), system.unknowns).observed[..., 0]
     tau = times[:, 0]
     rows = dict(zip(system.unknowns, observed, strict=True))
     return SimpleNamespace(**rows, tau=tau, x=wavenumber * tau, now=universe.conditions(tau), universe=universe)

@@ -9,7 +9,15 @@ from twofluid.fluids import ChainLengths, Resolution, Stepping
 from twofluid.scenario import Cosmology, Neutrinos, Primordial, Sampling, Scenario
 
 FINER = Resolution(
-    Stepping(smooth_step=0.03, scattering_change=0.3, phase_step=0.35, diffusion_exponent=40.0, felt_phase=500.0),
+    Stepping(
+        outside_step=0.1,
+        smooth_step=0.03,
+        free_step=0.05,
+        scattering_change=0.3,
+        phase_step=0.35,
+        diffusion_exponent=40.0,
+        felt_phase=500.0,
+    ),
     ChainLengths(photon=20, polarization=20, neutrino=30),
 )
 
@@ -87,7 +95,15 @@ def test_other_universes_against_a_finer_run(name):
 def test_finer_settings_shrink_the_error():
     # Convergence in step and chain length against the independent integration's own floor of a few 1e-5.
     coarse = Resolution(
-        Stepping(smooth_step=0.3, scattering_change=1.5, phase_step=2.5, diffusion_exponent=10.0, felt_phase=40.0),
+        Stepping(
+            outside_step=1.0,
+            smooth_step=0.4,
+            free_step=0.6,
+            scattering_change=1.5,
+            phase_step=2.5,
+            diffusion_exponent=10.0,
+            felt_phase=40.0,
+        ),
         ChainLengths(photon=6, polarization=6, neutrino=7),
     )
     errors = []
@@ -118,7 +134,7 @@ def test_every_wavenumber_from_the_smallest_to_the_largest_in_one_call():
 def test_einstein_constraint_along_the_run():
     history = evolve(scenario(), wavenumbers=np.geomspace(1e-4, 1e5, 46), redshifts=[0.0])
     assert history.constraint.max() < 3e-3
-    assert history.constraint[history.wavenumber < 1.0].max() < 1e-5
+    assert history.constraint[history.wavenumber < 1.0].max() < 4e-5
 
 
 def test_baryons_catch_up_late_and_sit_still_first(standard):
@@ -138,11 +154,11 @@ def test_curvature_is_warned_of_where_it_could_show():
 
 def test_constraint_holds_in_a_curved_universe():
     history = evolve(scenario(curvature_fraction=-0.1), wavenumbers=[0.05, 1.0], redshifts=[0.0])
-    assert history.constraint.max() < 1e-5
+    assert history.constraint.max() < 4e-5
 
 
 def test_cost_is_bounded_by_counts():
     history = evolve(scenario(), wavenumbers=np.geomspace(1e-4, 1e4, 64), redshifts=[1000.0, 0.0])
-    assert history.counts["steps"] <= 230 * 64
-    assert history.counts["lanes"] <= 1.35 * history.counts["steps"]
-    assert history.counts["rate_evaluations"] == history.counts["factorizations"] <= 12
+    assert history.counts["steps"] <= 170 * 64
+    assert history.counts["lanes"] <= 1.6 * history.counts["steps"]
+    assert history.counts["rate_evaluations"] == history.counts["factorizations"] <= 16

@@ -1,6 +1,6 @@
 """Histories with known closed forms, shaped like a real one."""
 
-from dataclasses import make_dataclass
+from dataclasses import make_dataclass, replace
 from types import SimpleNamespace
 
 import numpy as np
@@ -10,6 +10,8 @@ from scipy.interpolate import CubicHermiteSpline
 from twofluid import Universe, evolve
 from twofluid.history import Trace
 from twofluid.scenario import Cosmology, Primordial, Sampling, Scenario
+
+RUN_REDSHIFTS = (10000.0, 3000.0, 1500.0, 1000.0, 500.0, 300.0, 200.0, 100.0, 50.0, 20.0, 10.0, 5.0, 0.0)
 
 Landmarks = make_dataclass("Landmarks", [("drag_redshift", float), ("drag_sound_horizon", float)])
 
@@ -35,6 +37,7 @@ def make_history():
             scenario=SimpleNamespace(
                 to_mapping=lambda: {"title": "Saltmarsh test"},
                 assumptions=lambda: ("primordial.tilt = 0.965",),
+                method=SimpleNamespace(closure="kinetic"),
             ),
             universe=SimpleNamespace(
                 age=lambda a: AGE_TODAY * a**1.5,  # Einstein-de Sitter
@@ -80,6 +83,33 @@ def curves():
     return SimpleNamespace(power=power, wave=wave, age_today=AGE_TODAY)
 
 
+def standard_scenario(**changes):
+    """Saltmarsh's universe, parameters by name changed."""
+    cosmology = replace(Cosmology(67.5, baryon_density=0.0223, dark_matter_density=0.1195), **changes)
+    return Scenario("Saltmarsh test", cosmology, Primordial(), Sampling([0.1], [0.0]))
+
+
+@pytest.fixture(scope="session")
+def standard_run():
+    """A run from beyond the horizon to far below the Jeans scale."""
+    return evolve(standard_scenario(), wavenumbers=np.geomspace(1e-4, 1e4, 97), redshifts=RUN_REDSHIFTS)
+
+
+@pytest.fixture(scope="session")
+def bare_run():
+    """The same without dark matter."""
+    scenario = standard_scenario(dark_matter_density=0.0)
+    return evolve(scenario, wavenumbers=np.geomspace(1e-4, 150.0, 12), redshifts=RUN_REDSHIFTS)
+
+
+@pytest.fixture(scope="session")
+def make_run():
+    """Return a function that runs wavenumbers of the standard universe."""
+    return lambda wavenumbers, redshifts: evolve(
+        standard_scenario(), wavenumbers=wavenumbers, redshifts=redshifts
+    )
+
+
 def planck_like(**changes):
     """Scenario with Planck 2018 VI, Table 2 means, every neutrino massless; changes go to the cosmology."""
     values = {"hubble_constant": 67.36, "baryon_density": 0.02237, "dark_matter_density": 0.12} | changes
@@ -106,7 +136,7 @@ def baryons_alone():
 
 
 @pytest.fixture(scope="session")
-def make_run():
+def make_up_run():
     """Return a function that builds a history of made-up curves of ln a, in a real universe.
 
     Each curve is a pair of functions (value, derivative by ln a), one a mode.
@@ -137,6 +167,7 @@ def make_run():
             delta_baryon=sampled(baryon, 0, log_a),
             has_dark_matter=scenario.cosmology.dark_matter_density > 0.0,
             warnings=(),
+            certificate=None,
             constraint=np.full(len(dark), 1.5e-5),
             trace=trace,
             at=lambda name, z: between(trace, name, z)[0],

@@ -25,8 +25,8 @@ def straight(value, slope):
     return (lambda x: value + slope * x, lambda x: slope + 0.0 * x)
 
 
-def test_powers_of_the_scale_factor(make_run):
-    run = make_run([power(0.9)], [power(1.3, 0.2)], redshift=(99.0, 9.0, 0.0))
+def test_powers_of_the_scale_factor(make_up_run):
+    run = make_up_run([power(0.9)], [power(1.3, 0.2)], redshift=(99.0, 9.0, 0.0))
     table = growth_table(run, reference_redshift=99.0)
     share = 0.12 / (0.12 + 0.02237)  # of dark matter
     a = np.array([0.01, 0.1, 1.0])
@@ -44,21 +44,21 @@ def test_powers_of_the_scale_factor(make_run):
     assert table.meta["reference_redshift"] == 99.0
 
 
-def test_cold_matter_is_not_suppressed(make_run, scenario_with):
+def test_cold_matter_is_not_suppressed(make_up_run, scenario_with):
     from scipy.interpolate import CubicSpline
 
     grid = np.linspace(-14.0, 0.0, 1401)
-    universe = make_run([power(1)], [power(1)]).universe
+    universe = make_up_run([power(1)], [power(1)]).universe
     course = CubicSpline(grid, cold_growth(universe, np.expm1(-grid))[0])
     curve = (course, course.derivative())
-    table = growth_table(make_run([curve], [curve], redshift=(1000.0, 20.0, 0.0)), reference_redshift=200.0)
+    table = growth_table(make_up_run([curve], [curve], redshift=(1000.0, 20.0, 0.0)), reference_redshift=200.0)
     assert entries(table["suppression"]) == pytest.approx([1.0] * 3, rel=1e-6)
-    slower = growth_table(make_run([power(0.9)], [power(0.9)], redshift=(0.0,)), reference_redshift=200.0)
+    slower = growth_table(make_up_run([power(0.9)], [power(0.9)], redshift=(0.0,)), reference_redshift=200.0)
     assert slower["suppression"][0] < 0.9
 
 
-def test_change_of_sign_leaves_no_exponent(make_run):
-    table = growth_table(make_run([power(1)], [straight(1.0, 0.3)], redshift=(0.0,)), reference_redshift=99.0)
+def test_change_of_sign_leaves_no_exponent(make_up_run):
+    table = growth_table(make_up_run([power(1)], [straight(1.0, 0.3)], redshift=(0.0,)), reference_redshift=99.0)
     expected = 1.0 / (1.0 - 0.3 * np.log(100.0))
     assert table["growth_baryon"][0] == pytest.approx(expected, rel=1e-12)
     assert expected < 0.0
@@ -66,8 +66,8 @@ def test_change_of_sign_leaves_no_exponent(make_run):
     assert not table["exponent_dark"].mask.any()
 
 
-def test_growth_from_nothing_is_empty(make_run):
-    table = growth_table(make_run([power(1)], [straight(0.0, 0.0)], redshift=(0.0,)), reference_redshift=9.0)
+def test_growth_from_nothing_is_empty(make_up_run):
+    table = growth_table(make_up_run([power(1)], [straight(0.0, 0.0)], redshift=(0.0,)), reference_redshift=9.0)
     for stem in ("growth", "rate", "exponent"):
         assert table[f"{stem}_baryon"].mask.all()
         assert not table[f"{stem}_matter"].mask.any()

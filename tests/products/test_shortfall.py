@@ -28,10 +28,10 @@ def test_threshold_of_collapse():
     assert pytest.approx(1.686, abs=5e-4) == COLLAPSE
 
 
-def test_growth_as_the_scale_factor(make_run):
+def test_growth_as_the_scale_factor(make_up_run):
     # delta = C a with rms x today: order unity at 1 + z = x.
-    unit = rms_of_unit_contrast(make_run([power(1)], [power(1)]))
-    run = make_run([power(1, 20.0 / unit)], [power(1, 0.5 / unit)])
+    unit = rms_of_unit_contrast(make_up_run([power(1)], [power(1)]))
+    run = make_up_run([power(1, 20.0 / unit)], [power(1, 0.5 / unit)])
     table = shortfall_table(run, target_redshift=9.0)
     dark, baryon = row(table, "dark"), row(table, "baryon")
     age, drag = run.universe.age, run.universe.landmarks.drag_redshift
@@ -55,46 +55,46 @@ def test_growth_as_the_scale_factor(make_run):
     assert matter == pytest.approx((0.12 * 2.0 + 0.02237 * 0.05) / (0.12 + 0.02237), rel=1e-9)
 
 
-def test_growth_that_stops(make_run):
+def test_growth_that_stops(make_up_run):
     # delta = C a exp(-a/a_1): greatest at a = a_1 = e^-3, where it is C a_1/e.
-    unit = rms_of_unit_contrast(make_run([power(1)], [power(1)]))
+    unit = rms_of_unit_contrast(make_up_run([power(1)], [power(1)]))
     rate = np.exp(3.0)
     stopping = (
         lambda x: 0.1 / unit * np.exp(x - rate * np.exp(x)),
         lambda x: 0.1 / unit * (1.0 - rate * np.exp(x)) * np.exp(x - rate * np.exp(x)),
     )
     for step in (0.02, 0.19):  # the top between two knots
-        found = row(shortfall_table(make_run([power(1)], [stopping], step=step)), "baryon")
+        found = row(shortfall_table(make_up_run([power(1)], [stopping], step=step)), "baryon")
         # A parabola through a top of this breadth: the cube of the step, and its square in height.
         assert 1.0 + found["greatest_redshift"] == pytest.approx(rate, rel=2.0 * step**2)
         assert found["greatest_rms"] == pytest.approx(0.1 / rate / np.e, rel=step**3)
         assert found["unity_redshift"] is None
 
 
-def test_a_wave_that_passes_unity_twice_counts_from_the_first_time(make_run):
-    unit = rms_of_unit_contrast(make_run([power(1)], [power(1)]))
+def test_a_wave_that_passes_unity_twice_counts_from_the_first_time(make_up_run):
+    unit = rms_of_unit_contrast(make_up_run([power(1)], [power(1)]))
     # rms |1.5 sin(ln a)| from just after its zero at ln a = -4 pi on: 1 first where sin = 2/3, never 1.686.
     wave = (lambda x: 1.5 / unit * np.sin(x), lambda x: 1.5 / unit * np.cos(x))
-    found = row(shortfall_table(make_run([power(1)], [wave], start=-12.5)), "baryon")
+    found = row(shortfall_table(make_up_run([power(1)], [wave], start=-12.5)), "baryon")
     first = -4.0 * np.pi + np.arcsin(2.0 / 3.0)
     assert np.log1p(found["unity_redshift"]) == pytest.approx(-first, rel=1e-8)
     assert found["collapse_redshift"] is None
     assert found["greatest_rms"] == pytest.approx(1.5, rel=1e-6)
 
 
-def test_at_unity_from_the_start_is_infinite(make_run):
-    unit = rms_of_unit_contrast(make_run([power(1)], [power(1)]))
-    found = row(shortfall_table(make_run([power(0.01, 3.0 / unit)], [power(1)])), "dark")
+def test_at_unity_from_the_start_is_infinite(make_up_run):
+    unit = rms_of_unit_contrast(make_up_run([power(1)], [power(1)]))
+    found = row(shortfall_table(make_up_run([power(0.01, 3.0 / unit)], [power(1)])), "dark")
     assert found["unity_redshift"] == np.inf
     assert found["unity_age"] is None
     assert found["shortfall"] < 1.0
 
 
-def test_needed_contrast_across_equality(make_run):
+def test_needed_contrast_across_equality(make_up_run):
     # Meszaros 1974: cold matter grows as 1 + 3y/2; a flat universe without a cosmological constant.
-    trial = make_run([power(1)], [power(1)], hubble_constant=100.0).universe
+    trial = make_up_run([power(1)], [power(1)], hubble_constant=100.0).universe
     omega = sum(trial.density_fraction(name, 1.0) for name in ("photon", "neutrino", "baryon", "dark"))
-    run = make_run([power(1)], [power(1)], hubble_constant=100.0 * omega**0.5)
+    run = make_up_run([power(1)], [power(1)], hubble_constant=100.0 * omega**0.5)
     landmarks = run.universe.landmarks
     y = (1.0 + landmarks.equality_redshift) / (1.0 + np.array([landmarks.drag_redshift, 7.5]))
     table = shortfall_table(run)

@@ -27,9 +27,15 @@ VALUES = {
     "sampling.wavenumbers.to": "100 1/Mpc",
     "sampling.wavenumbers.per_decade": "5",
     "sampling.redshifts": "[1000, 100, 10]",
+    "method": "",
+    "method.closure": "sound-speed",
     "products": "",
     "products.lag": "",
     "products.lag.fractions": "[0.5, 0.9]",
+    "products.scales": "",
+    "products.scales.mass_radius": "1",
+    "products.scales.together": "0.95",
+    "products.scales.map_from": "3e4",
     "products.growth": "",
     "products.growth.reference_redshift": "100",
     "products.spheres": "",
@@ -40,7 +46,8 @@ VALUES = {
     "products.shortfall.radii": "[2 Mpc]",
     "products.shortfall.masses": "[1e9 solMass]",
 }
-NO_PRODUCT = dict.fromkeys(path for path in VALUES if path.startswith("products."))  # leaves their lines out
+
+NO_PRODUCTS = dict.fromkeys(path for path in VALUES if path.startswith("products."))  # as changes: all lines left out
 
 
 def full_text(changes=None, names=None):

@@ -4,7 +4,7 @@ import pickle
 import re
 
 import pytest
-from scenario_texts import NO_PRODUCT, VALUES, full_text, line_of, refusal, wavenumber_text
+from scenario_texts import NO_PRODUCTS, VALUES, full_text, line_of, refusal, wavenumber_text
 
 from twofluid.scenario import ScenarioError, parse_scenario
 from twofluid.scenario.keys import KEY_AT, KEYS, SECTIONS, Kind
@@ -96,7 +96,7 @@ def test_a_section_must_hold_keys(path, value):
 
 
 def test_products_without_value_is_ambiguous():
-    error = refusal(full_text(NO_PRODUCT))
+    error = refusal(full_text(NO_PRODUCTS))
     check(error, "products", None, "has no value", "write {} for none, or leave the section out for lag")
 
 
@@ -363,3 +363,22 @@ def test_the_text_names_only_what_applies():
     assert str(ScenarioError("rule", "remedy", "a\n.yaml")) == "a\\n.yaml: rule; remedy"
     assert str(ScenarioError("rule", "remedy", "a.yaml", 3)) == "a.yaml:3: rule; remedy"
     assert str(ScenarioError("rule", "remedy", key="a.b", value="1")) == "scenario: a.b = 1: rule; remedy"
+
+
+@pytest.mark.parametrize(
+    ("value", "shown", "remedy"),
+    [
+        ("sound_speed", "sound_speed", "did you mean sound-speed?"),
+        ("Kinetic", "Kinetic", "did you mean kinetic?"),
+        ("2", "2", "write for example kinetic"),
+        ("[kinetic, sound-speed]", "[kinetic, sound-speed]", "write for example kinetic"),
+    ],
+)
+def test_a_choice_takes_only_its_words(value, shown, remedy):
+    error = refusal(full_text({"method.closure": value}))
+    check(error, "method.closure", shown, "must be kinetic or sound-speed", remedy)
+
+
+def test_a_choice_left_blank_is_refused():
+    error = refusal(full_text({"method.closure": ""}))
+    check(error, "method.closure", None, "has no value", "give one, for example kinetic")

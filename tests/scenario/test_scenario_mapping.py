@@ -6,10 +6,11 @@ from pathlib import Path
 import numpy
 import pytest
 import yaml
-from scenario_texts import NO_PRODUCT, full_text, wavenumber_text
+from scenario_texts import NO_PRODUCTS, full_text, wavenumber_text
 
 from twofluid.scenario import (
     Cosmology,
+    Method,
     Neutrinos,
     Primordial,
     Sampling,
@@ -22,7 +23,7 @@ from twofluid.scenario import (
     scenario_template,
 )
 from twofluid.scenario.document import entry_from_text
-from twofluid.scenario.keys import KEY_AT, KEYS, SECTIONS, Kind
+from twofluid.scenario.keys import BASE, DEFAULT_PRODUCTS, KEY_AT, KEYS, SECTIONS, Kind
 from twofluid.scenario.values import read_value
 
 SHIPPED = sorted((Path(__file__).parents[2] / "scenarios").glob("*.yaml"))
@@ -33,10 +34,10 @@ TEXTS = {
     "template": scenario_template(),
     "two points": full_text({"sampling.wavenumbers.per_decade": "0.01"}),
     "odd density": full_text({"sampling.wavenumbers.per_decade": "66.66"}),
-    "no products": full_text({"products": "{}", **NO_PRODUCT}),
+    "no products": full_text({"products": "{}"} | NO_PRODUCTS),
     "no spheres named": full_text({"products.spheres.radii": None, "products.shortfall.masses": None}),
     "odd title": full_text({"title": '"5: # no"'}),
-} | {path.name: path.read_text() for path in SHIPPED}
+} | {path.name: path.read_text() for path in SHIPPED if "\nbase:" not in path.read_text()}
 
 
 @pytest.mark.parametrize("text", TEXTS.values(), ids=TEXTS)
@@ -110,6 +111,7 @@ def test_a_scenario_built_by_hand_passes_the_rules_of_a_file():
         ({"sampling": Sampling([], [10])}, "sampling.wavenumbers"),
         ({"products": {"lag": {"fraction": (0.5,)}}}, "products.lag.fraction"),
         ({"products": {"map": {}}}, "products.map"),
+        ({"method": Method("fluid")}, "method.closure"),
     ],
 )
 def test_a_scenario_built_by_hand_can_be_refused(changes, key):
@@ -125,6 +127,12 @@ def test_a_scenario_built_by_hand_can_be_refused(changes, key):
 def test_requests_are_frozen(part):
     with pytest.raises(FrozenInstanceError):
         part.title = "other"
+
+
+def test_a_scenario_without_a_method_has_the_default_and_others_differ():
+    assert built().method == Method("kinetic")
+    assert built(method=Method("sound-speed")) != built()
+    assert built(method=Method("sound-speed")).to_mapping()["method"] == {"closure": "sound-speed"}
 
 
 def test_two_scenarios_do_not_share_their_products():
@@ -146,8 +154,9 @@ def test_the_template_stands_at_the_defaults():
         "cosmology": {name: in_mapping(scenario.to_mapping(), f"cosmology.{name}") for name in
                       ("hubble_constant", "baryon_density", "dark_matter_density")},
         "sampling": scenario.to_mapping()["sampling"],
-        "products": dict.fromkeys(scenario.products),
     }  # fmt: skip
+    # Every product of the template, with nothing said about it.
+    required["products"] = dict.fromkeys(parse_scenario(scenario_template()).products)
     left_out = scenario_from_mapping(required)
     assert replace(left_out, title=scenario.title) == scenario
 
@@ -200,15 +209,15 @@ def parse_entry(text):
 def test_the_key_table_has_a_row_for_each_key():
     header, rule, *rows = key_table_markdown().splitlines()
     assert header == "| key | value | allowed | default | meaning |"
-    assert [row.split(" | ")[0] for row in rows] == [f"| `{key.path}`" for key in KEYS]
+    assert [row.split(" | ")[0] for row in rows] == [f"| `{key.path}`" for key in (BASE, *KEYS)]
     assert {row.count("|") for row in (header, rule, *rows)} == {6}
-    assert "| `cosmology.photon_temperature` | number with unit [K] | from 0.1 to 30 | 2.7255 K |" in rows[4]
+    assert "| `cosmology.photon_temperature` | number with unit [K] | from 0.1 to 30 | 2.7255 K |" in rows[5]
 
 
 def test_each_key_stands_in_a_section_the_table_knows():
     for key in KEYS:
         assert key.section in {"", "sampling.wavenumbers", *SECTIONS}
-        assert key.unit or key.kind in (Kind.TEXT, Kind.NUMBER, Kind.NUMBERS)
+        assert key.unit or key.kind in (Kind.TEXT, Kind.NUMBER, Kind.NUMBERS, Kind.CHOICE)
         assert not (key.required and key.default is not None)
 
 
@@ -231,6 +240,8 @@ def test_shipped_scenarios_read_and_say_that_they_are_invented(path):
 
 def test_the_minimal_scenario_has_only_required_keys():
     scenario = read_scenario(next(path for path in SHIPPED if "minimal" in path.name))
-    other = tuple(f"products.{name}." for name in ("growth", "spheres", "shortfall"))  # not made unless asked for
-    optional = {key.path for key in KEYS if not key.required and not key.path.startswith(other)}
+    made = tuple(f"products.{product}." for product in DEFAULT_PRODUCTS)
+    optional = {
+        key.path for key in KEYS if not key.required and (key.path.startswith(made) or "products" not in key.path)
+    }
     assert set(scenario.assumed) == optional

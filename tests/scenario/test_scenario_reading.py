@@ -2,9 +2,9 @@
 
 import pytest
 from astropy import units
-from scenario_texts import NO_PRODUCT, VALUES, full_text, wavenumber_text
+from scenario_texts import NO_PRODUCTS, VALUES, full_text, wavenumber_text
 
-from twofluid.scenario import Cosmology, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
+from twofluid.scenario import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
 
 MINIMAL = """
 cosmology: {hubble_constant: 70 km/(s Mpc), baryon_density: 0.02, dark_matter_density: 0.1}
@@ -35,10 +35,12 @@ def test_every_key_reaches_its_field():
         sampling=Sampling(wavenumbers=wavenumbers, redshifts=(1000.0, 100.0, 10.0)),
         products={
             "lag": {"fractions": (0.5, 0.9)},
+            "scales": {"mass_radius": 1.0, "together": 0.95, "map_from": 3e4},
             "growth": {"reference_redshift": 100.0},
             "spheres": {"radii": (1.0, 3.0), "masses": (1e6,)},
             "shortfall": {"target_redshift": 7.0, "radii": (2.0,), "masses": (1e9,)},
         },
+        method=Method("sound-speed"),
     )
     assert len(wavenumbers) == 21  # four decades, five points each, both ends
     assert scenario.assumed == ()
@@ -61,8 +63,8 @@ def test_defaults_fill_what_is_left_out_and_are_named():
         "cosmology.dark_matter_density",
         "sampling.redshifts",
     }
-    leaves = {path for path, value in VALUES.items() if value} - required
-    leaves -= set(NO_PRODUCT) - {"products.lag.fractions"}
+    not_made = set(NO_PRODUCTS) - {"products.lag.fractions"}
+    leaves = {path for path, value in VALUES.items() if value} - required - not_made
     assert set(scenario.assumed) == {path for path in leaves if "wavenumbers" not in path}
     assert len(scenario.assumed) == len(set(scenario.assumed))
 
@@ -101,7 +103,7 @@ def test_an_empty_section_stands_at_its_defaults(section, empty):
 
 
 def test_products_may_be_none_at_all():
-    scenario = reread({"products": "{}", **NO_PRODUCT})
+    scenario = reread({"products": "{}"} | NO_PRODUCTS)
     assert scenario.products == {}
     assert scenario.assumed == ()
 

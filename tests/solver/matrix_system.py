@@ -20,11 +20,11 @@ class MatrixSystem:
         self.matrices = matrices
         self.unknowns = [f"y{index}" for index in range(count)]
         every = {(row, column) for row in range(count) for column in range(count)}
-        self.couplings = frozenset(every if couplings is None else couplings)
+        self._couplings = every if couplings is None else couplings
 
     def step_rates(self, modes, time, step):
         """Step times rate, shape (stage, lane)."""
-        rates = {entry: np.empty(time.shape) for entry in self.couplings}
+        rates = {entry: np.empty(time.shape) for entry in self._couplings}
         for place, mode in enumerate(modes):
             for index in np.ndindex(time.shape[:2]):
                 matrix = self.matrices[mode](time[*index, place])

@@ -3,9 +3,9 @@
 import numpy as np
 import pytest
 
-from twofluid.solver import Elimination
-from twofluid.solver.blocks import add, as_full, inverse, multiply, pivot
-from twofluid.solver.collocation import INVERSE_WEIGHTS, STATE_LOAD
+from twofluid.solver import Elimination, blocks
+from twofluid.solver.blocks import DIAGONAL, FULL, SPECTRAL, UNIFORM
+from twofluid.solver.collocation import EIGENVALUES, INVERSE_WEIGHTS, PROJECTORS, STATE_LOAD, WEIGHTS
 
 STEPS, MODES = 2, 3
 LANES = STEPS * MODES
@@ -88,28 +88,77 @@ def test_shared_chains_are_substituted_together():
 
 def test_fill_in_is_symbolic():
     # An arrow pattern eliminated from its tip fills completely; eliminated last it fills nothing.
-    tip_first = {(0, index) for index in range(4)} | {(index, 0) for index in range(4)}
-    tip_last = {(3 - row, 3 - column) for row, column in tip_first}
+    entries = {(0, index) for index in range(4)} | {(index, 0) for index in range(4)}
+    tip_first = {entry: np.zeros(LANES) for entry in entries}
+    tip_last = {(3 - row, 3 - column): rate for (row, column), rate in tip_first.items()}
     assert [len(pivot.columns) for pivot in Elimination(4, tip_first).pivots] == [3, 2, 1, 0]
     assert [len(pivot.columns) for pivot in Elimination(4, tip_last).pivots] == [1, 1, 1, 0]
 
 
-@pytest.mark.parametrize("left_kind", [1, 2, 3])
-@pytest.mark.parametrize("right_kind", [1, 2, 3])
-def test_block_algebra_of_every_kind(left_kind, right_kind):
-    draw = np.random.default_rng(7)
-    shape = {1: (LANES,), 2: (3, LANES), 3: (3, 3, LANES)}
-    left, right = draw.normal(size=shape[left_kind]), draw.normal(size=shape[right_kind])
-    full_left, full_right = as_full(left), as_full(right)
-    product = np.einsum("ikl,kjl->ijl", full_left, full_right)
-    np.testing.assert_allclose(as_full(multiply(left, right)), product, rtol=1e-12)
-    np.testing.assert_allclose(as_full(add(left, right)), full_left + full_right, rtol=1e-12)
+def random_block(kind, seed):
+    """One block of some kind, and the same as full matrices computed another way."""
+    draw = np.random.default_rng(seed)
+    shape, number = kind.value
+    block = draw.normal(size=(*shape, LANES)).astype(number)
+    if kind == SPECTRAL:
+        block[1] += 1j * draw.normal(size=LANES)
+        full = np.einsum("nij,nl->ijl", PROJECTORS, block).real
+    elif kind == FULL:
+        full = block
+    else:
+        full = np.eye(3)[:, :, None] * block
+    return block, full
 
 
-@pytest.mark.parametrize("kind", [1, 2, 3])
-def test_pivot_and_inverse(kind):
-    rate = np.random.default_rng(8).normal(size={1: (LANES,), 2: (3, LANES), 3: (3, 3, LANES)}[kind])
-    block = INVERSE_WEIGHTS[:, :, None] - as_full(rate)
-    np.testing.assert_allclose(pivot(rate), block, rtol=1e-13)
-    expected = np.linalg.inv(np.moveaxis(block, 2, 0))
-    np.testing.assert_allclose(np.moveaxis(inverse(block), 2, 0), expected, rtol=1e-9)
+def as_full(block, kind):
+    out = FULL.empty(LANES)
+    blocks.write_full(block, kind, out)
+    return out
+
+
+KINDS = (UNIFORM, SPECTRAL, DIAGONAL, FULL)
+
+
+@pytest.mark.parametrize("kind", KINDS)
+def test_any_block_as_a_full_one(kind):
+    block, full = random_block(kind, 3)
+    np.testing.assert_allclose(as_full(block, kind), full, atol=1e-12)
+
+
+@pytest.mark.parametrize("first_kind", KINDS)
+@pytest.mark.parametrize("second_kind", KINDS)
+@pytest.mark.parametrize("name", ["add", "multiply"])
+def test_block_algebra_of_every_kind(first_kind, second_kind, name):
+    (first, full_first), (second, full_second) = random_block(first_kind, 7), random_block(second_kind, 8)
+    kind = blocks.combined(first_kind, second_kind)
+    out = kind.empty(LANES)
+    getattr(blocks, name)(first, second, (first_kind, second_kind), out)
+    expected = full_first + full_second if name == "add" else np.einsum("ikl,kjl->ijl", full_first, full_second)
+    np.testing.assert_allclose(as_full(out, kind), expected, atol=1e-12)
+
+
+@pytest.mark.parametrize("first_kind", KINDS)
+@pytest.mark.parametrize("second_kind", KINDS)
+def test_sum_in_place(first_kind, second_kind):
+    kinds = first_kind, second_kind
+    for place, kind in enumerate(kinds):
+        if kind == blocks.combined(*kinds):
+            operands = [random_block(first_kind, 7), random_block(second_kind, 8)]
+            blocks.add(operands[0][0], operands[1][0], kinds, operands[place][0])
+            expected = random_block(first_kind, 7)[1] + random_block(second_kind, 8)[1]
+            np.testing.assert_allclose(as_full(operands[place][0], kind), expected, atol=1e-12)
+
+
+@pytest.mark.parametrize("kind", KINDS)
+def test_inverse_of_a_pivot(kind):
+    rate, full = random_block(kind, 9)
+    result = SPECTRAL if kind in (UNIFORM, SPECTRAL) else FULL
+    out = result.empty(LANES)
+    blocks.invert_pivot(rate, (kind,), out)
+    expected = np.linalg.inv(np.moveaxis(INVERSE_WEIGHTS[:, :, None] - full, 2, 0))
+    np.testing.assert_allclose(np.moveaxis(as_full(out, result), 2, 0), expected, rtol=1e-8, atol=1e-10)
+
+
+def test_eigenbasis_gives_functions_of_the_matrix():
+    np.testing.assert_allclose(np.einsum("n,nij->ij", EIGENVALUES, PROJECTORS).real, INVERSE_WEIGHTS, atol=1e-12)
+    np.testing.assert_allclose(np.einsum("n,nij->ij", 1 / EIGENVALUES, PROJECTORS).real, WEIGHTS, atol=1e-12)

@@ -4,20 +4,20 @@ from __future__ import annotations
 
 import numpy as np
 from matplotlib.figure import Figure
-from matplotlib.ticker import FixedLocator, NullLocator, ScalarFormatter
 
 from twofluid.drawing.axes import by_redshift, logarithmic_abscissa, with_room
 from twofluid.drawing.style import (
     PAGE_WIDTH,
     PANEL_HEIGHT,
+    REDSHIFT_TICKS,
     axes_or_new,
     axis_label,
     draw_curves,
     journal_style,
     label_curves,
+    redshift_axis,
 )
 
-REDSHIFT_TICKS = (0, 1, 3, 10, 30, 100, 300, 1000, 3000, 10**4, 10**5, 10**6)
 RATIO_VIEW = (-1.0, 2.0)  # ratios beyond are cut off: dark matter passing through zero makes them infinite
 GUTTER = 0.04  # between the panels, over what their labels need [fraction of the figure]
 
@@ -73,9 +73,8 @@ def draw_catchup(table, axes=None):
         curves = [(f"{100 * fraction:g} %", *_caught_up(table, name, fraction))
                   for name, fraction in table.meta["fractions"].items()]
         logarithmic_abscissa(axes, "wavenumber", table["wavenumber"])
-        axes.set_yscale("function", functions=(np.log1p, np.expm1))
-        draw_curves(axes, curves)
         _redshift_axis(axes, np.ma.concatenate([redshift for *_, redshift in curves]).compressed())
+        draw_curves(axes, curves)
         label_curves(axes)
     return axes
 
@@ -121,8 +120,4 @@ def _redshift_axis(axes, redshifts):
     """Ticks at round redshifts on an axis spaced as ln(1 + z); the span of the data and some room."""
     drawn = redshifts if redshifts.size else np.array([0, REDSHIFT_TICKS[-1]])
     low, high = with_room(np.log1p(drawn.min()), np.log1p(drawn.max()))
-    axes.set_ylim(np.expm1(max(low, 0)), np.expm1(high))
-    axes.yaxis.set_major_locator(FixedLocator(REDSHIFT_TICKS))
-    axes.yaxis.set_minor_locator(NullLocator())
-    axes.yaxis.set_major_formatter(ScalarFormatter())
-    axes.set_ylabel(axis_label("redshift", "redshift of catching up"))
+    redshift_axis(axes, "y", (np.expm1(max(low, 0)), np.expm1(high)), "redshift of catching up")

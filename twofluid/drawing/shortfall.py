@@ -99,7 +99,7 @@ def _draw(table, name, thresholds, label, axes):
         ]
         logarithmic_abscissa(axes, "wavenumber", waves["wavenumber"])
         logarithmic_ordinate(axes, np.ma.concatenate([height for *_, height in curves]), thresholds.values())
-        draw_curves(axes, curves, [FLUID_COLOURS[fluid] for fluid in shown])
+        draw_curves(axes, curves, colours=[FLUID_COLOURS[fluid] for fluid in shown])
         for words, height in thresholds.items():
             axes.axhline(height, **THRESHOLD)
             axes.annotate(

@@ -6,8 +6,9 @@ from pathlib import Path
 
 import matplotlib
 import numpy as np
-from matplotlib.colors import LinearSegmentedColormap
+from matplotlib.colors import LinearSegmentedColormap, to_hex
 from matplotlib.figure import Figure
+from matplotlib.ticker import FixedLocator, NullLocator, ScalarFormatter
 
 from twofluid.quantities import QUANTITIES
 
@@ -22,7 +23,12 @@ PHOTONS = "#0d6f6b"  # teal
 
 # From dark matter alone to baryons that have joined it; lightness rises all the way, so grey keeps the order.
 JOINING = LinearSegmentedColormap.from_list("joining", [DARK_MATTER, PHOTONS, BARYONS])
-DASHES = ("-", (0, (5, 1.5)), (0, (1.2, 1.2)), (0, (6, 1.5, 1.2, 1.5)))  # in turn; unit: line width
+# One universe beside another, told apart by dashes first; grey keeps the order here too.
+SCENARIOS = LinearSegmentedColormap.from_list("scenarios", [BARYONS, PHOTONS])
+# In turn; unit: line width.
+DASHES = ("-", (0, (5, 1.5)), (0, (1.2, 1.2)), (0, (6, 1.5, 1.2, 1.5)), (0, (3, 1.2, 1.2, 1.2, 1.2, 1.2)))
+
+REDSHIFT_TICKS = (0, 1, 3, 10, 30, 100, 300, 1000, 3000, 10**4, 10**5, 10**6)
 
 LABEL_SIZE = 7  # labels at curves [pt]
 LABEL_PITCH = 8.5  # distance between two of them, so that they do not touch [pt]
@@ -33,6 +39,8 @@ PATCH = {"facecolor": "white", "edgecolor": "none", "pad": 1.0}  # opens the cur
 ROOMY = 1.5  # pitches that labels on curves keep, so that each curve shows beside its neighbour's label
 LEAST_POINTS = 3  # of a curve beside a label that tell how it runs there
 LABEL_SHARE = 0.16  # width that a label on a curve takes [fraction of the axes]
+LEGEND_HANDLE, LETTER = 0.6, 0.055  # width of a line with its gaps, and of a letter, in a legend [inch]
+LONGEST_LABEL = 40  # letters of a title in a legend
 MIDDLE = 0.02  # unevenness accepted for a place in the middle rather than at a side [fraction of the axes]
 MOST_CHOICES = 200  # places tried
 AXES_SHARE = 0.8  # of the figure's height that its axes take, near enough to space labels by
@@ -89,7 +97,30 @@ def axis_label(name, words=None):
     return f"{label} [{Unit(quantity.unit).to_string('latex_inline')}]" if quantity.unit else label
 
 
-def draw_curves(axes, curves, colours=None):
+def redshift_axis(axes, which, limits, words=None):
+    """Make an axis one of redshifts, spaced as ln(1 + z), with ticks at round redshifts.
+
+    Parameters
+    ----------
+    axes : matplotlib.axes.Axes
+        Its axes.
+    which : str
+        "x" or "y".
+    limits : (float, float)
+        Redshifts at its ends [unitless].
+    words : str, optional
+        Words of its label instead of "redshift".
+    """
+    getattr(axes, f"set_{which}scale")("function", functions=(np.log1p, np.expm1))
+    getattr(axes, f"set_{which}lim")(*limits)
+    axis = getattr(axes, f"{which}axis")
+    axis.set_major_locator(FixedLocator(REDSHIFT_TICKS))
+    axis.set_minor_locator(NullLocator())
+    axis.set_major_formatter(ScalarFormatter())
+    axis.set_label_text(axis_label("redshift", words))
+
+
+def draw_curves(axes, curves, palette=JOINING, colours=None):
     """Draw curves that belong to one sequence, each told apart by colour, dashes and a label in the margin.
 
     Parameters
@@ -99,11 +130,13 @@ def draw_curves(axes, curves, colours=None):
     curves : list of (str, array, array)
         Label, abscissa and ordinate of each curve, shape (point,); masked or not finite ordinates leave gaps.
         A point with a gap on both sides is drawn as a marker.
+    palette : matplotlib.colors.Colormap
+        Where the colours come from, in order.
     colours : list of colour, optional
-        One a curve; by default steps from dark matter's to that of baryons.
+        One a curve, instead of those.
     """
     if colours is None:
-        colours = JOINING(np.linspace(0, 1, len(curves))) if len(curves) > 1 else [DARK_MATTER]
+        colours = palette(np.linspace(0, 1, len(curves))) if len(curves) > 1 else [DARK_MATTER]
     for number, ((label, x, ordinate), colour) in enumerate(zip(curves, colours, strict=True)):
         y = np.ma.filled(np.ma.masked_invalid(ordinate), np.nan)
         axes.plot(x, y, color=colour, linestyle=DASHES[number % len(DASHES)], label=label)
@@ -116,6 +149,34 @@ def _alone(y):
     """Tell which finite points have no finite neighbour and so would show no line."""
     finite = np.concatenate([[False], np.isfinite(y), [False]])
     return finite[1:-1] & ~finite[:-2] & ~finite[2:]
+
+
+def share_legend(figure, axes):
+    """Put one legend for all panels above them.
+
+    Parameters
+    ----------
+    figure : matplotlib.figure.Figure
+        The figure.
+    axes : matplotlib.axes.Axes or sequence of them
+        Axes whose labelled lines the legend explains, a label and colour that several share once.
+    """
+    lines = [line for panel in np.ravel(axes) for line in panel.get_lines() if not line.get_label().startswith("_")]
+    drawn = [line for line in lines if np.isfinite(line.get_ydata()).any()]
+    lines = list({(line.get_label(), to_hex(line.get_color())): line for line in drawn}.values())
+    if not lines:
+        return
+    longest = max(len(line.get_label()) for line in lines)
+    columns = max(1, int(figure.get_figwidth() // (LEGEND_HANDLE + LETTER * longest)))
+    figure.legend(handles=lines, loc="outside upper center", ncols=columns, fontsize=LABEL_SIZE, frameon=False,
+                  handlelength=3.0, columnspacing=1.5)  # fmt: skip
+
+
+def safe_label(text):
+    """Return a user's text as it can stand in a figure: short, and no mathtext."""
+    text = text if len(text) <= LONGEST_LABEL else text[: LONGEST_LABEL - 3] + "..."
+    text = f" {text}" if text.startswith("_") else text  # matplotlib leaves such labels out of a legend
+    return text.replace("$", r"\$")
 
 
 def label_curves(axes):

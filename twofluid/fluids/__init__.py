@@ -1,14 +1,19 @@
 """The linear physics: which quantity stands in which row, its rates, its start and its pace."""
 
+from .closures import CLOSURES
 from .kinetic import ChainLengths, KineticSystem
-from .resolution import Resolution, resolution_for
+from .resolution import ACCURACIES, Resolution, resolution_for
+from .sound_speed import SoundSpeedSystem
 from .start import adiabatic, start_time
 from .stepping import Stepping, clock
 
 __all__ = [
+    "ACCURACIES",
+    "CLOSURES",
     "ChainLengths",
     "KineticSystem",
     "Resolution",
+    "SoundSpeedSystem",
     "Stepping",
     "adiabatic",
     "clock",

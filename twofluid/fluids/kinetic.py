@@ -22,7 +22,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..solver.collocation import STAGES
-from ..universe import Universe
+from ..universe import Conditions, Universe
 from .readout import Reading, constraint_drift, read_quantities
 from .start import adiabatic
 
@@ -55,7 +55,8 @@ class KineticSystem:
 
     Parameters
     ----------
-    universe : Universe
+    universe : Universe or UniverseStack
+        One universe, or several with the modes of each.
     wavenumber : array, shape (mode,)
         Comoving wavenumbers [1/Mpc].
     chains : ChainLengths
@@ -65,15 +66,18 @@ class KineticSystem:
         "metric_rate", "curvature", "delta_dark", "delta_baryon", "delta_photon", "delta_neutrino",
         "delta_gas_temperature", "theta_baryon", "slip",
     )  # fmt: skip
+    stackable = True  # modes of several universes may stand side by side
+    switches = ()  # one set of equations from first step to last
+    cautions = ()
 
     def __init__(self, universe: Universe, wavenumber: np.ndarray, chains: ChainLengths):
         self.universe = universe
         self.wavenumber = np.asarray(wavenumber, dtype=float)
         self.chains = chains
+        curvature = -np.asarray(universe.gravity("curvature", 1.0)) / 3.0
+        self._curvature = np.broadcast_to(curvature, self.wavenumber.shape)  # of space [1/Mpc^2]
         self.unknowns = _elimination_order(self.chains)
         self._row = {name: row for row, name in enumerate(self.unknowns)}
-        early = np.full((STAGES, 1, 1), universe.conformal_time(1e-6))  # any epoch tells the pattern
-        self.couplings = frozenset(self.step_rates(np.array([0]), early, np.zeros((1, 1))))
 
     def first_state(self, start: np.ndarray) -> np.ndarray:
         """State of every mode at its start.
@@ -112,7 +116,8 @@ class KineticSystem:
 
     def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict:
         """Evaluate step times rate; see `twofluid.solver.LinearSystem`."""
-        surroundings = _Surroundings(self.universe, self.wavenumber[modes], time, step)
+        now = self.universe.conditions(time, modes)
+        surroundings = _Surroundings(now, self.wavenumber[modes], self._curvature[modes], step)
         named = {
             **_gravity(surroundings),
             **_densities(surroundings),
@@ -150,8 +155,7 @@ class _Surroundings:
     Uniform quantities have shape (lane,), the others (stage, lane).
     """
 
-    def __init__(self, universe: Universe, wavenumber: np.ndarray, time: np.ndarray, step: np.ndarray):
-        now = universe.conditions(time)
+    def __init__(self, now: Conditions, wavenumber: np.ndarray, curvature: np.ndarray, step: np.ndarray):
         phase = step * wavenumber
         self.x = phase.ravel()  # k dtau
 
@@ -166,7 +170,7 @@ class _Surroundings:
         self.gravity_neutrino = (now.gravity_neutrino * inertia).reshape(STAGES, -1)
         self.gravity_baryon = (now.gravity_baryon * inertia).reshape(STAGES, -1)
         self.gravity_dark = (now.gravity_dark * inertia).reshape(STAGES, -1)
-        self.curvature = (-universe.gravity("curvature", 1.0) / 3.0 * inertia).ravel()
+        self.curvature = (curvature * inertia).ravel()
         self.r = now.photon_baryon_ratio.reshape(STAGES, -1)
         self.drag = self.r * self.scattering
         self.pressure = (now.isothermal_sound_speed_squared * phase).reshape(STAGES, -1)

@@ -20,7 +20,8 @@ class Reading:
         "log_scale_factor", and for each of delta_dark, delta_baryon, theta_baryon [1/Mpc] and
         delta_gas_temperature its value and, as "NAME_slope", its derivative by ln a.
     constraint_drift : array, shape (step, mode)
-        Change of the Einstein energy constraint in each step, relative to its largest term [unitless].
+        Change of the Einstein energy constraint in each step, relative to its largest term [unitless];
+        NaN where the closure has no such constraint.
     """
 
     quantities: dict[str, np.ndarray]

@@ -1,17 +1,19 @@
-"""How finely a universe has to be followed: step settings and chain lengths.
+"""How finely a universe has to be followed: step settings and chain lengths for each accuracy.
 
 Where dark matter rules, its smooth gravity forgives much. Where it does not, the damped acoustic
 oscillation and the free streaming of the radiation are all there is, so both have to be followed
 more finely for the same accuracy.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, fields, replace
+from math import ceil
 
 from ..universe import Universe
 from .kinetic import ChainLengths
 from .stepping import Stepping
 
 RULING_FRACTION = 0.25  # dark matter over dark matter and baryons, from which on dark matter rules (measured)
+LONGER_CHAINS = 1.5  # chains of a refined resolution over those it refines
 
 
 @dataclass(frozen=True)
@@ -27,27 +29,90 @@ class Resolution:
     stepping: Stepping
     chains: ChainLengths
 
+    def refined(self) -> "Resolution":
+        """Halve every step, follow oscillations longer and chains further: what an error is estimated with."""
+        stepping = self.stepping
+        halved = {
+            name: getattr(stepping, name) / 2.0
+            for name in ("outside_step", "smooth_step", "free_step", "scattering_change", "phase_step")
+        }
+        longer = {
+            "diffusion_exponent": 1.5 * stepping.diffusion_exponent,
+            "felt_phase": 1.5 * stepping.felt_phase,
+            "drag_ratio": stepping.drag_ratio / 2.0,
+        }
+        chains = {part.name: ceil(LONGER_CHAINS * getattr(self.chains, part.name)) for part in fields(ChainLengths)}
+        return Resolution(replace(stepping, **halved, **longer), ChainLengths(**chains))
 
-DARK_RULED = Resolution(
-    Stepping(smooth_step=0.15, scattering_change=0.7, phase_step=1.2, diffusion_exponent=20.0, felt_phase=120.0),
-    ChainLengths(photon=10, polarization=10, neutrino=12),
-)
-BARYON_RULED = Resolution(
-    Stepping(smooth_step=0.05, scattering_change=0.5, phase_step=0.6, diffusion_exponent=30.0, felt_phase=300.0),
-    ChainLengths(photon=16, polarization=16, neutrino=24),
-)
+
+@dataclass(frozen=True)
+class Accuracy:
+    """One accuracy a scenario can ask for.
+
+    Attributes
+    ----------
+    promise : float
+        Numerical error that is not exceeded: of the dark-matter contrast, relative, and of the ratio of
+        baryon to dark-matter contrast, absolute [unitless]. Measured; see the guide for developers.
+    dark_ruled, baryon_ruled : Resolution
+        Settings where dark matter is more, or less, than a quarter of the matter.
+    """
+
+    promise: float
+    dark_ruled: Resolution
+    baryon_ruled: Resolution
 
 
-def resolution_for(universe: Universe) -> Resolution:
+def _resolution(steps: tuple, exponent: float, felt_phase: float, chains: tuple) -> Resolution:
+    outside, smooth, free, change, phase = steps
+    return Resolution(
+        Stepping(
+            outside_step=outside,
+            smooth_step=smooth,
+            free_step=free,
+            scattering_change=change,
+            phase_step=phase,
+            diffusion_exponent=exponent,
+            felt_phase=felt_phase,
+        ),
+        ChainLengths(*chains),
+    )
+
+
+#: Settings by accuracy. Steps are, in ln a: far outside the horizon, inside it, inside it in free gas; then the
+#: change of the scattering rate and the phase of an oscillation. Chains: photon, polarization, neutrino.
+ACCURACIES = {
+    "draft": Accuracy(
+        promise=2e-3,
+        dark_ruled=_resolution((0.8, 0.3, 0.4, 0.8, 2.0), 15.0, 80.0, (7, 7, 9)),
+        baryon_ruled=_resolution((0.4, 0.15, 0.2, 0.8, 1.0), 25.0, 200.0, (12, 12, 18)),
+    ),
+    "standard": Accuracy(
+        promise=2e-4,
+        dark_ruled=_resolution((0.6, 0.2, 0.3, 0.4, 1.3), 20.0, 120.0, (10, 10, 12)),
+        baryon_ruled=_resolution((0.2, 0.05, 0.1, 0.5, 0.6), 30.0, 300.0, (16, 16, 24)),
+    ),
+    "reference": Accuracy(
+        promise=3e-5,
+        dark_ruled=_resolution((0.2, 0.08, 0.1, 0.2, 0.6), 30.0, 300.0, (16, 16, 28)),
+        baryon_ruled=_resolution((0.1, 0.03, 0.05, 0.25, 0.35), 40.0, 500.0, (22, 22, 36)),
+    ),
+}
+
+
+def resolution_for(universe: Universe, accuracy: str = "standard") -> Resolution:
     """Choose the resolution a universe asks for.
 
     Parameters
     ----------
     universe : Universe
+    accuracy : str, optional
+        One of `ACCURACIES`.
 
     Returns
     -------
     Resolution
     """
     dark, baryon = universe.gravity("dark", 1.0), universe.gravity("baryon", 1.0)
-    return DARK_RULED if dark >= RULING_FRACTION * (dark + baryon) else BARYON_RULED
+    settings = ACCURACIES[accuracy]
+    return settings.dark_ruled if dark >= RULING_FRACTION * (dark + baryon) else settings.baryon_ruled

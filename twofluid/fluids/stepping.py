@@ -15,9 +15,10 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..solver import Clock, lay_out
-from ..universe import Universe
+from ..universe import Conditions, Universe
 
 NODES_PER_UNIT = 60  # nodes of the density per unit of log conformal time
+FAR_OUTSIDE = 0.3  # k tau up to which a mode counts as far outside the horizon
 
 
 @dataclass(frozen=True)
@@ -26,8 +27,9 @@ class Stepping:
 
     Attributes
     ----------
-    smooth_step : float
-        Longest step in ln a where nothing else asks for steps [unitless].
+    outside_step, smooth_step, free_step : float
+        Longest steps in ln a where nothing else asks for steps: far outside the horizon, inside it, and
+        inside it once the gas is free of the photons [unitless].
     scattering_change : float
         Largest change of the logarithm of the scattering rate, beyond the a^-2 of dilution, in a step [unitless].
     phase_step : float
@@ -41,7 +43,9 @@ class Stepping:
         Photon drag on baryons over expansion rate below which the gas counts as free [unitless].
     """
 
+    outside_step: float
     smooth_step: float
+    free_step: float
     scattering_change: float
     phase_step: float
     diffusion_exponent: float
@@ -99,11 +103,17 @@ def step_density(universe: Universe, wavenumber: np.ndarray, time: np.ndarray, s
     per_expansion = now.hubble_rate * time  # d ln a / d ln tau
     log_scattering = np.log(now.scattering_rate * now.scale_factor**2)
     change = np.abs(np.gradient(log_scattering, np.log(time)))
-    smooth = per_expansion / stepping.smooth_step + change / stepping.scattering_change
+    quiet = np.where(_pushed(now, stepping), stepping.smooth_step, stepping.free_step)
+    smooth = per_expansion / quiet + change / stepping.scattering_change
     phase = wavenumber[:, None] * time
-    oscillation = phase / stepping.phase_step
     matters = oscillation_matters(universe, wavenumber, time, stepping)
-    return np.where(matters, np.hypot(smooth, oscillation), smooth)
+    inside = np.where(matters, np.hypot(smooth, phase / stepping.phase_step), smooth)
+    return np.where(phase < FAR_OUTSIDE, per_expansion / stepping.outside_step, inside)
+
+
+def _pushed(now: Conditions, stepping: Stepping) -> np.ndarray:
+    """Whether photons still push the baryons."""
+    return now.photon_baryon_ratio * now.scattering_rate > stepping.drag_ratio * now.hubble_rate
 
 
 def oscillation_matters(
@@ -125,7 +135,7 @@ def oscillation_matters(
     array of bool, shape (mode, node)
     """
     now = universe.conditions(time)
-    pushed = now.photon_baryon_ratio * now.scattering_rate > stepping.drag_ratio * now.hubble_rate
+    pushed = _pushed(now, stepping)
     exponent = (wavenumber[:, None] / universe.diffusion_wavenumber(now.scale_factor)) ** 2
     alive = exponent < stepping.diffusion_exponent
     at_release = exponent[:, np.flatnonzero(pushed)[-1]] if pushed.any() else exponent[:, 0]

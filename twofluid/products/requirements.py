@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
-from twofluid.products.shortfall import check_target
+from twofluid.products.growth import REFERENCE_REDSHIFT
+from twofluid.products.shortfall import TARGET_REDSHIFT, check_target
 
 
 def check_products(scenario, universe):
@@ -31,7 +32,7 @@ def check_products(scenario, universe):
 
 
 def _check_shortfall(scenario, universe, options):
-    check_target(universe, options["target_redshift"])
+    check_target(universe, options.get("target_redshift", TARGET_REDSHIFT))
 
 
 def _check_growth(scenario, universe, options):
@@ -39,9 +40,10 @@ def _check_growth(scenario, universe, options):
 
     latest = float(start_time(universe, np.asarray(scenario.sampling.wavenumbers)).max())
     earliest = 1.0 / float(universe.scale_factor(latest)) - 1.0
-    if not options["reference_redshift"] <= earliest:
+    reference = options.get("reference_redshift", REFERENCE_REDSHIFT)
+    if not reference <= earliest:
         raise ValueError(
-            f"reference_redshift = {options['reference_redshift']:g} must be at most {earliest:.6g}: "
+            f"reference_redshift = {reference:g} must be at most {earliest:.6g}: "
             "before, not every wave of this run has started"
         )
 

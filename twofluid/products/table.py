@@ -8,12 +8,13 @@ import numpy as np
 
 from twofluid.quantities import QUANTITIES
 
-CLOSURE = "kinetic"  # photons and neutrinos by their full chains of moments
 FRAME = (
     "synchronous, at rest with the dark matter (without dark matter: carried by massless dust); "
     "amplitudes per unit comoving curvature, signed so that densities grow positive"
 )
 NO_DARK_MATTER = "this universe has no dark matter; whatever is measured against it is empty"
+NO_CERTIFICATE = "none: the numerical error of this run was not estimated"
+_BLANKS = {"b": False, "U": ""}  # under the mask of a column of true and false, or of words; NaN for numbers
 LANDMARK_DIGITS = 6  # significant, of a landmark in a header; the physics behind is good to four or five
 
 
@@ -25,7 +26,7 @@ def column(name, values, *, masked=None, describe_as=None, **words):
     name : str
         Name of the column.
     values : array, shape (row,)
-        Its entries.
+        Its entries: numbers, words, or true and false.
     masked : array of bool, shape (row,), optional
         Entries to leave empty. Without it the column holds every entry.
     describe_as : str, optional
@@ -43,11 +44,14 @@ def column(name, values, *, masked=None, describe_as=None, **words):
     quantity = QUANTITIES[describe_as or name]
     meaning = " ".join(words.get(word, word) for word in quantity.meaning.split(" "))
     labels = {"name": name, "unit": quantity.unit or None, "description": meaning}
-    values = np.asarray(values, dtype=float)
+    values = np.asarray(values)
+    if values.dtype.kind not in _BLANKS:
+        values = values.astype(float)
     if masked is None:
         return Column(values, **labels)
-    # What lies under the mask is set to NaN, so that nobody who drops the mask reads a number.
-    return MaskedColumn(np.where(masked, np.nan, values), mask=masked, **labels)
+    # What lies under the mask is blanked, so that nobody who drops the mask reads a value.
+    blank = _BLANKS.get(values.dtype.kind, np.nan)
+    return MaskedColumn(np.where(masked, blank, values), mask=masked, **labels)
 
 
 def words_column(name, words):
@@ -123,7 +127,7 @@ def header(history):
     Returns
     -------
     dict
-        Program and version, scenario, what was assumed, closure, frame, landmarks, accuracy, warnings.
+        Program and version, scenario, what was assumed, closure, frame, landmarks, certificate, warnings.
     """
     from twofluid import __version__
 
@@ -132,10 +136,10 @@ def header(history):
         "program": f"twofluid {__version__}",
         "scenario": history.scenario.to_mapping(),
         "assumed": list(history.scenario.assumptions()),
-        "closure": CLOSURE,
+        "closure": history.scenario.method.closure,
         "frame": FRAME,
         "landmarks": {name: _rounded(name, value) for name, value in landmarks.items()},
-        "accuracy": f"energy constraint held to {np.max(history.constraint):.1e} of its largest term",
+        "certificate": NO_CERTIFICATE if history.certificate is None else history.certificate.sentence(),
         "warnings": list(history.warnings),
     }
     if not history.has_dark_matter:

@@ -9,6 +9,7 @@ from dataclasses import dataclass, replace
 import yaml
 
 from .errors import ScenarioError, printable, shortened
+from .keys import path_in
 
 LARGEST_SIZE = 1_000_000  # bytes; a long list of wavenumbers fits, a file given by mistake often does not
 DEEPEST_NESTING = 10  # levels; the deepest valid scenario has four
@@ -31,6 +32,8 @@ class Entry:
         Where it stands; None for a scenario that was not read from text.
     quoted : bool
         Whether a scalar stands in quotes.
+    cleared : bool
+        Whether nothing was written out, as `null`, rather than left blank.
     """
 
     content: str | tuple | dict | None
@@ -38,6 +41,7 @@ class Entry:
     file: str | None = None
     line: int | None = None
     quoted: bool = False
+    cleared: bool = False
 
     @property
     def shown(self):
@@ -54,7 +58,54 @@ class Entry:
 
     def child(self, name, content):
         """Make an entry of this mapping that stands nowhere in the text."""
-        return Entry(content, _join(self.key, name), self.file, self.line)
+        return Entry(content, path_in(self.key, name), self.file, self.line)
+
+
+def text_of_file(path, name, asked=None):
+    """Read the text of a scenario file.
+
+    Parameters
+    ----------
+    path : path-like
+        A file, encoded in UTF-8.
+    name : str
+        What messages call it.
+    asked : Entry, optional
+        The entry that names the file; it is to blame if there is none to read.
+
+    Returns
+    -------
+    str
+        The text.
+
+    Raises
+    ------
+    ScenarioError
+        The file cannot be read, is too large or is not UTF-8.
+    """
+    try:
+        with open(path, "rb") as file:
+            data = file.read(LARGEST_SIZE + 1)
+    except FileNotFoundError:
+        raise _unreadable(name, asked, "does not exist", "check the name and the directory") from None
+    except IsADirectoryError:
+        raise _unreadable(name, asked, "is a directory", "name a file in it") from None
+    except (OSError, ValueError) as error:
+        reason = getattr(error, "strerror", None) or str(error)
+        raise _unreadable(name, asked, f"cannot be read ({reason})", "check name and permissions") from None
+    if len(data) > LARGEST_SIZE:
+        raise too_large(name)
+    try:
+        return data.decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        line = data.count(b"\n", 0, error.start) + 1
+        raise ScenarioError("is not UTF-8 text", "save it as UTF-8", name, line) from None
+
+
+def _unreadable(name, asked, rule, remedy):
+    if asked is None:
+        return ScenarioError(rule, remedy, name)
+    return asked.error(f"names {printable(name)}, which {rule}", remedy)
 
 
 def entry_from_text(text, file):
@@ -101,7 +152,7 @@ def entry_from_plain(value, key=""):
     """Turn nested mappings, lists, texts and numbers into entries that stand in no file."""
     if isinstance(value, dict):
         names = {str(name): item for name, item in value.items()}
-        return Entry({name: entry_from_plain(item, _join(key, name)) for name, item in names.items()}, key)
+        return Entry({name: entry_from_plain(item, path_in(key, name)) for name, item in names.items()}, key)
     if isinstance(value, list | tuple):
         return Entry(tuple(entry_from_plain(item, key) for item in value), key)
     return Entry(None if value is None else str(value), key)
@@ -111,10 +162,6 @@ def too_large(file):
     """Make the error for a file over the limit."""
     rule = f"is larger than {LARGEST_SIZE} bytes"
     return ScenarioError(rule, "is it a scenario? Give long lists of wavenumbers as a range", file)
-
-
-def _join(key, name):
-    return f"{key}.{name}" if key else name
 
 
 class _Builder:
@@ -150,7 +197,7 @@ class _Builder:
         self._refuse_indirection(event, key)
         if depth > DEEPEST_NESTING:
             raise self._error(event, f"is nested deeper than {DEEPEST_NESTING} levels", "flatten it", key)
-        quoted = False
+        quoted = cleared = False
         if isinstance(event, yaml.MappingStartEvent):
             content = self._mapping(key, depth)
         elif isinstance(event, yaml.SequenceStartEvent):
@@ -158,7 +205,8 @@ class _Builder:
         else:
             quoted = event.style is not None
             content = event.value if quoted or event.value not in _EMPTY_WORDS else None
-        return Entry(content, key, self.file, event.start_mark.line + 1, quoted)
+            cleared = content is None and event.value != ""
+        return Entry(content, key, self.file, event.start_mark.line + 1, quoted, cleared)
 
     def _refuse_indirection(self, event, key):
         if isinstance(event, yaml.AliasEvent):
@@ -180,7 +228,7 @@ class _Builder:
             self._refuse_indirection(event, key)
             if not isinstance(event, yaml.ScalarEvent):
                 raise self._error(event, "has a list or mapping as a key", "use plain words as keys", key)
-            path = _join(key, event.value)
+            path = path_in(key, event.value)
             if event.value in entries:
                 earlier = entries[event.value].line
                 raise self._error(event, f"stands here twice, first in line {earlier}", "keep one", path)

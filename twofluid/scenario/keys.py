@@ -26,6 +26,11 @@ def name_of(path):
     return path.rpartition(".")[2]
 
 
+def path_in(section, name):
+    """Return the dotted path of a name in a section."""
+    return f"{section}.{name}" if section else name
+
+
 class Kind(Enum):
     """What sort of value a key takes; the text is what a reader of the manual sees."""
 
@@ -35,6 +40,7 @@ class Kind(Enum):
     NUMBERS = "list of numbers"
     QUANTITIES = "list of numbers with unit"
     WAVENUMBERS = "range, or list of numbers with unit"
+    CHOICE = "one word of a few"
 
 
 @dataclass(frozen=True)
@@ -83,6 +89,8 @@ class Key:
         Allowed number of list entries.
     longest_reason : str
         Why the list may not be longer, for the message.
+    choices : tuple of str
+        The words a choice allows.
     """
 
     path: str
@@ -97,6 +105,7 @@ class Key:
     shortest: int = 1
     longest: int = 1
     longest_reason: str = ""
+    choices: tuple[str, ...] = ()
 
     @property
     def section(self):
@@ -114,8 +123,10 @@ SECTIONS = {
     "cosmology.neutrinos": "neutrinos",
     "primordial": "primordial curvature perturbations, a power law in wavenumber",
     "sampling": "where the answer is wanted",
+    "method": "how the answer is computed",
     "products": "which products to make: {} for none, lag if the section is left out",
     "products.lag": "how far the baryons lag the dark matter",
+    "products.scales": "horizon, sound, Jeans, filtering and diffusion scales, and what each mode is doing",
     "products.growth": "growth of dark matter, baryons and matter since an epoch, and growth rates",
     "products.spheres": "rms contrast in spheres",
     "products.shortfall": "contrast at decoupling against what order unity by a target redshift takes",
@@ -177,11 +188,25 @@ KEYS = (
         allowed=Allowed(0, 1e6), required=True, longest=MOST_REDSHIFTS,
         longest_reason="more redshifts are not tabulated in one run",
         example="[1000, 500, 200, 100, 50, 20, 10]"),
+    Key("method.closure", Kind.CHOICE,
+        "equations: photons and neutrinos by their full chains of moments, or a plasma with an effective sound speed",
+        choices=("kinetic", "sound-speed"), default="kinetic", example="kinetic"),
+    Key("method.accuracy", Kind.CHOICE,
+        "step and chain settings: numerical error of the contrasts below 2e-3, 2e-4 or 3e-5",
+        choices=("draft", "standard", "reference"), default="standard", example="standard"),
     Key("products.lag.fractions", Kind.NUMBERS,
         "ratios of baryon to dark-matter amplitude whose redshift is wanted",
         allowed=Allowed(0, 1, low_open=True, high_open=True), default=(0.5, 0.9, 0.95, 0.99),
         longest=MOST_FRACTIONS, longest_reason="more fractions are not tabulated in one run",
         example="[0.5, 0.9, 0.95, 0.99]"),
+    Key("products.scales.mass_radius", Kind.NUMBER,
+        "radius of the sphere whose mass is told, in wavelengths: 0.5, or 1 for eight times the mass",
+        allowed=Allowed(0.1, 1), default=0.5, example="0.5"),
+    Key("products.scales.together", Kind.NUMBER,
+        "ratio of baryon to dark-matter amplitude from which on a mode no longer falls in but grows",
+        allowed=Allowed(0, 1, low_open=True, high_open=True), default=0.9, example="0.9"),
+    Key("products.scales.map_from", Kind.NUMBER, "redshift at which the map of verdicts starts; it ends at 0",
+        allowed=Allowed(1, 1e6), default=1e4, example="1e4"),
     Key("products.growth.reference_redshift", Kind.NUMBER, "redshift at which the growth factors are 1",
         allowed=_REDSHIFT_LIMITS, default=1000.0, example="1000"),
     Key("products.spheres.radii", Kind.QUANTITIES, "comoving radii of the spheres",
@@ -204,6 +229,10 @@ KEYS = (
 
 KEY_AT = {key.path: key for key in KEYS}
 
+# Not part of the request: it is gone once the file is read.
+BASE = Key("base", Kind.TEXT, "another scenario file to start from; everything else here is a change to it",
+           unsaid="none, the file stands alone", example="saltmarsh-baseline.yaml")  # fmt: skip
+
 
 def default_of(path):
     """Return the default of the key at a dotted path."""
@@ -222,4 +251,5 @@ def sections_under(section):
 
 def names_under(section):
     """Return every name a section may hold, keys first."""
-    return [key.name for key in keys_under(section)] + [name_of(path) for path in sections_under(section)]
+    top = [BASE.name] if section == BASE.section else []
+    return top + [key.name for key in keys_under(section)] + [name_of(path) for path in sections_under(section)]

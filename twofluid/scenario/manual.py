@@ -1,6 +1,6 @@
 """What the manual says about scenario files: the commented template and the table of keys."""
 
-from .keys import KEYS, SECTIONS, Kind, keys_under, name_of, sections_under
+from .keys import BASE, KEYS, SECTIONS, Kind, keys_under, name_of, sections_under
 
 INDENT = "  "  # one level of the template
 RANGE_SECTION = "sampling.wavenumbers"  # the key whose value may be a mapping; the template shows that form
@@ -8,6 +8,14 @@ RANGE_SECTION = "sampling.wavenumbers"  # the key whose value may be a mapping; 
 _HEADING = """\
 # A scenario: the whole request in one file. Quantities carry units, in any notation astropy.units reads.
 # Where it says "default" the key may be left out. The values of the required keys are invented.
+
+"""
+_FAMILY = f"""\
+# {BASE.meaning}
+#   path relative to this file. Sections merge; a key replaces the one of the base, a range as a whole.
+#   `null` takes back what the base says (a key, a product), {{}} empties a section; a title is not inherited.
+#   Another filling: curvature_fraction: null beside a new cosmological_constant_fraction, or the reverse.
+# {BASE.name}: {BASE.example}
 
 """
 
@@ -20,7 +28,7 @@ def scenario_template():
     str
         Valid YAML; all keys with a fixed default stand at that default.
     """
-    return _HEADING + "\n".join(_section_lines("", 0)) + "\n"
+    return _HEADING + _FAMILY + "\n".join(_section_lines("", 0)) + "\n"
 
 
 def key_table_markdown():
@@ -32,7 +40,7 @@ def key_table_markdown():
         A Markdown table, one row a key.
     """
     rows = ["| key | value | allowed | default | meaning |", "| --- | --- | --- | --- | --- |"]
-    for key in KEYS:
+    for key in (BASE, *KEYS):
         cells = (f"`{key.path}`", _value_text(key), _allowed_text(key), _default_cell(key), key.meaning)
         rows.append("| " + " | ".join(cell.replace("|", "\\|") for cell in cells) + " |")
     return "\n".join(rows) + "\n"
@@ -68,6 +76,8 @@ def _value_text(key):
 
 def _allowed_text(key):
     parts = [str(key.allowed)] if key.allowed else []
+    if key.choices:
+        parts.append(" or ".join(key.choices))
     if key.kind in (Kind.NUMBERS, Kind.QUANTITIES, Kind.WAVENUMBERS):
         parts.append(f"at most {key.longest} entries" if key.longest else "only []")
     return ", ".join(parts)

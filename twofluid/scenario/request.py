@@ -7,7 +7,7 @@ from operator import attrgetter
 from .keys import DEFAULT_PRODUCTS, KEY_AT, KEYS, Kind, default_of, keys_under
 from .spacing import range_of
 
-_FIELD_SECTIONS = ("cosmology", "cosmology.neutrinos", "primordial", "sampling")  # read into dataclasses
+_FIELD_SECTIONS = ("cosmology", "cosmology.neutrinos", "primordial", "sampling", "method")  # read into dataclasses
 
 
 def _floats(values):
@@ -124,6 +124,22 @@ class Sampling:
         object.__setattr__(self, "redshifts", _floats(self.redshifts))
 
 
+@dataclass(frozen=True)
+class Method:
+    """How the answer is computed.
+
+    Parameters
+    ----------
+    closure : str
+        Which equations are solved: "kinetic" or "sound-speed".
+    accuracy : str
+        How finely they are followed: "draft", "standard" or "reference".
+    """
+
+    closure: str = default_of("method.closure")
+    accuracy: str = default_of("method.accuracy")
+
+
 def default_products():
     """Return the products made when a scenario does not name any, with their default options."""
     return {
@@ -155,6 +171,8 @@ class Scenario:
         Dotted keys the file left to their defaults.
     source : str or None
         File the scenario was read from.
+    method : Method
+        How the answer is computed.
     """
 
     title: str
@@ -164,6 +182,7 @@ class Scenario:
     products: Mapping[str, Mapping] = field(default_factory=default_products, hash=False)
     assumed: tuple[str, ...] = field(default=(), compare=False)
     source: str | None = field(default=None, compare=False)
+    method: Method = Method()
 
     def to_mapping(self):
         """Write the request as a nested mapping of plain values, quantities as text with their unit.
@@ -212,6 +231,8 @@ def _plain(value, key):
         return [_with_unit(item, key) for item in value]
     if key.kind is Kind.NUMBERS:
         return [float(item) for item in value]
+    if key.kind is Kind.CHOICE:
+        return str(value)
     return _with_unit(value, key) if key.kind is Kind.QUANTITY else float(value)
 
 

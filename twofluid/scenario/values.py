@@ -2,6 +2,7 @@
 
 import re
 import warnings
+from difflib import get_close_matches
 from functools import lru_cache
 from itertools import pairwise
 from math import isclose, isfinite
@@ -50,6 +51,14 @@ def _read_text(entry, key):
         raise entry.error("is blank", f"write for example {key.example}")
     if not entry.content.isprintable():
         raise entry.error("must be one line of printable text", "remove line breaks and control characters")
+    return entry.content
+
+
+def _read_choice(entry, key):
+    if entry.content not in key.choices:
+        close = get_close_matches(str(entry.content), key.choices, n=1)
+        remedy = f"did you mean {close[0]}?" if close else f"write for example {key.example}"
+        raise entry.error(f"must be {' or '.join(key.choices)}", remedy)
     return entry.content
 
 
@@ -190,4 +199,5 @@ _READERS = {
     Kind.NUMBERS: _read_numbers,
     Kind.QUANTITIES: _read_quantities,
     Kind.WAVENUMBERS: _read_wavenumbers,
+    Kind.CHOICE: _read_choice,
 }

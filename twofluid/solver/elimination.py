@@ -2,56 +2,97 @@
 
 The stage equations of one step read ``(W - step A) Y = W 1 y`` with one 3 x 3 block for every
 non-zero entry of the rate matrix A. Which entries are non-zero never changes, so the order of the
-elimination and its fill-in are worked out once (`Elimination`). The numbers do not depend on the
-state, so they are worked out for a whole stretch of steps as long arrays (`Elimination.factor`);
-only the substitution is sequential in time (`Factors.advance`).
-
-Unknowns whose blocks are the very same arrays (moment chains with equal rates) are worked out once
-and substituted together.
+elimination, its fill-in and all block operations are worked out once (`Elimination`). The numbers do
+not depend on the state, so they are worked out for a whole stretch of steps as long arrays
+(`Elimination.factor`); only the substitution is sequential in time (`Factors.advance`).
 """
 
-from collections.abc import Callable, Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
-from . import blocks
+from .blocks import DIAGONAL, FULL, UNIFORM
 from .collocation import STAGES, STATE_LOAD
+from .program import Program, Symbol
 
 Entry = tuple[int, int]
 
 
 @dataclass(frozen=True)
 class Pivot:
-    """One elimination step: the unknown, who needs it, and whom it needs."""
+    """One elimination step.
+
+    ``x = inverse (rhs + sum right x_column)`` with the columns eliminated later; each row still to be
+    eliminated then gets ``below x``.
+
+    Attributes
+    ----------
+    index : int
+        The unknown.
+    rows, columns : tuple of int
+        Unknowns that need it, and unknowns it needs, among those eliminated later.
+    inverse : int
+        Symbol of the inverse of its pivot block.
+    below, right, response : tuple of int
+        Symbols of the blocks below it and to its right, and of ``inverse right``.
+    """
 
     index: int
     rows: tuple[int, ...]
     columns: tuple[int, ...]
+    inverse: Symbol
+    below: tuple[Symbol, ...]
+    right: tuple[Symbol, ...]
+    response: tuple[Symbol, ...]
+
+    def goes_with(self, other: "Pivot") -> bool:
+        """Whether both are independent, serve different rows, and are made of the very same blocks."""
+        same = (self.inverse, self.below, self.right) == (other.inverse, other.below, other.right)
+        touched = (*self.rows, *self.columns)
+        return same and other.index not in touched and not set(self.rows) & set(other.rows)
 
 
 class Elimination:
-    """The symbolic elimination: pivots in order, with fill-in.
+    """The elimination of one pattern of couplings, in the order of the unknowns.
 
     Parameters
     ----------
     count : int
-        Number of unknowns, eliminated in the order of their index.
-    couplings : iterable of (int, int)
-        Non-zero entries (row, column) of the rate matrix.
+        Number of unknowns.
+    sample : mapping of (row, column) to array
+        Step times rate for any steps: the entries that are ever non-zero, their kinds of block (see
+        `twofluid.solver.blocks`), and by being the same array, which are always equal.
     """
 
-    def __init__(self, count: int, couplings: Iterable[Entry]):
-        filled = set(couplings)
-        self.pivots: list[Pivot] = []
-        for index in range(count):
-            rows = tuple(row for row in range(index + 1, count) if (row, index) in filled)
-            columns = tuple(column for column in range(index + 1, count) if (index, column) in filled)
-            filled.update((row, column) for row in rows for column in columns)
-            self.pivots.append(Pivot(index, rows, columns))
+    def __init__(self, count: int, sample: Mapping[Entry, np.ndarray]):
+        self._count = count
+        self._program = Program()
+        work = {entry: self._program.input(entry, rate) for entry, rate in sample.items()}
+        self.pivots = [self._eliminate(index, work) for index in range(count)]
+        self._groups = _groups(self.pivots, self._program)
+        self._program.close(symbol for group in self._groups for symbol in group.symbols)
+        self._factors: dict[tuple[int, int], Factors] = {}
+
+    def _eliminate(self, index: int, work: dict[Entry, Symbol]) -> Pivot:
+        """Take one unknown out of the remaining blocks, by symbol."""
+        program, later = self._program, range(index + 1, self._count)
+        own = work.pop((index, index), None)
+        rows = tuple(row for row in later if (row, index) in work)
+        columns = tuple(column for column in later if (index, column) in work)
+        below = tuple(work.pop((row, index)) for row in rows)
+        right = tuple(work.pop((index, column)) for column in columns)
+        inverse = program.inverse(own)
+        response = tuple(program.product(inverse, block) for block in right)
+        for row, left in zip(rows, below, strict=True):
+            for column, block, product in zip(columns, right, response, strict=True):
+                fill = program.fill(left, block, inverse, product)
+                entry = row, column
+                work[entry] = program.sum(work[entry], fill) if entry in work else fill
+        return Pivot(index, rows, columns, inverse, below, right, response)
 
     def factor(self, rates: Mapping[Entry, np.ndarray], steps: int) -> "Factors":
-        """Eliminate all unknowns for every step and mode.
+        """Eliminate all unknowns for every step and mode of a stretch.
 
         Parameters
         ----------
@@ -64,87 +105,102 @@ class Elimination:
         Returns
         -------
         Factors
+            Valid until the next stretch is factored.
         """
-        work = dict(rates)
-        memory = _Memory(next(iter(rates.values())).shape[-1])
-        return Factors([_eliminate(pivot, work, memory) for pivot in self.pivots], steps)
+        lanes = next(iter(rates.values())).shape[-1]
+        bound = self._program.bind(lanes)
+        bound.run(rates)
+        key = lanes, steps
+        if key not in self._factors:
+            if len(self._factors) > 1:
+                self._factors.clear()
+            self._factors[key] = Factors(self._groups, bound.values, self._count, steps, lanes // steps)
+        return self._factors[key]
 
 
 @dataclass(frozen=True)
-class _Eliminated:
-    """Blocks of one eliminated unknown: ``x = inverse rhs + sum beyond x_column``; rows get ``below x``."""
+class _Group:
+    """Pivots substituted together because they share their blocks.
 
-    pivot: Pivot
-    inverse: np.ndarray
-    below: list[np.ndarray]
-    beyond: list[np.ndarray]
+    Attributes
+    ----------
+    own, rows, columns : list of int
+        Where their unknowns, those below and those to the right stand in the state, pivot by pivot.
+    inverse : int
+        Symbol of the inverse, as a stack of one full block.
+    below, beyond : int or None
+        Symbols of the stacked blocks for the two passes, None if there are none.
+    below_full, beyond_full : bool
+        Whether those blocks are full. If none beyond is, the inverse is still to be applied to what comes from there.
+    """
 
-    def goes_with(self, other: "_Eliminated") -> bool:
-        """Whether both are independent, serve different rows, and are made of the very same blocks."""
-        mine, others = (self.inverse, *self.below, *self.beyond), (other.inverse, *other.below, *other.beyond)
-        same = len(self.below) == len(other.below) and len(mine) == len(others)
-        touched = (*self.pivot.rows, *self.pivot.columns)
-        apart = other.pivot.index not in touched and not set(self.pivot.rows) & set(other.pivot.rows)
-        return apart and same and all(a is b for a, b in zip(mine, others, strict=True))
+    own: list[int]
+    rows: list[int]
+    columns: list[int]
+    inverse: Symbol
+    below: Symbol | None
+    beyond: Symbol | None
+    below_full: bool
+    beyond_full: bool
 
-
-class _Memory:
-    """Remembers block operations by the identity of their operands, so that equal chains cost once."""
-
-    def __init__(self, lanes: int):
-        self._lanes = lanes
-        self._known: dict[tuple, tuple] = {}
-
-    def once(self, operation: Callable[..., np.ndarray], *operands) -> np.ndarray:
-        key = (operation, *map(id, operands))
-        if key not in self._known:
-            self._known[key] = (operation(*operands), operands)  # operands stay alive: their identity is the key
-        return self._known[key][0]
-
-    def pivot_inverse(self, rate: np.ndarray | None) -> np.ndarray:
-        """Invert ``W - rate``; `rate` None stands for zero."""
-        return blocks.constant_inverse(self._lanes) if rate is None else blocks.inverse(blocks.pivot(rate))
+    @property
+    def symbols(self) -> tuple[Symbol, ...]:
+        """All results the substitution needs."""
+        return tuple(symbol for symbol in (self.inverse, self.below, self.beyond) if symbol is not None)
 
 
-def _eliminate(pivot: Pivot, work: dict[Entry, np.ndarray], memory: _Memory) -> _Eliminated:
-    """Take one unknown out of the remaining blocks."""
-    own = work.pop((pivot.index, pivot.index), None)
-    below = [work.pop((row, pivot.index)) for row in pivot.rows]
-    right = [work.pop((pivot.index, column)) for column in pivot.columns]
-    inverse = memory.once(memory.pivot_inverse, own)
-    beyond = [memory.once(blocks.multiply, inverse, block) for block in right]
-    for row, left in zip(pivot.rows, below, strict=True):
-        for column, response in zip(pivot.columns, beyond, strict=True):
-            fill = memory.once(blocks.multiply, left, response)
-            base = work.get((row, column))
-            work[row, column] = fill if base is None else memory.once(blocks.add, base, fill)
-    return _Eliminated(pivot, inverse, below, beyond)
+def _groups(pivots: Sequence[Pivot], program: Program) -> list[_Group]:
+    """Put neighbours together that can be substituted together."""
+    members: list[list[Pivot]] = []
+    for pivot in pivots:
+        if members and all(member.goes_with(pivot) for member in members[-1]):
+            members[-1].append(pivot)
+        else:
+            members.append([pivot])
+    groups = []
+    for group in members:
+        shared = group[0]
+        plain = all(program.kind(symbol) in (UNIFORM, DIAGONAL) for symbol in shared.right)
+        below = program.stack(shared.below) if shared.below else None
+        beyond = program.stack(shared.right if plain else shared.response) if shared.right else None
+        groups.append(
+            _Group(
+                own=[pivot.index for pivot in group],
+                rows=[row for pivot in group for row in pivot.rows],
+                columns=[column for pivot in group for column in pivot.columns],
+                inverse=program.stack([shared.inverse]),
+                below=below,
+                beyond=beyond,
+                below_full=below is not None and program.kind(below) == FULL,
+                beyond_full=not plain,
+            )
+        )
+    return groups
 
 
 class Factors:
-    """The eliminated stage equations of a stretch of steps.
+    """The eliminated stage equations of a stretch of steps, and room for one step of all modes.
 
     Parameters
     ----------
-    eliminated : sequence
-        Eliminated unknowns in order.
-    steps : int
-        Steps of the stretch.
+    groups : sequence
+        Groups of eliminated unknowns in order.
+    values : sequence of array
+        Results of the elimination's program by symbol.
+    count, steps, modes : int
+        Number of unknowns, of steps in the stretch, of modes.
     """
 
-    def __init__(self, eliminated: Sequence[_Eliminated], steps: int):
-        groups: list[list[_Eliminated]] = []
-        for one in eliminated:
-            if groups and all(member.goes_with(one) for member in groups[-1]):
-                groups[-1].append(one)
-            else:
-                groups.append([one])
-        self._groups = [_Group(members, steps) for members in groups]
+    def __init__(self, groups: Sequence[_Group], values: Sequence[np.ndarray], count: int, steps: int, modes: int):
+        self._load = np.empty((count, STAGES, modes))
+        self._stages = np.empty((count, STAGES, modes))
+        self._substitutions = [_Substitution(group, values, steps, self._load, self._stages) for group in groups]
+        self._backwards = [substitution for substitution in reversed(self._substitutions) if substitution.needs_others]
 
     @property
     def groups(self) -> int:
-        """Number of separate substitutions a step takes in each direction."""
-        return len(self._groups)
+        """Number of separate substitutions a step takes."""
+        return len(self._substitutions)
 
     def advance(self, state: np.ndarray, step: int) -> np.ndarray:
         """Carry the state over one step.
@@ -159,47 +215,58 @@ class Factors:
         Returns
         -------
         array, shape (unknown, stage, mode)
-            All stages of the step; the last stage is the new state.
+            All stages of the step, good until the next one; the last stage is the new state.
         """
-        stages = STATE_LOAD[:, None] * state[:, None]
-        for group in self._groups:
-            group.forward(stages, step)
-        for group in reversed(self._groups):
-            group.backward(stages, step)
-        return stages
+        np.multiply(STATE_LOAD[:, None], state[:, None], out=self._load)
+        for substitution in self._substitutions:
+            substitution.forward(step)
+        for substitution in self._backwards:
+            substitution.backward(step)
+        return self._stages
 
 
-class _Group:
-    """Unknowns substituted together because they share their blocks."""
+class _Substitution:
+    """One group's share in the two passes, with views of everything it touches."""
 
-    def __init__(self, members: Sequence[_Eliminated], steps: int):
-        shared = members[0]
-        self._size = len(members)
-        self._own = _positions([member.pivot.index for member in members])
-        self._rows = _positions([row for member in members for row in member.pivot.rows])
-        self._columns = _positions([column for member in members for column in member.pivot.columns])
-        self._inverse = _by_step(shared.inverse, steps)
-        self._below = _by_step(_stack(shared.below), steps) if shared.below else None
-        self._beyond = _by_step(_stack(shared.beyond), steps) if shared.beyond else None
+    def __init__(self, group: _Group, values: Sequence[np.ndarray], steps: int, load: np.ndarray, stages: np.ndarray):
+        size, modes = len(group.own), load.shape[-1]
+        own, self._rows, self._columns = map(_positions, (group.own, group.rows, group.columns))
+        self.needs_others = group.beyond is not None
+        self._below_full, self._beyond_full = group.below_full, group.beyond_full
+        self._load, self._stages = load, stages
+        self._own_load, self._own = load[own], stages[own]
+        self._inverse = _by_step(values[group.inverse], steps, (STAGES, STAGES))
+        rows, columns = len(group.rows) // size, len(group.columns) // size
+        if group.below is not None:
+            self._below = _by_step(values[group.below], steps, (rows, STAGES, STAGES)[: 2 + group.below_full])
+        if group.beyond is not None:
+            self._beyond = _by_step(values[group.beyond], steps, (columns, STAGES, STAGES)[: 2 + group.beyond_full])
+        self._share = np.empty((size, rows, STAGES, modes))
+        self._given = (size, columns, STAGES, modes)
+        self._received, self._change = np.empty((2, size, STAGES, modes))
 
-    def forward(self, stages: np.ndarray, step: int) -> None:
+    def forward(self, step: int) -> None:
         """Solve for these unknowns as if they needed no other; pass their share on to the rows below."""
-        own = np.einsum("ijm,gjm->gim", self._inverse[..., step, :], stages[self._own])
-        stages[self._own] = own
-        if self._below is not None:
-            block = self._below[..., step, :]
-            if block.ndim == blocks.FULL:  # a stack of diagonal blocks
-                share = block * own[:, None]
-            else:
-                share = np.einsum("rijm,gjm->grim", block, own)
-            stages[self._rows] += share.reshape(-1, *share.shape[2:])
+        np.einsum("ijm,gjm->gim", self._inverse[step], self._own_load, out=self._own)
+        share = self._share
+        if not share.size:
+            return
+        if self._below_full:
+            np.einsum("rijm,gjm->grim", self._below[step], self._own, out=share)
+        else:
+            np.multiply(self._below[step], self._own[:, None], out=share)
+        self._load[self._rows] += share.reshape(-1, *share.shape[2:])
 
-    def backward(self, stages: np.ndarray, step: int) -> None:
+    def backward(self, step: int) -> None:
         """Add what these unknowns receive from those eliminated after them."""
-        if self._beyond is not None:
-            block = self._beyond[..., step, :]
-            given = stages[self._columns].reshape(self._size, -1, *stages.shape[1:])
-            stages[self._own] += np.einsum("cijm,gcjm->gim", block, given)
+        block, change = self._beyond[step], self._change
+        given = self._stages[self._columns].reshape(self._given)
+        if self._beyond_full:
+            np.einsum("cijm,gcjm->gim", block, given, out=change)
+        else:
+            received = np.einsum("cim,gcim->gim", block, given, out=self._received)
+            np.einsum("ijm,gjm->gim", self._inverse[step], received, out=change)
+        np.add(self._own, change, out=self._own)
 
 
 def _positions(indices: list[int]) -> slice | np.ndarray:
@@ -209,13 +276,6 @@ def _positions(indices: list[int]) -> slice | np.ndarray:
     return np.array(indices, dtype=int)
 
 
-def _stack(parts: Sequence[np.ndarray]) -> np.ndarray:
-    """Stack blocks, shape (part, stage, lane) if all are diagonal or uniform, else (part, stage, stage, lane)."""
-    if any(part.ndim == blocks.FULL for part in parts):
-        return np.stack([blocks.as_full(part) for part in parts])
-    return np.stack([np.broadcast_to(part, (STAGES, part.shape[-1])) for part in parts])
-
-
-def _by_step(array: np.ndarray, steps: int) -> np.ndarray:
-    """Separate steps from modes on the lane axis."""
-    return array.reshape(*array.shape[:-1], steps, -1)
+def _by_step(array: np.ndarray, steps: int, shape: tuple[int, ...]) -> list[np.ndarray]:
+    """Give views of every step, modes on the last axis behind the shape of the blocks."""
+    return [array.reshape(*shape, steps, -1)[..., step, :] for step in range(steps)]

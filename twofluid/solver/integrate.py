@@ -9,9 +9,10 @@ import numpy as np
 from .collocation import NODES, STAGES
 from .elimination import Elimination, Entry
 
-LANES_PER_STRETCH = 2048  # steps times modes eliminated at once: long enough for arrays, short enough for the cache
+LANES_PER_STRETCH = 1024  # steps times modes eliminated at once: long enough for arrays, short enough for the cache
 MODES_PER_BATCH = 512  # at most so many modes march together
-WORTH_SPLITTING = (32, 0.7)  # a batch of so many modes ends where clocks get shorter than this part of its longest
+STEP_OVERHEAD = 100  # what a step costs whatever the number of modes, in lanes (measured)
+BATCH_GRAIN = 16  # batches end at multiples of this many modes
 
 
 class LinearSystem(Protocol):
@@ -19,12 +20,10 @@ class LinearSystem(Protocol):
 
     1. `unknowns` names the rows of y in the order in which they are to be eliminated: chains from
        their far end first, the most coupled unknowns last.
-    2. `couplings` lists every entry (row, column) of A that is ever non-zero, diagonal included.
-    3. `step_rates` gives step times rate for all of these entries.
+    2. `step_rates` gives step times rate for every entry of A that is ever non-zero.
     """
 
     unknowns: Sequence[str]
-    couplings: frozenset[Entry]
 
     def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict[Entry, np.ndarray]:
         """Evaluate step times rate.
@@ -113,7 +112,8 @@ def integrate(
     """
     rows = np.array([system.unknowns.index(name) for name in observe])
     observed = np.empty((len(rows), *times.shape))
-    elimination = Elimination(len(system.unknowns), system.couplings)
+    sample = system.step_rates(np.arange(1), np.tile(times[0, 0], (STAGES, 1, 1)), np.zeros((1, 1)))
+    elimination = Elimination(len(system.unknowns), sample)
     length = (np.diff(times, axis=0) > 0.0).sum(axis=0)
     batches = _batches(length)
     total = sum(len(modes) * length[modes].max() for modes in batches)
@@ -136,16 +136,25 @@ def integrate(
 
 
 def _batches(length: np.ndarray) -> list[np.ndarray]:
-    """Group modes with clocks of similar length, the longest first, so that little is padding."""
+    """Group modes with clocks of similar length, the longest first, at the least cost in padding and overhead.
+
+    A batch costs its longest clock times (modes + overhead); the best way to cut the sorted modes is found
+    from the end backwards.
+    """
     order = np.argsort(-length, kind="stable")
-    enough, similar = WORTH_SPLITTING
+    cuts = [*range(0, len(order), BATCH_GRAIN), len(order)]
+    cost, following = {len(order): 0.0}, {}
+    for place in reversed(range(len(cuts) - 1)):
+        first = cuts[place]
+        ends = [end for end in cuts[place + 1 :] if end - first <= MODES_PER_BATCH]
+        prices = [length[order[first]] * (end - first + STEP_OVERHEAD) + cost[end] for end in ends]
+        best = int(np.argmin(prices))
+        cost[first], following[first] = prices[best], ends[best]
     batches, first = [], 0
-    for place, mode in enumerate(order):
-        size = place - first
-        if size == MODES_PER_BATCH or (size >= enough and length[mode] < similar * length[order[first]]):
-            batches.append(order[first:place])
-            first = place
-    return [*batches, order[first:]]
+    while first < len(order):
+        batches.append(order[first : following[first]])
+        first = following[first]
+    return batches
 
 
 def _march(system, elimination, modes, stretch, state, rows, observed) -> np.ndarray:
@@ -154,7 +163,7 @@ def _march(system, elimination, modes, stretch, state, rows, observed) -> np.nda
     stage_times = stretch[:-1] + NODES[:, None, None] * step
     factors = elimination.factor(system.step_rates(modes, stage_times, step), len(step))
     for index in range(len(step)):
-        state = factors.advance(state, index)[:, STAGES - 1]
+        state = factors.advance(state, index)[:, STAGES - 1].copy()
         observed[:, index, modes] = state[rows]
     finite = np.isfinite(observed[:, : len(step)][..., modes]).all(axis=0)
     if not finite.all():
