@@ -51,7 +51,7 @@ def make_history():
             delta_gas_temperature=at_redshift[1] / 2,
             has_dark_matter=has_dark_matter,
             warnings=("a sentence of warning",),
-            constraint=np.full(len(dark), 1.5e-5),
+            certificate=None,
             trace=SimpleNamespace(
                 log_scale_factor=np.tile(knots, (len(dark), 1)),
                 delta_dark=sampled(dark, 0, knots),

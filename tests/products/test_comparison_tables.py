@@ -58,12 +58,13 @@ def test_there_is_no_ratio_to_nothing():
 
 def test_the_header_holds_what_is_common_once_and_the_rest_by_scenario(histories):
     tables = [catchup_table(history, [0.5]) for history in histories]
-    tables[1].meta["accuracy"] = "another"
+    tables[1].meta["certificate"] = "another"
     meta = joined_table(tables, ["one", "two"], ["a note"]).meta
     assert meta["fractions"] == {"redshift_at_50_percent": 0.5}
     assert meta["scenario"] == {"title": "Saltmarsh test"}  # the same for both here
     assert meta["notes"] == ["a note"]
-    assert meta["scenarios"] == {"one": {"accuracy": tables[0].meta["accuracy"]}, "two": {"accuracy": "another"}}
+    own = {"one": {"certificate": tables[0].meta["certificate"]}, "two": {"certificate": "another"}}
+    assert meta["scenarios"] == own
 
 
 def test_differences(histories):

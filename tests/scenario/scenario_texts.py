@@ -29,6 +29,7 @@ VALUES = {
     "sampling.redshifts": "[1000, 100, 10]",
     "method": "",
     "method.closure": "sound-speed",
+    "method.accuracy": "reference",
     "products": "",
     "products.lag": "",
     "products.lag.fractions": "[0.5, 0.9]",

@@ -132,7 +132,10 @@ def test_requests_are_frozen(part):
 def test_a_scenario_without_a_method_has_the_default_and_others_differ():
     assert built().method == Method("kinetic")
     assert built(method=Method("sound-speed")) != built()
-    assert built(method=Method("sound-speed")).to_mapping()["method"] == {"closure": "sound-speed"}
+    assert built(method=Method("sound-speed")).to_mapping()["method"] == {
+        "closure": "sound-speed",
+        "accuracy": "standard",
+    }
 
 
 def test_two_scenarios_do_not_share_their_products():

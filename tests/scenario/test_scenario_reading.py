@@ -40,7 +40,7 @@ def test_every_key_reaches_its_field():
             "spheres": {"radii": (1.0, 3.0), "masses": (1e6,)},
             "shortfall": {"target_redshift": 7.0, "radii": (2.0,), "masses": (1e9,)},
         },
-        method=Method("sound-speed"),
+        method=Method("sound-speed", "reference"),
     )
     assert len(wavenumbers) == 21  # four decades, five points each, both ends
     assert scenario.assumed == ()

@@ -1,11 +1,13 @@
 """Quick look-up of the smooth universe at many conformal times."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from math import prod
 
 import numpy as np
 
 from .expansion import ROUNDING
-from .interpolation import UniformCubic
+from .interpolation import UniformCubic, evaluate_rows
+from .members import pick, side_by_side
 
 EARLIEST_TABLE_SCALE_FACTOR = 1.0e-14  # start of the table
 TABLE_INTERVALS = 8192  # 0.0035 in ln a: the helium steps to 1e-6, see the tests
@@ -52,6 +54,17 @@ class Conditions:
 FIELDS = tuple(Conditions.__dataclass_fields__)
 
 
+@dataclass(frozen=True)
+class _Frame:
+    """Where a table begins and what it tabulates: numbers of one universe, or arrays with one entry a column."""
+
+    earliest: float  # conformal time of the first node [Mpc]
+    latest: float  # and of the last [Mpc]
+    start: float  # ln(conformal time) of the first node
+    per_step: float  # one over the spacing in ln(conformal time)
+    first_row: int  # of the table among those stacked
+
+
 class ConditionsTable:
     """Table of ln a, ln x_e and ln(T_gamma/T) against ln(conformal time); all else follows from them.
 
@@ -63,14 +76,15 @@ class ConditionsTable:
     """
 
     def __init__(self, expansion, ionization, baryons):
-        self._expansion, self._baryons = expansion, baryons
-        self.earliest = float(expansion.conformal_time(EARLIEST_TABLE_SCALE_FACTOR))
-        self.latest = float(expansion.conformal_time(1.0))
-        log_time = np.linspace(np.log(self.earliest), np.log(self.latest), TABLE_INTERVALS + 1)
-        a = expansion.scale_factor(np.minimum(np.exp(log_time), self.latest))
+        self.contents, self.baryons = expansion.contents, baryons
+        earliest = float(expansion.conformal_time(EARLIEST_TABLE_SCALE_FACTOR))
+        latest = float(expansion.conformal_time(1.0))
+        log_time = np.linspace(np.log(earliest), np.log(latest), TABLE_INTERVALS + 1)
+        a = expansion.scale_factor(np.minimum(np.exp(log_time), latest))
         electrons, lag = ionization.state(a)
         step = (log_time[-1] - log_time[0]) / TABLE_INTERVALS
-        self._table = UniformCubic(log_time[0], step, np.stack([np.log(a), np.log(electrons), lag]))
+        self.rows = UniformCubic(log_time[0], step, np.stack([np.log(a), np.log(electrons), lag])).rows
+        self.frame = _Frame(earliest, latest, log_time[0], 1.0 / step, 0)
 
     def __call__(self, conformal_time):
         """Conditions at `conformal_time`, an array of any shape.
@@ -80,29 +94,70 @@ class ConditionsTable:
         ValueError
             If a time lies outside the table.
         """
-        time = np.asarray(conformal_time, dtype=float)
-        if not np.all((time >= self.earliest * (1.0 - ROUNDING)) & (time <= self.latest * (1.0 + ROUNDING))):
-            raise ValueError(
-                f"conformal times must lie between {self.earliest:.4g} Mpc (scale factor "
-                f"{EARLIEST_TABLE_SCALE_FACTOR:g}) and {self.latest:.8g} Mpc (today)"
-            )
-        flat = time.reshape(-1)
-        out = np.empty((len(FIELDS), flat.size))
-        for begin in range(0, flat.size, _BLOCK):
-            self._fill(flat[begin : begin + _BLOCK], out[:, begin : begin + _BLOCK])
-        return Conditions(**dict(zip(FIELDS, out.reshape((len(FIELDS), *time.shape)), strict=True)))
+        return _look_up(conformal_time, (), self.rows, self.frame, self.contents, self.baryons)
 
-    def _fill(self, time, out):
-        looked_up = self._table(np.log(time))
-        a, electrons, ratio = np.exp(looked_up).T
-        expansion, baryons = self._expansion, self._baryons
-        present = {species: expansion.gravity(species, 1.0) for species in ("photon", "baryon")}
-        gravity = [expansion.gravity(species, a) for species in ("photon", "neutrino", "baryon", "dark")]
-        out[0] = a
-        out[1] = expansion.conformal_hubble_rate(a)
-        out[2:6] = gravity
-        out[6] = baryons.scattering_rate(a, electrons)
-        out[7] = 4.0 / 3.0 * present["photon"] / present["baryon"] / a
-        out[8] = baryons.isothermal_sound_speed_squared(baryons.photon_temperature / (a * ratio), electrons)
-        out[9] = baryons.compton_rate(a, electrons)
-        out[10] = ratio
+
+class ConditionsStack:
+    """The tables of several universes, looked up together.
+
+    Parameters
+    ----------
+    tables : sequence of ConditionsTable
+    """
+
+    def __init__(self, tables):
+        self._rows = np.concatenate([table.rows for table in tables])
+        frames = [replace(table.frame, first_row=n * TABLE_INTERVALS) for n, table in enumerate(tables)]
+        self._each = [
+            side_by_side(parts)
+            for parts in (frames, [table.contents for table in tables], [table.baryons for table in tables])
+        ]
+
+    def __call__(self, conformal_time, owner):
+        """Conditions at `conformal_time`, shape (..., column), each column in the universe `owner` names.
+
+        Raises
+        ------
+        ValueError
+            If a time lies outside the table of its universe.
+        """
+        return _look_up(conformal_time, np.shape(owner), self._rows, *(pick(part, owner) for part in self._each))
+
+
+def _look_up(conformal_time, columns, rows, frame, contents, baryons):
+    """Conditions in one universe (`columns` is the empty shape) or in that of each column."""
+    time = np.asarray(conformal_time, dtype=float)
+    if not np.all((time >= frame.earliest * (1.0 - ROUNDING)) & (time <= frame.latest * (1.0 + ROUNDING))):
+        _refuse(time, frame)
+    lines = time.reshape(-1, *columns)
+    out = np.empty((len(FIELDS), *lines.shape))
+    block = max(1, _BLOCK // max(1, prod(columns)))
+    for begin in range(0, len(lines), block):
+        _fill(lines[begin : begin + block], out[:, begin : begin + block], rows, frame, contents, baryons)
+    return Conditions(**dict(zip(FIELDS, out.reshape((len(FIELDS), *time.shape)), strict=True)))
+
+
+def _refuse(time, frame):
+    """Say which times the first universe left has."""
+    earliest, latest = np.broadcast_arrays(frame.earliest, frame.latest, time)[:2]
+    outside = ~((time >= earliest * (1.0 - ROUNDING)) & (time <= latest * (1.0 + ROUNDING)))
+    place = np.unravel_index(np.argmax(outside), time.shape)
+    raise ValueError(
+        f"conformal times must lie between {earliest[place]:.4g} Mpc (scale factor "
+        f"{EARLIEST_TABLE_SCALE_FACTOR:g}) and {latest[place]:.8g} Mpc (today)"
+    )
+
+
+def _fill(time, out, rows, frame, contents, baryons):
+    place = np.log(time)
+    place -= frame.start
+    place *= frame.per_step
+    looked_up = evaluate_rows(rows, place, TABLE_INTERVALS, frame.first_row)
+    a, electrons, ratio = (np.exp(value, out=value) for value in looked_up)
+    out[0] = a
+    out[1], out[2:6] = contents.gravities(a, "photon", "neutrino", "baryon", "dark")
+    out[6] = baryons.scattering_rate(a, electrons)
+    out[7] = 4.0 / 3.0 * contents.photon / contents.baryon / a
+    out[8] = baryons.isothermal_sound_speed_squared(baryons.photon_temperature / (a * ratio), electrons)
+    out[9] = baryons.compton_rate(a, electrons)
+    out[10] = ratio

@@ -10,7 +10,9 @@ from .constants import (
     RADIATION_CONSTANT,
     SPEED_OF_LIGHT,
 )
+from .contents import SPECIES, Contents
 from .errors import UniverseError
+from .interpolation import HermiteCubic
 from .quadrature import RunningIntegral
 
 EARLIEST_SCALE_FACTOR = 1.0e-16  # start of the running integrals; below it radiation is all there is
@@ -20,19 +22,7 @@ LEAST_NET_DENSITY = 1.0e-3  # H^2 over the sum of its terms' sizes; below it the
 HOTTEST_PHOTONS = 1.0e3  # temperature today up to which recombination is over by now [K]
 ROUNDING = 1.0e-12  # relative slack at the ends of a range, which may arrive rounded
 _CHECK_NODES = 4001  # in ln a, where the expansion is seen to go on: a dip between two is shallower than 1e-4
-_GUESS_NODES = 400  # in ln a, for the first guess of a(conformal time)
-_INVERSION_STEPS = 6  # Newton steps for a(conformal time); quadratic from an error of 1e-2, so 4 suffice
-
-# How 8 pi G a^2 rho of each species changes with the scale factor, relative to today
-_DILUTION = {
-    "photon": lambda a: 1.0 / (a * a),
-    "neutrino": lambda a: 1.0 / (a * a),
-    "baryon": lambda a: 1.0 / a,
-    "dark": lambda a: 1.0 / a,
-    "curvature": lambda a: a * 0.0 + 1.0,
-    "constant": lambda a: a * a,
-}
-
+_INVERSION_STEPS = 2  # Newton steps for a(conformal time), quadratic: one is enough but where expansion all but stops
 
 class Expansion:
     """The expansion history a cosmology implies.
@@ -50,22 +40,20 @@ class Expansion:
 
     Notes
     -----
-    Every species enters through `gravity`, 8 pi G a^2 rho [1/Mpc^2]; the Friedmann equation is
-    3 (a'/a)^2 = their sum, with curvature counted as a species (as far as the expansion goes, it is one).
+    Every species enters through `contents`; the conformal rate follows from their sum.
     """
 
     def __init__(self, cosmology):
-        self._present_gravity = _present_gravity(cosmology)
+        self.contents = _contents(cosmology)
         self._check_expanding()
-        start = np.log(EARLIEST_SCALE_FACTOR)
         self._time = self.running_integral(lambda a: 1.0 / self.conformal_hubble_rate(a), power=1)
         self._age = self.running_integral(lambda a: a / self.conformal_hubble_rate(a), power=2)
-        grid = np.linspace(start, 0.0, _GUESS_NODES)
-        self._guess = np.log(self._time(grid)), grid
+        log_a, time = self._time.edges, self._time.sums
+        self._guess = HermiteCubic(np.log(time), log_a, time * self.conformal_hubble_rate(np.exp(log_a)))
 
     def _check_expanding(self):
         a = np.geomspace(EARLIEST_SCALE_FACTOR, 1.0, _CHECK_NODES)
-        terms = [self.gravity(species, a) for species in _DILUTION]
+        terms = [self.gravity(species, a) for species in SPECIES]
         net = sum(terms) / sum(np.abs(term) for term in terms)
         if net.min() < LEAST_NET_DENSITY:
             redshift = 1.0 / a[np.argmin(net)] - 1.0
@@ -91,18 +79,16 @@ class Expansion:
         float or array, same shape
             [1/Mpc^2]
         """
-        return self._present_gravity[species] * _DILUTION[species](scale_factor)
+        return self.contents.gravity(species, scale_factor)
 
     def density_fraction(self, species, scale_factor):
         """Share of a species in the critical density of its time, shape as `scale_factor` [unitless]."""
-        return self.gravity(species, scale_factor) / (3.0 * self._rate_squared(scale_factor))
+        critical = 3.0 * self.conformal_hubble_rate(scale_factor) ** 2
+        return self.gravity(species, scale_factor) / critical
 
     def conformal_hubble_rate(self, scale_factor):
         """Conformal rate a'/a = a H, shape as `scale_factor` [1/Mpc]."""
-        return np.sqrt(self._rate_squared(scale_factor))
-
-    def _rate_squared(self, scale_factor):
-        return sum(self.gravity(species, scale_factor) for species in _DILUTION) / 3.0
+        return self.contents.conformal_hubble_rate(scale_factor)
 
     def running_integral(self, integrand, power):
         """Build a running integral over conformal time, kept as a function of ln a.
@@ -145,10 +131,10 @@ class Expansion:
             If a time is not positive, or lies before the scale factor 1e-16 or in the future.
         """
         time = np.asarray(conformal_time, dtype=float)
-        earliest, latest = np.exp(self._guess[0][0]), self._time.total
+        earliest, latest = self._time.sums[0], self._time.total
         if not np.all((time >= earliest * (1.0 - ROUNDING)) & (time <= latest * (1.0 + ROUNDING))):
             raise ValueError(f"conformal times must lie between {earliest:.4g} and {latest:.8g} Mpc")
-        log_a = np.interp(np.log(time), *self._guess)
+        log_a = np.minimum(self._guess(np.log(time)), 0.0)
         for _ in range(_INVERSION_STEPS):
             now = self._time(log_a)
             rate = self.conformal_hubble_rate(np.exp(log_a))
@@ -205,8 +191,8 @@ def _check_ingredients(cosmology):
         )
 
 
-def _present_gravity(cosmology):
-    """8 pi G rho of every species today [1/Mpc^2], with what the densities leave open filled in."""
+def _contents(cosmology):
+    """Every species today, with what the densities leave open filled in."""
     _check_ingredients(cosmology)
     photon = photon_density(cosmology.photon_temperature)
     density = {
@@ -218,7 +204,7 @@ def _present_gravity(cosmology):
     h_squared = (cosmology.hubble_constant / 100.0) ** 2
     fraction = {species: value / h_squared for species, value in density.items()}
     fraction["curvature"], fraction["constant"] = _fill(cosmology, sum(fraction.values()))
-    return {species: 3.0 * value * h_squared * HUBBLE_UNIT**2 for species, value in fraction.items()}
+    return Contents(**{species: 3.0 * value * h_squared * HUBBLE_UNIT**2 for species, value in fraction.items()})
 
 
 def _fill(cosmology, others):

@@ -5,7 +5,8 @@ Hydrogen is the effective three-level atom of Peebles 1968 (ApJ 153, 1) with the
 temperature follows Compton heating and expansion. Electron-positron pairs (above 1e9 K) are not counted.
 """
 
-from math import log, pi
+from dataclasses import dataclass
+from math import log, pi, sinh
 
 import numpy as np
 
@@ -25,14 +26,17 @@ from .constants import (
 )
 from .errors import UniverseError
 from .expansion import log_scale_factor
-from .interpolation import UniformCubic
+from .interpolation import UniformCubic, interpolate_smooth
+from .members import pick, side_by_side
 
 FULLY_IONIZED_TEMPERATURE = 1.0e5  # 1e-12 of helium is not bare there (1e-6 if 1e7 times denser) [K]
-STEP = 5.0e-3  # of the solution and its table in ln a: good to 1e-7, at the end of helium recombination
+STEP = 5.0e-3  # of the table in ln a: good to 1e-7, at the end of helium recombination
+SOLUTION_STEPS = 320  # from the departure from Saha equilibrium to today: good to 2e-8, see the tests
 EQUILIBRIUM_NEUTRALS = 1.0e-7  # neutral hydrogen up to which Saha stands in: it errs by less than that
 RECOMBINATION_FACTOR = 1.125  # on the case-B coefficient; later work with SSS 2000's atom, from memory
-_NEWTON_STEPS = 25  # for the Saha charge balance: 5 suffice, unless hydrogen is a trace
-_FEWEST_ELECTRONS = 1.0e-30  # per hydrogen nucleus; keeps the balance defined where equilibrium is long over
+_GRADING = 3.2  # of the steps: the last is cosh of it, twelve times, as long as the first
+_NEWTON_STEPS = 25  # for the Saha charge balance: 6 suffice, unless hydrogen is a trace
+_BALANCED = 1.0e-9  # last Newton change of the balance per electron; the one it spares would be about its square
 
 _CASE_B = (4.309e-19, -0.6166, 0.6703, 0.5300)  # a [m^3/s], b, c, d of a t^b/(1 + c t^d), t = T/1e4 K
 # (2 pi m_e k T/h^2)^(3/2) at 1 K [1/m^3]
@@ -53,6 +57,8 @@ class Ionization:
     baryons : Baryons
     recombination_factor : float
         Multiplies the case-B coefficient of hydrogen [unitless].
+    table : UniformCubic, optional
+        The solution, if it was found together with others'.
 
     Raises
     ------
@@ -60,26 +66,21 @@ class Ionization:
         If the equations cannot be solved.
     """
 
-    def __init__(self, expansion, baryons, recombination_factor=RECOMBINATION_FACTOR):
+    def __init__(self, expansion, baryons, recombination_factor=RECOMBINATION_FACTOR, table=None):
         self._expansion, self._baryons = expansion, baryons
-        start = log(baryons.photon_temperature / FULLY_IONIZED_TEMPERATURE)
-        intervals = int(np.ceil(-start / STEP))
-        grid = np.linspace(start, 0.0, intervals + 1)
-        electrons, neutrals = _equilibrium(baryons, np.exp(grid))
-        lag = self._early_lag(np.exp(grid), electrons)
-        first = int(np.argmax(neutrals > EQUILIBRIUM_NEUTRALS))
-        rates = _Rates(expansion, baryons, recombination_factor)
-        initial = np.log(neutrals[first] / (1.0 - neutrals[first])), lag[first]
-        try:
-            state = solve_stiff(rates.slopes, grid[first:], initial)
-        except NotConvergedError as reason:
-            raise UniverseError(f"recombination could not be followed in this universe: {reason}") from reason
-        electrons[first:], lag[first:] = rates.electrons(grid[first:], state), state[1]
-        self._table = UniformCubic(start, -start / intervals, np.stack([np.log(electrons), lag]))
+        self._table = table or _solve([expansion], [baryons], recombination_factor)[0]
 
-    def _early_lag(self, a, electrons):
-        """ln(T_gamma/T) while it is small: 1/(1 + Gamma/H) of T_gamma, good to (H/Gamma)^2 < 1e-9."""
-        return np.log1p(self._expansion.conformal_hubble_rate(a) / self._baryons.compton_rate(a, electrons))
+    @classmethod
+    def together(cls, expansions, baryons):
+        """Ionization of several universes, solved as arrays: a list of what each would be alone.
+
+        Raises
+        ------
+        UniverseError
+            If the equations of one cannot be solved; its `index` tells which.
+        """
+        tables = _solve(expansions, baryons, RECOMBINATION_FACTOR)
+        return [cls(*parts, table=table) for *parts, table in zip(expansions, baryons, tables, strict=True)]
 
     def electron_fraction(self, scale_factor):
         """Free electrons per hydrogen nucleus, shape as `scale_factor` [unitless]."""
@@ -92,11 +93,109 @@ class Ionization:
     def state(self, scale_factor):
         """Electron fraction and ln(T_gamma/T), each shaped as `scale_factor`."""
         log_a = log_scale_factor(scale_factor)
-        a = np.exp(log_a)
-        log_electrons, lag = np.moveaxis(self._table(log_a.ravel()), -1, 0).reshape((2, *log_a.shape))
+        log_electrons, lag = self._table.fields(log_a)
+        electrons = np.exp(log_electrons)
         early = log_a < self._table.start
-        electrons = np.where(early, self._baryons.full_ionization, np.exp(log_electrons))
-        return electrons, np.where(early, self._early_lag(a, self._baryons.full_ionization), lag)
+        if early.any():
+            full = self._baryons.full_ionization
+            electrons = np.where(early, full, electrons)
+            lag = np.where(early, _early_lag(self._expansion, self._baryons, np.exp(log_a), full), lag)
+        return electrons, lag
+
+
+@dataclass(frozen=True)
+class _EarlyGas:
+    """The gas while everything is in Saha equilibrium: up to the node where hydrogen departs from it.
+
+    Parameters
+    ----------
+    log_a : array, shape (node,)
+        Nodes of the whole table, up to today.
+    electrons, lag : array, shape (early node,)
+        Electrons per hydrogen nucleus and ln(T_gamma/T), at the nodes before the departure.
+    departure : array, shape (2,)
+        The state, as in `_Rates`, at the departure.
+    """
+
+    log_a: np.ndarray
+    electrons: np.ndarray
+    lag: np.ndarray
+    departure: np.ndarray
+
+    @property
+    def later(self):
+        """Nodes from the departure on, shape (later node,)."""
+        return self.log_a[len(self.electrons) :]
+
+
+def _early_gas(expansion, baryons):
+    start = log(baryons.photon_temperature / FULLY_IONIZED_TEMPERATURE)
+    grid = np.linspace(start, 0.0, int(np.ceil(-start / STEP)) + 1)
+    a = np.exp(grid)
+    # there is hardly less than one electron until then, so that x/(h + x) has passed the limit where h tells
+    h = _saha(_HYDROGEN, baryons.photon_temperature / a, baryons.hydrogen_density / a**3)
+    a = a[: int(np.argmax(h < 0.5 / EQUILIBRIUM_NEUTRALS)) + 1]
+    electrons, neutrals = _equilibrium(baryons, a)
+    first = int(np.argmax(neutrals > EQUILIBRIUM_NEUTRALS))
+    lag = _early_lag(expansion, baryons, a, electrons)
+    departure = np.array([np.log(neutrals[first] / (1.0 - neutrals[first])), lag[first]])
+    return _EarlyGas(grid, electrons[:first], lag[:first], departure)
+
+
+def _early_lag(expansion, baryons, a, electrons):
+    """ln(T_gamma/T) while it is small: 1/(1 + Gamma/H) of T_gamma, good to (H/Gamma)^2 < 1e-9."""
+    return np.log1p(expansion.conformal_hubble_rate(a) / baryons.compton_rate(a, electrons))
+
+
+def _solve(expansions, baryons, recombination_factor):
+    """Tables of ln x_e and ln(T_gamma/T) against ln a, one a universe, solved together.
+
+    The time of the solution is s = 0 at the departure from equilibrium and 1 today, in every universe.
+    """
+    early = [_early_gas(*parts) for parts in zip(expansions, baryons, strict=True)]
+    departure = np.array([gas.later[0] for gas in early])[:, None]
+    contents = side_by_side([expansion.contents for expansion in expansions])
+    column = np.arange(len(early))[:, None]
+    rates = _Rates(pick(contents, column), pick(side_by_side(baryons), column), recombination_factor)
+
+    def slopes(s, state):
+        return rates.slopes(_graded(departure, s), state) * _graded_slope(departure, s)
+
+    grid = np.linspace(0.0, 1.0, SOLUTION_STEPS + 1)
+    try:
+        states = solve_stiff(slopes, grid, np.stack([gas.departure for gas in early], axis=1))
+    except NotConvergedError as reason:
+        raise UniverseError(
+            f"recombination could not be followed in this universe: {reason}", index=reason.system
+        ) from reason
+    return [
+        _table(gas, _Rates(expansion.contents, matter, recombination_factor), state)
+        for gas, expansion, matter, state in zip(early, expansions, baryons, states.swapaxes(0, 1), strict=True)
+    ]
+
+
+def _table(gas, rates, state):
+    """Table of one universe from its state at the nodes of the solution, shape (2, node)."""
+    place = SOLUTION_STEPS * _ungraded(gas.later[0], gas.later)
+    later = interpolate_smooth(state, place)
+    electrons = np.concatenate([gas.electrons, rates.electrons(gas.later, later)])
+    values = np.stack([np.log(electrons), np.concatenate([gas.lag, later[1]])])
+    return UniformCubic(gas.log_a[0], -gas.log_a[0] / (len(gas.log_a) - 1), values)
+
+
+def _graded(departure, s):
+    """Map s from 0 to 1 onto ln a from the departure to today, short steps first."""
+    return departure * (1.0 - np.sinh(_GRADING * s) / sinh(_GRADING))
+
+
+def _graded_slope(departure, s):
+    """Slope of `_graded`, d ln a/ds."""
+    return -departure * _GRADING / sinh(_GRADING) * np.cosh(_GRADING * s)
+
+
+def _ungraded(departure, log_a):
+    """Invert `_graded`."""
+    return np.arcsinh((1.0 - log_a / departure) * sinh(_GRADING)) / _GRADING
 
 
 def _saha(binding, temperature, density):
@@ -117,8 +216,10 @@ def _equilibrium(baryons, a):
         sum_h, sum_he = h + x, x * x + he * x + twice
         charge = h / sum_h + helium * (he * x + 2.0 * twice) / sum_he
         slope = -h / sum_h**2 + helium * (he - (he * x + 2.0 * twice) * (2.0 * x + he) / sum_he) / sum_he
-        x = x + (charge - x) / (1.0 - slope)
-        x = np.maximum(x, _FEWEST_ELECTRONS)
+        change = (charge - x) / (1.0 - slope)
+        x = x + change
+        if np.max(np.abs(change) / x) < _BALANCED:
+            break
     return x, x / (h + x)
 
 
@@ -131,13 +232,13 @@ class _Rates:
     the gas temperature, as there. No He++ is left by the time they are used.
     """
 
-    def __init__(self, expansion, baryons, recombination_factor):
-        self._expansion, self._baryons, self._factor = expansion, baryons, recombination_factor
+    def __init__(self, contents, baryons, recombination_factor):
+        self._contents, self._baryons, self._factor = contents, baryons, recombination_factor
 
     def slopes(self, log_a, state):
-        """Return the derivatives by ln a, shape (2, point) as `state`."""
+        """Return the derivatives by ln a, shape (2, ..., point) as `state`; `log_a` broadcasts against its rows."""
         a, ratio = np.exp(log_a), np.exp(state[0])
-        rate = self._expansion.conformal_hubble_rate(a)
+        rate = self._contents.conformal_hubble_rate(a)
         protons, neutrals = 1.0 / (1.0 + ratio), ratio / (1.0 + ratio)
         temperature, density = self._gas(a, state[1])
         electrons = self._electrons(protons, temperature, density)

@@ -62,7 +62,7 @@ def find_landmarks(universe):
     UniverseError
         If one of them does not exist; the message names it.
     """
-    equality = _equality(universe)
+    equality = universe.equality
     last_scattering = _unit_depth(universe, universe.scattering_rate, "last scattering")
     drag = _unit_depth(universe, universe.drag_rate, "drag epoch")
     return Landmarks(
@@ -78,14 +78,6 @@ def find_landmarks(universe):
         age_today=float(universe.age(1.0)) / 1000.0,
         conformal_age=float(universe.conformal_time(1.0)),
     )
-
-
-def _equality(universe):
-    radiation = universe.gravity("photon", 1.0) + universe.gravity("neutrino", 1.0)
-    matter = universe.gravity("baryon", 1.0) + universe.gravity("dark", 1.0)
-    if radiation >= matter:
-        raise UniverseError("this universe has no equality: its radiation outweighs its matter to this day")
-    return radiation / matter
 
 
 def _unit_depth(universe, rate, name):
@@ -104,7 +96,7 @@ def _unit_depth(universe, rate, name):
 def _thermal_decoupling(universe):
     def excess(log_a):
         a = np.exp(log_a)
-        return float(universe.conformal_hubble_rate(a) - universe.compton_rate(a))
+        return universe.conformal_hubble_rate(a) - universe.compton_rate(a)
 
     if excess(0.0) <= 0.0:
         raise UniverseError("this universe has no thermal decoupling: the photons still heat its gas today")

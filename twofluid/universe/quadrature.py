@@ -4,7 +4,8 @@ import numpy as np
 
 _POINTS = 10  # Gauss-Legendre points a panel
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(_POINTS)
-_BISECTIONS = 60  # halvings of one panel: below the spacing of double precision
+_PARTS = 64  # into which a bracket is divided at once; all their ends are looked at together
+_DIVISIONS = 10  # of one bracket: below the spacing of double precision
 
 
 class RunningIntegral:
@@ -23,13 +24,18 @@ class RunningIntegral:
         Number of equal panels; each is integrated with 10 Gauss-Legendre points.
     initial : float
         Value of the integral at `start`.
+
+    Attributes
+    ----------
+    edges, sums : array, shape (panel + 1,)
+        Ends of the panels, and the integral up to each.
     """
 
     def __init__(self, integrand, start, stop, panels, initial=0.0):
         self._integrand = integrand
-        self._edges = np.linspace(start, stop, panels + 1)
-        pieces = self._panel(self._edges[:-1], self._edges[1:])
-        self._sums = initial + np.concatenate(([0.0], np.cumsum(pieces)))
+        self.edges = np.linspace(start, stop, panels + 1)
+        pieces = self._panel(self.edges[:-1], self.edges[1:])
+        self.sums = initial + np.concatenate(([0.0], np.cumsum(pieces)))
 
     def _panel(self, low, high):
         half = 0.5 * (high - low)
@@ -39,27 +45,25 @@ class RunningIntegral:
     def __call__(self, point):
         """Integral up to `point`, an array of any shape within the range."""
         point = np.asarray(point, dtype=float)
-        panel = np.clip(np.searchsorted(self._edges, point, side="right") - 1, 0, len(self._edges) - 2)
-        return self._sums[panel] + self._panel(self._edges[panel], point)
+        panel = np.clip(np.searchsorted(self.edges, point, side="right") - 1, 0, len(self.edges) - 2)
+        return self.sums[panel] + self._panel(self.edges[panel], point)
 
     @property
     def total(self):
         """Integral over the whole range."""
-        return self._sums[-1]
+        return self.sums[-1]
 
     def reaches(self, value):
         """Point where a growing integral attains `value`, a float between its end values."""
-        panel = int(np.clip(np.searchsorted(self._sums, value) - 1, 0, len(self._edges) - 2))
-        low, high = self._edges[panel], self._edges[panel + 1]
-        return bisect(lambda point: float(self(point)) - value, low, high)
+        panel = int(np.clip(np.searchsorted(self.sums, value) - 1, 0, len(self.edges) - 2))
+        low, high = self.edges[panel], self.edges[panel + 1]
+        return bisect(lambda point: self(point) - value, low, high)
 
 
 def bisect(function, low, high):
-    """Root of a function that grows from below zero at `low` to above zero at `high`."""
-    for _ in range(_BISECTIONS):
-        middle = 0.5 * (low + high)
-        if function(middle) < 0.0:
-            low = middle
-        else:
-            high = middle
+    """Root of a function of arrays that grows from below zero at `low` to above zero at `high`."""
+    for _ in range(_DIVISIONS):
+        points = np.linspace(low, high, _PARTS + 1)
+        part = int(np.count_nonzero(function(points[1:-1]) < 0.0))
+        low, high = points[part], points[part + 1]
     return 0.5 * (low + high)

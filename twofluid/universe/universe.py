@@ -5,9 +5,10 @@ from functools import cached_property
 import numpy as np
 
 from . import gas
+from .background import solve_backgrounds
 from .conditions import ConditionsTable
-from .expansion import Expansion, log_scale_factor
-from .ionization import Ionization
+from .errors import UniverseError
+from .expansion import log_scale_factor
 from .landmarks import find_landmarks
 
 _POLARIZED_SCATTERING = 16.0 / 15.0  # photon viscosity with polarization; Kaiser 1983, from memory
@@ -23,6 +24,8 @@ class Universe:
     ----------
     cosmology : Cosmology
         Densities, temperature, helium and rate today.
+    background : Background, optional
+        Its solution, if it was found together with others'; see `build_universes`.
 
     Raises
     ------
@@ -30,20 +33,25 @@ class Universe:
         If the cosmology contradicts itself or never expands from a hot beginning to today.
     """
 
-    def __init__(self, cosmology):
+    def __init__(self, cosmology, background=None):
         self.cosmology = cosmology
-        self._expansion = Expansion(cosmology)
-        self._baryons = gas.Baryons(
-            density=cosmology.baryon_density,
-            helium_mass_fraction=cosmology.helium_mass_fraction,
-            photon_temperature=cosmology.photon_temperature,
-        )
-        self._ionization = Ionization(self._expansion, self._baryons)
+        background = background or solve_backgrounds([cosmology])[0]
+        self._expansion = background.expansion
+        self._baryons = background.baryons
+        self._ionization = background.ionization
 
     # --- expansion ---------------------------------------------------------------------------------
-    def gravity(self, species, scale_factor):
-        """8 pi G a^2 rho of "photon", "neutrino", "baryon", "dark", "curvature" or "constant" [1/Mpc^2]."""
+    def gravity(self, species, scale_factor, columns=None):
+        """8 pi G a^2 rho of "photon", "neutrino", "baryon", "dark", "curvature" or "constant" [1/Mpc^2].
+
+        `columns` is there for a `UniverseStack`, as in `conditions`.
+        """
         return self._expansion.gravity(species, scale_factor)
+
+    @property
+    def contents(self):
+        """8 pi G rho of every species today, a `Contents` [1/Mpc^2]."""
+        return self._expansion.contents
 
     def density_fraction(self, species, scale_factor):
         """Share of a species (named as for `gravity`) in the critical density of its time [unitless]."""
@@ -150,22 +158,40 @@ class Universe:
 
         return self._expansion.running_integral(integrand, power=3)
 
+    @cached_property
+    def equality(self):
+        """Scale factor at which baryons and dark matter equal photons and neutrinos [unitless].
+
+        Raises
+        ------
+        UniverseError
+            If there is none.
+        """
+        radiation = self.gravity("photon", 1.0) + self.gravity("neutrino", 1.0)
+        matter = self.gravity("baryon", 1.0) + self.gravity("dark", 1.0)
+        if radiation >= matter:
+            raise UniverseError("this universe has no equality: its radiation outweighs its matter to this day")
+        return radiation / matter
+
     # --- taken together ----------------------------------------------------------------------------
     @cached_property
     def landmarks(self):
         """Landmark epochs and scales; UniverseError names one this universe does not have."""
         return find_landmarks(self)
 
-    def conditions(self, conformal_time):
+    def conditions(self, conformal_time, columns=None):
         """Conditions at conformal times [Mpc] from the scale factor 1e-14 to today, by table look-up.
+
+        `columns` is there for a `UniverseStack`, which one universe stands in for: all columns are in it.
 
         Raises
         ------
         ValueError
             If a time lies outside.
         """
-        return self._conditions_table(conformal_time)
+        return self.conditions_table(conformal_time)
 
     @cached_property
-    def _conditions_table(self):
+    def conditions_table(self):
+        """The table behind `conditions`."""
         return ConditionsTable(self._expansion, self._ionization, self._baryons)

@@ -1,0 +1,70 @@
+"""The measured error of each accuracy, as the table in DEVELOPERS.md.
+
+Run by hand: ``python tests/benchmarks/accuracy_table.py``. Every accuracy is compared with twice refined
+"reference" runs of very different universes; it takes some minutes.
+"""
+
+import time
+
+import numpy as np
+
+from twofluid import evolve
+from twofluid.certification import SMALL_CONTRAST, _largest_so_far
+from twofluid.fluids import ACCURACIES, resolution_for
+from twofluid.scenario import Cosmology, Neutrinos, Primordial, Sampling, Scenario
+from twofluid.universe import Universe
+
+REDSHIFTS = np.array([1000.0, 800.0, 500.0, 200.0, 100.0, 50.0, 20.0, 10.0, 0.0])
+FULL = np.concatenate([np.geomspace(1e-4, 0.02, 6), np.geomspace(0.03, 2.0, 16), np.geomspace(4.0, 1e5, 10)])
+LARGE_SCALES = np.concatenate([np.geomspace(1e-4, 0.02, 6), np.geomspace(0.03, 10.0, 16)])
+UNIVERSES = {
+    "standard": (Cosmology(67.36, 0.02237, 0.12), FULL),
+    "baryon-rich (0.06, 0.08)": (Cosmology(67.36, 0.06, 0.08), FULL),
+    "high radiation (N_eff = 10)": (Cosmology(67.36, 0.02237, 0.12, neutrinos=Neutrinos(10.0)), FULL),
+    "no dark matter": (Cosmology(67.36, 0.02237, 0.0), LARGE_SCALES),
+    "baryons in its place (0.14, 0)": (Cosmology(67.36, 0.14, 0.0), LARGE_SCALES),
+}
+
+
+def run(cosmology, universe, wavenumbers, resolution):
+    """Evolve one universe."""
+    scenario = Scenario("Saltmarsh accuracy", cosmology, Primordial(), Sampling((0.1,), (0.0,)))
+    return evolve(scenario, wavenumbers=wavenumbers, redshifts=REDSHIFTS, universe=universe, resolution=resolution)
+
+
+def errors(history, truth):
+    """Return the largest errors of dark-matter contrast and of ratio, as the certificate measures them."""
+    dark = np.abs(truth.delta_dark)
+    dark = np.maximum(dark, SMALL_CONTRAST * _largest_so_far(dark, REDSHIFTS))
+    baryon = np.abs(truth.delta_baryon)
+    first = np.abs(history.delta_dark - truth.delta_dark) / dark
+    if history.has_dark_matter:
+        second = np.abs(history.delta_baryon - history.delta_dark * truth.delta_baryon / truth.delta_dark) / dark
+    else:
+        second = np.abs(history.delta_baryon - truth.delta_baryon) / np.maximum(baryon, dark)
+    return first.max(), second.max()
+
+
+def main():
+    """Print the table."""
+    print("| universe | wavenumbers [1/Mpc] | accuracy | dark matter | ratio | steps a mode | time over standard |")
+    print("| --- | --- | --- | --- | --- | --- | --- |")
+    for name, (cosmology, wavenumbers) in UNIVERSES.items():
+        universe = Universe(cosmology)
+        truth = run(cosmology, universe, wavenumbers, resolution_for(universe, "reference").refined())
+        rows = {}
+        for accuracy in ACCURACIES:
+            start = time.process_time()
+            history = run(cosmology, universe, wavenumbers, resolution_for(universe, accuracy))
+            elapsed = time.process_time() - start
+            rows[accuracy] = (*errors(history, truth), history.counts["steps"] / len(wavenumbers), elapsed)
+        for accuracy, (dark, ratio, steps, elapsed) in rows.items():
+            print(
+                f"| {name} | {wavenumbers[0]:g} to {wavenumbers[-1]:g} | {accuracy} | {dark:.0e} | {ratio:.0e} "
+                f"| {steps:.0f} | {elapsed / rows['standard'][-1]:.1f} |",
+                flush=True,
+            )
+
+
+if __name__ == "__main__":
+    main()

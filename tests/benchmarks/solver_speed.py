@@ -1,0 +1,165 @@
+"""How fast the solver is: against a general stiff solver, by number of modes, by wavenumber, and above the floor.
+
+Run by hand on one core: ``OMP_NUM_THREADS=1 python tests/benchmarks/solver_speed.py``. All figures of one run are
+measured side by side; quote their ratios, not the seconds of a noisy machine.
+"""
+
+import resource
+import time
+
+import numpy as np
+from scipy.integrate import solve_ivp
+
+from twofluid import evolve, evolve_many
+from twofluid.evolution import _request
+from twofluid.fluids import KineticSystem, resolution_for, start_time
+from twofluid.scenario import Cosmology, Primordial, Sampling, Scenario
+from twofluid.universe import Universe
+
+REPEATS = 5
+COSMOLOGY = Cosmology(67.5, 0.0223, 0.1195)  # Saltmarsh
+LONGEST_GENERAL_RUN = 120.0  # [s] beyond which a general solver is given up
+
+
+def scenario(cosmology=COSMOLOGY):
+    """Return a request for this universe."""
+    return Scenario("Saltmarsh benchmark", cosmology, Primordial(), Sampling((0.1,), (0.0,)))
+
+
+def best(function, repeats=REPEATS):
+    """Return the shortest of several processor times [s]."""
+    times = []
+    for _ in range(repeats):
+        start = time.process_time()
+        function()
+        times.append(time.process_time() - start)
+    return min(times)
+
+
+def ours(wavenumbers, universe, repeats=REPEATS):
+    """Return the time of a run to z = 0, the smooth universe being there [s]."""
+    return best(lambda: evolve(scenario(), wavenumbers=wavenumbers, redshifts=[0.0], universe=universe), repeats)
+
+
+def general(universe, k, method):
+    """Solve one mode of the same equations with a general solver: time [s], relative error of delta_dark."""
+    resolution = resolution_for(universe)
+    system = KineticSystem(universe, np.array([k]), resolution.chains)
+    start = start_time(universe, system.wavenumber)
+    count = len(system.unknowns)
+    began = time.process_time()
+
+    class TooLongError(Exception):
+        pass
+
+    def matrix(log_time):
+        if time.process_time() - began > LONGEST_GENERAL_RUN:
+            raise TooLongError
+        tau = np.exp(log_time)
+        dense = np.zeros((count, count))
+        for (row, column), rate in system.step_rates([0], np.full((3, 1, 1), tau), np.full((1, 1), tau)).items():
+            dense[row, column] = rate.flat[0]
+        return dense
+
+    first = system.first_state(start)[:, 0]
+    span = np.log([start[0], universe.conformal_time(1.0)])
+    try:
+        solution = solve_ivp(
+            lambda t, y: matrix(t) @ y, span, first, method=method, rtol=1e-6, atol=1e-9, jac=lambda t, y: matrix(t)
+        )
+    except TooLongError:
+        return LONGEST_GENERAL_RUN, np.nan
+    elapsed = time.process_time() - began
+    finest = evolve(
+        scenario(), wavenumbers=[k], redshifts=[0.0], universe=universe, resolution=resolution.refined().refined()
+    )
+    return elapsed, solution.y[system.unknowns.index("delta_dark"), -1] / finest.delta_dark[0, 0] - 1.0
+
+
+def against_general_solvers(universe):
+    """Print our time per mode against two general solvers."""
+    wavenumbers = np.geomspace(1e-4, 1e4, 256)
+    per_mode = ours(wavenumbers, universe) / len(wavenumbers)
+    print(f"\n256 modes, 1e-4 to 1e4/Mpc: {1e3 * per_mode:.2f} ms a mode\n")
+    print("| k [1/Mpc] | solver | time over ours per mode | error of its delta_dark | error of ours |")
+    print("| --- | --- | --- | --- | --- |")
+    for k in (0.01, 0.1, 1.0, 10.0):
+        resolution = resolution_for(universe)
+        pair = [
+            evolve(scenario(), wavenumbers=[k], redshifts=[0.0], universe=universe, resolution=r).delta_dark[0, 0]
+            for r in (resolution, resolution.refined().refined())
+        ]
+        for method in ("BDF", "LSODA"):
+            elapsed, error = general(universe, k, method)
+            more = "more than " if np.isnan(error) else ""
+            print(f"| {k:g} | {method} | {more}{elapsed / per_mode:.0f} | {abs(error):.0e} | {abs(pair[0] / pair[1] - 1):.0e} |")
+
+
+def scaling(universe):
+    """Print how the time grows with the number of modes and with the wavenumber."""
+    base = ours(np.geomspace(1e-4, 1e4, 256), universe)
+    print(f"\n256 modes take {base:.2f} s here; the same with other numbers and wavenumbers:\n")
+    print("| modes | wavenumbers [1/Mpc] | time over that of 256 modes | a mode over a mode |")
+    print("| --- | --- | --- | --- |")
+    for count, low, high in ((16, 1e-4, 1e4), (64, 1e-4, 1e4), (1024, 1e-4, 1e4), (2048, 1e-4, 1e4),
+                             (256, 0.0999, 0.1001), (256, 0.999e4, 1.001e4)):  # fmt: skip
+        elapsed = ours(np.geomspace(low, high, count), universe, 3)
+        print(f"| {count} | {low:g} to {high:g} | {elapsed / base:.2f} | {elapsed / base * 256 / count:.2f} |")
+    print(f"\nlargest memory so far: {resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024:.0f} MB")
+
+
+def many_universes():
+    """Print what stacking universes costs."""
+    cosmologies = [Cosmology(67.5, 0.0223 * (1 + 0.001 * n), 0.1195 * (1 - 0.0005 * n)) for n in range(200)]
+    requests = [scenario(cosmology) for cosmology in cosmologies]
+    wavenumbers = np.geomspace(1e-3, 1e3, 64)
+    several = best(lambda: evolve_many(requests[:8], wavenumbers=wavenumbers, redshifts=[0.0]), 3)
+    universes = 8 * best(lambda: Universe(COSMOLOGY).conditions(1.0), 3)
+    one = best(lambda: evolve(requests[0], wavenumbers=np.geomspace(1e-3, 1e3, 512), redshifts=[0.0]), 3)
+    print(f"\n8 universes of 64 modes over one of 512: {several / one:.2f} (with 8 universes built one by one it would")
+    print(f"be at least {(one + universes * 7 / 8) / one:.2f})")
+    start = time.process_time()
+    evolve_many(requests, wavenumbers=wavenumbers, redshifts=[0.0])
+    print(f"200 universes of 64 modes: {time.process_time() - start:.1f} s")
+
+
+def floor(universe):
+    """Print how far the integration is above what this core does on plain arrays."""
+    wavenumbers = np.geomspace(1e-4, 1e4, 256)
+    request = _request(scenario(), universe, wavenumbers, [0.0], None)
+    system, plan = request.system, request.plan
+    modes, steps = np.arange(256), 4
+    times = np.exp(plan.boundaries[: steps + 1])
+    step = np.diff(times, axis=0)
+    rates = system.step_rates(modes, times[:-1] + 0.5 * step * np.ones((3, 1, 1)), step)
+    from twofluid.solver import Elimination
+
+    elimination = Elimination(len(system.unknowns), rates)
+    flops = elimination.operations()
+    lanes = evolve(scenario(), wavenumbers=wavenumbers, redshifts=[0.0], universe=universe).counts["lanes"]
+    x, y, out = np.random.default_rng(1).normal(size=(3, 9, 1024))
+
+    def kernel():
+        for _ in range(2000):
+            np.multiply(x, y, out=out)
+            np.add(out, x, out=out)
+
+    rate = 2 * 2000 * x.size / best(kernel)
+    elapsed = ours(wavenumbers, universe)
+    print(f"\n{flops} operations a step and mode, {lanes} steps and modes: {1e-9 * flops * lanes:.2f} Gflop")
+    print(f"plain arrays on this core: {1e-9 * rate:.2f} Gflop/s, so the floor is {flops * lanes / rate:.3f} s")
+    print(f"the run takes {elapsed:.3f} s, {elapsed * rate / (flops * lanes):.1f} times the floor")
+
+
+def main():
+    """Print everything."""
+    universe = Universe(COSMOLOGY)
+    universe.conditions(1.0)
+    against_general_solvers(universe)
+    scaling(universe)
+    many_universes()
+    floor(universe)
+
+
+if __name__ == "__main__":
+    main()

@@ -1,0 +1,62 @@
+"""What a universe is made of, how each species thins out, and the expansion rate that follows."""
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+# How 8 pi G a^2 rho changes with the scale factor, relative to today
+_DILUTION = {
+    "radiation": lambda a: 1.0 / (a * a),
+    "matter": lambda a: 1.0 / a,
+    "curvature": lambda a: a * 0.0 + 1.0,
+    "constant": lambda a: a * a,
+}
+_KIND = {
+    "photon": "radiation",
+    "neutrino": "radiation",
+    "baryon": "matter",
+    "dark": "matter",
+    "curvature": "curvature",
+    "constant": "constant",
+}
+SPECIES = tuple(_KIND)
+
+
+@dataclass(frozen=True)
+class Contents:
+    """8 pi G rho of every species today [1/Mpc^2]: floats, or arrays for several universes side by side.
+
+    Curvature counts as a species: as far as the expansion goes, it is one. Arrays broadcast against the
+    scale factors given to the methods.
+    """
+
+    photon: float
+    neutrino: float
+    baryon: float
+    dark: float
+    curvature: float
+    constant: float
+
+    @cached_property
+    def _sums(self):
+        sums = dict.fromkeys(_DILUTION, 0.0)
+        for species, kind in _KIND.items():
+            sums[kind] = sums[kind] + getattr(self, species)
+        return sums
+
+    def gravity(self, species, scale_factor):
+        """8 pi G a^2 rho of one species [1/Mpc^2]."""
+        return getattr(self, species) * _DILUTION[_KIND[species]](scale_factor)
+
+    def gravities(self, scale_factor, *species):
+        """Conformal rate a'/a [1/Mpc], and 8 pi G a^2 rho of each species named [1/Mpc^2]."""
+        diluted = {kind: law(scale_factor) for kind, law in _DILUTION.items()}
+        return self._rate(diluted), [getattr(self, name) * diluted[_KIND[name]] for name in species]
+
+    def conformal_hubble_rate(self, scale_factor):
+        """Conformal rate a'/a [1/Mpc]; Friedmann: 3 (a'/a)^2 is the sum of 8 pi G a^2 rho."""
+        return self._rate({kind: law(scale_factor) for kind, law in _DILUTION.items()})
+
+    def _rate(self, diluted):
+        return np.sqrt(sum(self._sums[kind] * share for kind, share in diluted.items()) / 3.0)
