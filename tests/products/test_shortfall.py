@@ -203,3 +203,11 @@ def test_contrast_without_dark_matter(baryons_alone):
     table = contrast_table(baryons_alone)
     assert table["rms_dark"].mask.all()
     assert np.array_equal(table["rms_matter"], table["rms_baryon"])
+
+
+def test_growth_to_this_day_ends_at_redshift_zero_exactly(standard):
+    # The last step of a run lies at a = 1 to round-off only.
+    table = shortfall_table(standard, radii=[2.0])
+    assert np.all(np.asarray(table["greatest_redshift"])[-3:] == 0.0)
+    large = np.ma.asarray(table["wavenumber"]).filled(np.inf) < 10.0
+    assert np.all(np.asarray(table["greatest_redshift"])[large] == 0.0)

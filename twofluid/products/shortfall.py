@@ -243,5 +243,6 @@ def _greatest(scales):
     slope, other = scales.slope[rows, step], scales.slope[rows, beside]
     way = scales.log_a[rows, beside] - scales.log_a[rows, step]
     share = np.divide(slope, slope - other, out=np.zeros_like(slope), where=(slope * other < 0.0) & (way != 0.0))
-    redshift = np.expm1(-(scales.log_a[rows, step] + share * way)) + 0.0  # no negative zero
+    growing = (scales.log_a[rows, step] >= scales.log_a[:, -1]) & (sign * slope > 0.0)
+    redshift = np.where(growing, 0.0, np.expm1(-(scales.log_a[rows, step] + share * way)))
     return np.abs(value) + 0.5 * share * way * slope * sign, np.where(np.isnan(value), np.nan, redshift)
