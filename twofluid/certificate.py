@@ -17,7 +17,7 @@ class Certificate:
         Redshifts of the run [unitless].
     dark_error : array, shape (mode, redshift)
         Error of the dark-matter contrast (without dark matter: of the dust that carries the frame), relative to
-        the larger of its value and a hundredth of its largest so far [unitless].
+        the larger of its value and a tenth of its largest so far [unitless].
     ratio_error : array, shape (mode, redshift)
         Error of the ratio of baryon to dark-matter contrast, absolute; without dark matter of the
         baryon contrast, relative to the larger of the baryons' and the dust's [unitless].

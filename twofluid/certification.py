@@ -20,7 +20,7 @@ FIXED_COST = 350_000  # what a run costs beside its steps (universe, tables, fig
 STEP_OVERHEAD = 100  # what a step of all modes costs whatever their number, in steps of one mode (measured)
 REFINED_COST = 3.0  # steps and chains of the finer run over those of the first (measured)
 FEWEST_MODES = 3
-SMALL_CONTRAST = 0.01  # of its largest so far, below which a contrast that passes through zero is not its own measure
+SMALL_CONTRAST = 0.1  # of its largest so far, below which a contrast that passes through zero is not its own measure
 
 
 def certify(history: History, modes=None, progress: Callable[[int, int], None] | None = None) -> History:
