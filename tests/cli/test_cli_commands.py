@@ -344,6 +344,16 @@ def test_reference_before_the_start_of_the_run_is_refused(tmp_path, out, capsys)
     check_refused(capsys, out, status, "products.growth.reference_redshift = 1e+06 must be at most", "started")
 
 
+@pytest.mark.usefixtures("nothing_solved")
+def test_options_of_the_first_have_to_suit_every_universe_compared(tmp_path, out, capsys):
+    # Many baryons recombine earlier: drag epochs at redshifts 1172 and 1055 (see the error for the second).
+    for name, density, target in (("rich", "0.14", 1100), ("poor", "0.0223", 10)):
+        text = TINY.replace("0.0223", density) + f"  shortfall: {{target_redshift: {target}}}\n"
+        (tmp_path / f"{name}.yaml").write_text(text.replace("tiny", name))
+    status = run("compare", tmp_path / "rich.yaml", tmp_path / "poor.yaml", "--out", out)
+    check_refused(capsys, out, status, "compare: products.shortfall.target_redshift = 1100 must lie between")
+
+
 def test_progress_is_drawn_on_a_terminal_and_wiped():
     from io import StringIO
 
