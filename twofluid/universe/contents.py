@@ -1,7 +1,6 @@
 """What a universe is made of, how each species thins out, and the expansion rate that follows."""
 
 from dataclasses import dataclass
-from functools import cached_property
 
 import numpy as np
 
@@ -9,7 +8,7 @@ import numpy as np
 _DILUTION = {
     "radiation": lambda a: 1.0 / (a * a),
     "matter": lambda a: 1.0 / a,
-    "curvature": lambda a: a * 0.0 + 1.0,
+    "curvature": np.ones_like,
     "constant": lambda a: a * a,
 }
 _KIND = {
@@ -38,25 +37,23 @@ class Contents:
     curvature: float
     constant: float
 
-    @cached_property
-    def _sums(self):
-        sums = dict.fromkeys(_DILUTION, 0.0)
-        for species, kind in _KIND.items():
-            sums[kind] = sums[kind] + getattr(self, species)
-        return sums
-
     def gravity(self, species, scale_factor):
         """8 pi G a^2 rho of one species [1/Mpc^2]."""
         return getattr(self, species) * _DILUTION[_KIND[species]](scale_factor)
 
-    def gravities(self, scale_factor, *species):
-        """Conformal rate a'/a [1/Mpc], and 8 pi G a^2 rho of each species named [1/Mpc^2]."""
+    def gravities(self, scale_factor):
+        """8 pi G a^2 rho of every species, by name [1/Mpc^2]."""
         diluted = {kind: law(scale_factor) for kind, law in _DILUTION.items()}
-        return self._rate(diluted), [getattr(self, name) * diluted[_KIND[name]] for name in species]
+        return {species: getattr(self, species) * diluted[kind] for species, kind in _KIND.items()}
 
     def conformal_hubble_rate(self, scale_factor):
-        """Conformal rate a'/a [1/Mpc]; Friedmann: 3 (a'/a)^2 is the sum of 8 pi G a^2 rho."""
-        return self._rate({kind: law(scale_factor) for kind, law in _DILUTION.items()})
+        """Conformal rate a'/a [1/Mpc]."""
+        return friedmann(self.gravities(scale_factor))
 
-    def _rate(self, diluted):
-        return np.sqrt(sum(self._sums[kind] * share for kind, share in diluted.items()) / 3.0)
+
+def friedmann(gravities):
+    """Conformal rate a'/a [1/Mpc]: 3 (a'/a)^2 is the sum of 8 pi G a^2 rho over the species [1/Mpc^2]."""
+    total, *others = gravities.values()
+    for gravity in others:
+        total = total + gravity
+    return np.sqrt(total / 3.0)
