@@ -5,7 +5,6 @@ from math import prod
 
 import numpy as np
 
-from .contents import friedmann
 from .expansion import ROUNDING
 from .interpolation import UniformCubic, evaluate_rows
 from .members import SideBySide
@@ -75,6 +74,8 @@ class ConditionsTable:
     baryons : Baryons
     """
 
+    PARTS = ("frame", "contents", "baryons")  # attributes that hold its numbers
+
     def __init__(self, expansion, ionization, baryons):
         self.contents, self.baryons = expansion.contents, baryons
         earliest = float(expansion.conformal_time(EARLIEST_TABLE_SCALE_FACTOR))
@@ -85,8 +86,6 @@ class ConditionsTable:
         step = (log_time[-1] - log_time[0]) / TABLE_INTERVALS
         self.rows = UniformCubic(log_time[0], step, np.stack([np.log(a), np.log(electrons), lag])).rows
         self.frame = _Frame(earliest, latest, log_time[0], 1.0 / step)
-
-    PARTS = ("frame", "contents", "baryons")  # attributes that hold its numbers
 
     def __call__(self, conformal_time):
         """Conditions at `conformal_time`, an array of any shape.
@@ -152,12 +151,11 @@ def _fill(logarithms, out, contents, baryons):
     """Fill in all fields from ln a, ln x_e and ln(T_gamma/T)."""
     a, electrons, ratio = map(np.exp, logarithms)
     out[0] = a
-    gravities = contents.gravities(a)
-    out[1] = friedmann(gravities)
+    out[1] = contents.conformal_hubble_rate(a)
     for field, species in enumerate(("photon", "neutrino", "baryon", "dark"), start=2):
-        out[field] = gravities[species]
+        out[field] = contents.gravity(species, a)
     out[6] = baryons.scattering_rate(a, electrons)
-    out[7] = 4.0 / 3.0 * gravities["photon"] / gravities["baryon"]
+    out[7] = 4.0 / 3.0 * out[2] / out[4]
     out[8] = baryons.isothermal_sound_speed_squared(baryons.photon_temperature / (a * ratio), electrons)
     out[9] = baryons.compton_rate(a, electrons)
     out[10] = ratio

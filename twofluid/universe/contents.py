@@ -4,22 +4,17 @@ from dataclasses import dataclass
 
 import numpy as np
 
-# How 8 pi G a^2 rho changes with the scale factor, relative to today
+# 8 pi G a^4 rho grows as this power of the scale factor
+_POWER = {"photon": 0, "neutrino": 0, "baryon": 1, "dark": 1, "curvature": 2, "constant": 4}
+SPECIES = tuple(_POWER)
+# 8 pi G a^2 rho relative to today, by the same power
 _DILUTION = {
-    "radiation": lambda a: 1.0 / (a * a),
-    "matter": lambda a: 1.0 / a,
-    "curvature": np.ones_like,
-    "constant": lambda a: a * a,
+    0: lambda a: 1.0 / (a * a),
+    1: lambda a: 1.0 / a,
+    2: np.ones_like,
+    4: lambda a: a * a,
 }
-_KIND = {
-    "photon": "radiation",
-    "neutrino": "radiation",
-    "baryon": "matter",
-    "dark": "matter",
-    "curvature": "curvature",
-    "constant": "constant",
-}
-SPECIES = tuple(_KIND)
+_ALIKE = {power: [name for name in SPECIES if _POWER[name] == power] for power in _DILUTION}
 
 
 @dataclass(frozen=True)
@@ -39,21 +34,25 @@ class Contents:
 
     def gravity(self, species, scale_factor):
         """8 pi G a^2 rho of one species [1/Mpc^2]."""
-        return getattr(self, species) * _DILUTION[_KIND[species]](scale_factor)
-
-    def gravities(self, scale_factor):
-        """8 pi G a^2 rho of every species, by name [1/Mpc^2]."""
-        diluted = {kind: law(scale_factor) for kind, law in _DILUTION.items()}
-        return {species: getattr(self, species) * diluted[kind] for species, kind in _KIND.items()}
+        return getattr(self, species) * _DILUTION[_POWER[species]](scale_factor)
 
     def conformal_hubble_rate(self, scale_factor):
-        """Conformal rate a'/a [1/Mpc]."""
-        return friedmann(self.gravities(scale_factor))
+        """Conformal rate a'/a [1/Mpc]; Friedmann: 3 (a'/a)^2 is the sum of 8 pi G a^2 rho over the species.
 
+        The sum times a^2 is a polynomial, evaluated in place: no function of the package is called more often.
+        """
+        highest, *powers = sorted(_ALIKE, reverse=True)
+        total = self._sum(highest) * scale_factor
+        for power in range(highest - 1, 0, -1):
+            if power in powers:
+                total += self._sum(power)
+            total *= scale_factor
+        total += self._sum(0)
+        total /= 3.0
+        total = np.sqrt(total)
+        total /= scale_factor
+        return total
 
-def friedmann(gravities):
-    """Conformal rate a'/a [1/Mpc]: 3 (a'/a)^2 is the sum of 8 pi G a^2 rho over the species [1/Mpc^2]."""
-    total, *others = gravities.values()
-    for gravity in others:
-        total = total + gravity
-    return np.sqrt(total / 3.0)
+    def _sum(self, power):
+        first, *others = (getattr(self, name) for name in _ALIKE[power])
+        return sum(others, first)

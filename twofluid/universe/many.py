@@ -10,7 +10,7 @@ from .errors import UniverseError
 from .members import SideBySide
 from .universe import Universe
 
-_GROUP = 16  # universes solved together, so that the intermediate arrays stay in the cache
+_GROUP = 32  # universes solved together, so that the intermediate arrays stay in the cache
 
 
 def build_universes(cosmologies):
