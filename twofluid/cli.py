@@ -152,6 +152,7 @@ def _compare(options):
 def _prepare(file):
     """Read a scenario and build its universe, landmarks and all."""
     from twofluid import read_scenario
+    from twofluid.products import check_products
     from twofluid.scenario import ScenarioError
     from twofluid.universe import Universe, UniverseError
 
@@ -163,6 +164,10 @@ def _prepare(file):
         universe = Universe(scenario.cosmology)
         _ = universe.landmarks  # a universe without them is refused now
     except UniverseError as error:
+        raise RequestError(f"{file}: {error}") from error
+    try:
+        check_products(scenario, universe)
+    except ValueError as error:
         raise RequestError(f"{file}: {error}") from error
     return scenario, universe
 
