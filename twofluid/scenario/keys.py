@@ -192,7 +192,7 @@ KEYS = (
         "equations: photons and neutrinos by their full chains of moments, or a plasma with an effective sound speed",
         choices=("kinetic", "sound-speed"), default="kinetic", example="kinetic"),
     Key("method.accuracy", Kind.CHOICE,
-        "step and chain settings: numerical error of the contrasts below 2e-3, 2e-4 or 3e-5",
+        "step and chain settings: numerical error of the contrasts below 3e-3, 3e-4 or 5e-5",
         choices=("draft", "standard", "reference"), default="standard", example="standard"),
     Key("products.lag.fractions", Kind.NUMBERS,
         "ratios of baryon to dark-matter amplitude whose redshift is wanted",
