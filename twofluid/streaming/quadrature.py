@@ -18,7 +18,7 @@ from numpy.polynomial import chebyshev
 from numpy.polynomial.legendre import leggauss
 
 LARGEST_COMPONENT = 5.0 / np.sqrt(3.0)  # five standard deviations of a component, beyond it 6e-7 of all patches [rms]
-POINTS = 96  # of the quadrature on the interpolating polynomial: exact for all grids in use, but for the Gaussian (1e-15)
+POINTS = 192  # of the quadrature on the interpolating polynomial: exact for 256 intervals, with the Gaussian too
 
 
 def component_grid(intervals: int, largest: float) -> np.ndarray:

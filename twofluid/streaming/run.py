@@ -26,6 +26,8 @@ class Streaming:
         The run.
     from_redshift : float
         Redshift at which the wind sets in [unitless].
+    velocities : array, shape (velocity,)
+        Streaming velocities in units of the rms [unitless].
     wind : Wind or None
         The streaming velocity at the redshifts of the run; None without dark matter.
     patches : Patches or None
@@ -34,6 +36,7 @@ class Streaming:
 
     history: History
     from_redshift: float
+    velocities: np.ndarray
     wind: Wind | None
     patches: Patches | None
 
@@ -66,17 +69,18 @@ def stream(history: History, from_redshift: float = FROM_REDSHIFT, velocities=VE
     """
     if not from_redshift > 0.0:
         raise ValueError(f"from_redshift must be above 0, got {from_redshift!r}")
-    if len(velocities) == 0 or not np.all(np.asarray(velocities) >= 0.0):
-        raise ValueError(f"velocities must be one or more numbers, not negative, got {velocities!r}")
+    speeds = np.asarray(velocities, dtype=float)
+    if speeds.ndim != 1 or not len(speeds) or not np.all((speeds >= 0.0) & np.isfinite(speeds)):
+        raise ValueError(f"velocities must be a list of one or more numbers, not negative, got {velocities!r}")
     if not history.has_dark_matter:
-        return Streaming(history, from_redshift, None, None)
+        return Streaming(history, from_redshift, speeds, None, None)
     def companion(wavenumbers, redshifts):
         return evolve(history.scenario, wavenumbers=wavenumbers, redshifts=redshifts, universe=history.universe)
 
     windy = companion(wind_wavenumbers(), history.redshift)
     own = companion(history.wavenumber, [from_redshift])
-    patches = follow_patches(own, history.redshift, velocities, rms_velocity(windy, from_redshift))
-    return Streaming(history, from_redshift, find_wind(windy, history.redshift), patches)
+    patches = follow_patches(own, history.redshift, speeds, rms_velocity(windy, from_redshift))
+    return Streaming(history, from_redshift, speeds, find_wind(windy, history.redshift), patches)
 
 
 def rms_velocity(run: History, from_redshift: float):

@@ -21,6 +21,8 @@ from ..history import History
 
 SMALLEST, LARGEST = 1e-3, 10.0  # wavenumbers that make the wind [1/Mpc]
 PER_DECADE = 40  # of them: 16 to one acoustic oscillation in the spectrum where it peaks, 4 where diffusion ends it
+LEAST_SLOPE = 0.5  # with which a spectrum goes on beyond an end at which it rises or stays
+LEAST_SPECTRUM = 1e-300  # stands for nothing [c^2]
 COHERENT = 0.95  # correlation of the velocities at two places whose distance is the coherence length
 LONGEST_DISTANCE = 1000.0  # looked at for the coherence length [Mpc]
 DISTANCES_PER_DECADE = 50
@@ -143,10 +145,7 @@ def _integral(k, values, axis=0):
 
 
 def _beyond(k, spectrum, ends):
-    """Variance beyond an end, its last two values a power law; nothing if it does not fall outwards."""
-    last, before = (spectrum[end] for end in ends)
+    """Variance beyond an end: the power law through its last two values, but no flatter than the least slope."""
+    last, before = (np.maximum(spectrum[end], LEAST_SPECTRUM) for end in ends)
     outward = abs(np.log(k[ends[0]] / k[ends[1]]))
-    with np.errstate(divide="ignore", invalid="ignore"):
-        slope = np.log(before / last) / outward
-    falls = (last > 0.0) & (slope > 0.0)
-    return np.divide(last, slope, out=np.zeros_like(last), where=falls)
+    return last / np.maximum(np.log(before / last) / outward, LEAST_SLOPE)
