@@ -12,7 +12,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from .blocks import DIAGONAL, FULL, UNIFORM
+from .blocks import DIAGONAL, FULL, UNIFORM, Kind
 from .collocation import STAGES, STATE_LOAD
 from .program import Program, Symbol
 
@@ -73,6 +73,10 @@ class Elimination:
         self._groups = _groups(self.pivots, self._program)
         self._program.close(symbol for group in self._groups for symbol in group.symbols)
         self._factors: dict[tuple[int, int], Factors] = {}
+
+    def kind(self, symbol: Symbol) -> Kind:
+        """Give the kind of block a symbol of a pivot stands for."""
+        return self._program.kind(symbol)
 
     def _eliminate(self, index: int, work: dict[Entry, Symbol]) -> Pivot:
         """Take one unknown out of the remaining blocks, by symbol."""
