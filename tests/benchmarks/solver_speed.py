@@ -69,7 +69,8 @@ def general(universe, k, method):
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")  # a solver that gives up is told by its flag
             solution = solve_ivp(
-                lambda t, y: matrix(t) @ y, span, first, method=method, rtol=1e-6, atol=1e-13, jac=lambda t, y: matrix(t)
+                lambda t, y: matrix(t) @ y, span, first, method=method, rtol=1e-6, atol=1e-13,
+                jac=lambda t, y: matrix(t),
             )
     except TooLongError:
         return LONGEST_GENERAL_RUN, np.nan
