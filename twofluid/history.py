@@ -39,6 +39,8 @@ class Trace:
     delta_baryon_slope: np.ndarray
     theta_baryon_slope: np.ndarray
     delta_gas_temperature_slope: np.ndarray
+    delta_neutrino: np.ndarray | None = None
+    delta_neutrino_slope: np.ndarray | None = None
 
 
 @dataclass(frozen=True)

@@ -248,7 +248,7 @@ def test_lists_of_numbers(path, value, shown, rule):
     check(refusal(full_text({path: value})), path, shown, rule, "")
 
 
-@pytest.mark.parametrize("path", [key.path for key in KEYS if key.kind is Kind.QUANTITIES and key.longest > 1])
+@pytest.mark.parametrize("path", [key.path for key in KEYS if key.kind is Kind.QUANTITIES and key.shortest])
 @pytest.mark.parametrize(
     ("value", "shown", "rule"),
     [
@@ -281,12 +281,16 @@ def test_too_many_items():
     parse_scenario(full_text({"sampling.redshifts": str(list(range(1000)))}))
 
 
-def test_massive_neutrinos_are_refused_with_the_reason():
+def test_neutrino_masses():
     path = "cosmology.neutrinos.masses"
-    error = refusal(full_text({path: "[0.06 eV]"}))
-    check(error, path, "[0.06 eV]", "this version follows massless neutrinos only", "[]")
-    assert error.rule.startswith("must be the empty list: ")
-    check(refusal(full_text({path: "0.06 eV"})), path, "0.06 eV", "must be a list", "[]")
+    equal = parse_scenario(full_text({path: "[20 meV, 20 meV, 0 eV]"}))  # equal masses may stand side by side
+    assert equal.cosmology.neutrinos.masses == pytest.approx((0.02, 0.02, 0.0), rel=1e-15)
+    check(refusal(full_text({path: "[0.06]"})), path, "0.06", "needs a unit", "0.06 eV")
+    check(refusal(full_text({path: "[11 eV]"})), path, "11 eV", "is out of range", "from 0 to 10 eV")
+    check(refusal(full_text({path: "0.06 eV"})), path, "0.06 eV", "must be a list", "[0.06 eV]")
+    four = "[0.1 eV, 0.1 eV, 0.1 eV, 0.1 eV]"
+    error = refusal(full_text({path: four}))
+    check(error, path, four, "must be at most 3 entries: three species share the effective number", "[0.06 eV]")
 
 
 @pytest.mark.parametrize(

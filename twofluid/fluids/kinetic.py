@@ -23,6 +23,7 @@ import numpy as np
 
 from ..solver.collocation import STAGES
 from ..universe import Conditions, Universe
+from .massive import MassiveNeutrinos
 from .readout import Reading, constraint_drift, read_quantities
 from .start import adiabatic
 
@@ -39,13 +40,17 @@ class ChainLengths:
 
     Attributes
     ----------
-    photon, polarization, neutrino : int
-        Highest multipole followed [unitless], 3 or more.
+    photon, polarization, neutrino, massive : int
+        Highest multipole followed [unitless], 3 or more; of massive neutrinos, if there are any.
+    momenta : int
+        Momenta at which massive neutrinos of one mass are followed [unitless].
     """
 
     photon: int
     polarization: int
     neutrino: int
+    massive: int = 12
+    momenta: int = 6
 
 
 class KineticSystem:
@@ -76,7 +81,9 @@ class KineticSystem:
         self.chains = chains
         curvature = -np.asarray(universe.gravity("curvature", 1.0)) / 3.0
         self._curvature = np.broadcast_to(curvature, self.wavenumber.shape)  # of space [1/Mpc^2]
-        self.unknowns = _elimination_order(self.chains)
+        self._massive = MassiveNeutrinos(universe, self.wavenumber, chains.momenta, chains.massive)
+        self.observed = (*type(self).observed, *self._massive.observed)
+        self.unknowns = (*self._massive.unknowns, *_elimination_order(self.chains))
         self._row = {name: row for row, name in enumerate(self.unknowns)}
 
     def first_state(self, start: np.ndarray) -> np.ndarray:
@@ -92,7 +99,8 @@ class KineticSystem:
         array, shape (unknown, mode)
         """
         state = np.zeros((len(self.unknowns), len(self.wavenumber)))
-        for name, values in adiabatic(self.universe, self.wavenumber, start).items():
+        first = adiabatic(self.universe, self.wavenumber, start)
+        for name, values in (first | self._massive.first_state(first)).items():
             state[self._row[name]] = values
         return state
 
@@ -112,7 +120,13 @@ class KineticSystem:
         """
         now = self.universe.conditions(times)
         y = dict(zip(self.observed, observed, strict=True))
-        return Reading(read_quantities(now, self.wavenumber, y), constraint_drift(now, self.wavenumber, y))
+        quantities = read_quantities(now, self.wavenumber, y)
+        if not self._massive:
+            return Reading(quantities, constraint_drift(now, self.wavenumber, y))
+        contrast, change = self._massive.contrast(now.scale_factor, self.wavenumber, y)
+        quantities |= {"delta_neutrino": contrast, "delta_neutrino_slope": change / now.hubble_rate}
+        others = self._massive.density(now.scale_factor, y)
+        return Reading(quantities, constraint_drift(now, self.wavenumber, y, others))
 
     def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict:
         """Evaluate step times rate; see `twofluid.solver.LinearSystem`."""
@@ -126,7 +140,11 @@ class KineticSystem:
             **_quadrupoles(surroundings),
             **_polarization(surroundings),
             **_chains(surroundings, self.chains),
-        }
+            **self._massive.step_rates(
+                now.scale_factor, modes, step * self.wavenumber[modes], step / self.wavenumber[modes],
+                surroundings.curvature,
+            ),
+        }  # fmt: skip
         return {(self._row[row], self._row[column]): rate for (row, column), rate in named.items()}
 
 

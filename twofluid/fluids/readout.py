@@ -18,7 +18,8 @@ class Reading:
     ----------
     quantities : dict of str to array, shape (boundary, mode)
         "log_scale_factor", and for each of delta_dark, delta_baryon, theta_baryon [1/Mpc] and
-        delta_gas_temperature its value and, as "NAME_slope", its derivative by ln a.
+        delta_gas_temperature its value and, as "NAME_slope", its derivative by ln a; where neutrinos have mass,
+        delta_neutrino too.
     constraint_drift : array, shape (step, mode)
         Change of the Einstein energy constraint in each step, relative to its largest term [unitless];
         NaN where the closure has no such constraint.
@@ -69,7 +70,9 @@ def read_quantities(now: Conditions, k: np.ndarray, y: Mapping[str, np.ndarray])
     }
 
 
-def constraint_drift(now: Conditions, k: np.ndarray, y: Mapping[str, np.ndarray]) -> np.ndarray:
+def constraint_drift(
+    now: Conditions, k: np.ndarray, y: Mapping[str, np.ndarray], others: np.ndarray | None = None
+) -> np.ndarray:
     """Tell how much ``k^2 eta - H h'/2 + sum g delta / 2`` changed in each step.
 
     The Einstein equations keep it at zero (Ma & Bertschinger 1995, eq. 21 a). What the start
@@ -79,6 +82,8 @@ def constraint_drift(now: Conditions, k: np.ndarray, y: Mapping[str, np.ndarray]
     ----------
     now, k, y
         As in `read_quantities`, with the unknown "curvature".
+    others : array, shape (boundary, mode), optional
+        8 pi G a^2 times the density perturbation of what else there is [1/Mpc^2].
 
     Returns
     -------
@@ -92,5 +97,6 @@ def constraint_drift(now: Conditions, k: np.ndarray, y: Mapping[str, np.ndarray]
         0.5 * now.gravity_baryon / k**2 * y["delta_baryon"],
         0.5 * now.gravity_photon / k**2 * y["delta_photon"],
         0.5 * now.gravity_neutrino / k**2 * y["delta_neutrino"],
+        *([] if others is None else [0.5 * others / k**2]),
     ])  # fmt: skip
     return np.abs(np.diff(terms.sum(axis=0), axis=0)) / np.abs(terms[:, 1:]).max(axis=0)

@@ -50,7 +50,8 @@ def adiabatic(universe: Universe, wavenumber: np.ndarray, time: np.ndarray) -> d
     """
     now = universe.conditions(time)
     x = wavenumber * time
-    fraction = now.gravity_neutrino / (now.gravity_neutrino + now.gravity_photon)  # R_nu
+    neutrino = now.gravity_neutrino + universe.gravity("massive_neutrino", now.scale_factor)  # all as fast as light
+    fraction = neutrino / (neutrino + now.gravity_photon)  # R_nu
     theta = x**3 / 36.0
     radiation = x**2 / 3.0
     return {

@@ -83,13 +83,15 @@ class Key:
     required : bool
         Whether the file has to say something.
     unsaid : str
-        In words, what is done where the file says nothing and there is no fixed default.
+        In words, what is done where the file says nothing and there is no fixed default, or the example is not it.
     example : str
         A valid value as it is written in a file.
     shortest, longest : int
         Allowed number of list entries.
     longest_reason : str
         Why the list may not be longer, for the message.
+    repeats : bool
+        Whether equal entries may stand in a list.
     choices : tuple of str
         The words a choice allows.
     """
@@ -106,6 +108,7 @@ class Key:
     shortest: int = 1
     longest: int = 1
     longest_reason: str = ""
+    repeats: bool = False
     choices: tuple[str, ...] = ()
 
     @property
@@ -167,9 +170,10 @@ KEYS = (
     # Three neutrinos slightly heated by electron annihilation, the value Planck 2018 I, Fig. 16 uses.
     Key("cosmology.neutrinos.effective_number", Kind.NUMBER, "effective number of neutrino species",
         allowed=Allowed(0, 20), default=3.046, example="3.046"),
-    Key("cosmology.neutrinos.masses", Kind.QUANTITIES, "neutrino masses; for now only the empty list",
-        unit="eV", default=(), example="[]", shortest=0, longest=0,
-        longest_reason="this version follows massless neutrinos only"),
+    Key("cosmology.neutrinos.masses", Kind.QUANTITIES,
+        "masses of up to three neutrinos, which share the effective number equally; those not named have none",
+        unit="eV", allowed=Allowed(0, 10), default=(), unsaid="[]", example="[0.06 eV]", shortest=0, longest=3, repeats=True,
+        longest_reason="three species share the effective number"),
     Key("primordial.amplitude", Kind.NUMBER, "power of the curvature perturbations at the pivot",
         allowed=Allowed(0, 1, low_open=True), default=2.1e-9, example="2.1e-9"),
     Key("primordial.tilt", Kind.NUMBER, "exponent n of the power law, 1 for equal power on all scales",

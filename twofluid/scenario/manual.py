@@ -65,8 +65,8 @@ def _key_lines(key, depth):
         parts = [line for part in keys_under(key.path) for line in _key_lines(part, depth + 1)]
         alternative = f"{margin}#   one by one: {key.name}: {key.example}; as a range:"
         return [*comments, alternative, f"{margin}{key.name}:", *parts]
-    # A key without a fixed default is shown commented out: any value would change the meaning.
-    switch = "# " if key.default is None and not key.required and key.kind is not Kind.TEXT else ""
+    # A key whose default is not its example is shown commented out: the value would change the meaning.
+    switch = "# " if (key.default is None or key.unsaid) and not key.required and key.kind is not Kind.TEXT else ""
     return [*comments, f"{margin}{switch}{key.name}: {key.example}"]
 
 

@@ -23,7 +23,7 @@ class Neutrinos:
     effective_number : float
         Effective number of species [unitless].
     masses : tuple of float
-        Masses [eV]; only the empty tuple for now.
+        Masses of up to three species, which share the effective number equally; those not named have none [eV].
     """
 
     effective_number: float = default_of("cosmology.neutrinos.effective_number")

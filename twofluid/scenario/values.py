@@ -129,7 +129,8 @@ def _read_list(entry, key, read_item):
     if len(entry.content) < key.shortest:
         raise entry.error("must not be an empty list", f"write for example {key.example}")
     values = tuple(read_item(item, key) for item in entry.content)
-    _refuse_repetition(values, entry.content)
+    if not key.repeats:
+        _refuse_repetition(values, entry.content)
     return values
 
 

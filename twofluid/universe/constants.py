@@ -34,4 +34,6 @@ LYMAN_ALPHA_ENERGY = PLANCK * SPEED_OF_LIGHT / LYMAN_ALPHA_WAVELENGTH  # E_21 [J
 TWO_PHOTON_RATE = 8.2245809  # H I 2s-1s [1/s]; Goldman 1989, PRA 40, 1185, from memory
 
 # --- neutrinos -------------------------------------------------------------------------------------
-NEUTRINO_PHOTON_RATIO = 7.0 / 8.0 * (4.0 / 11.0) ** (4.0 / 3.0)  # of one species, instant decoupling
+NEUTRINO_SPECIES = 3  # that share the effective number, with mass or without
+NEUTRINO_PHOTON_TEMPERATURE = (4.0 / 11.0) ** (1.0 / 3.0)  # instant decoupling
+NEUTRINO_PHOTON_RATIO = 7.0 / 8.0 * NEUTRINO_PHOTON_TEMPERATURE**4  # of one species, instant decoupling

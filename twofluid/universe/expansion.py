@@ -1,12 +1,19 @@
 """Expansion of the smooth universe: species, conformal rate, conformal time, age, distance."""
 
+from collections import Counter
+
 import numpy as np
 
+from . import fermi_dirac
 from .constants import (
+    BOLTZMANN,
     CRITICAL_DENSITY_UNIT,
+    ELECTRON_VOLT,
     HUBBLE_UNIT,
     MEGAYEAR_PER_MEGAPARSEC,
     NEUTRINO_PHOTON_RATIO,
+    NEUTRINO_PHOTON_TEMPERATURE,
+    NEUTRINO_SPECIES,
     RADIATION_CONSTANT,
     SPEED_OF_LIGHT,
 )
@@ -19,6 +26,7 @@ EARLIEST_SCALE_FACTOR = 1.0e-16  # start of the running integrals; below it radi
 PANEL_WIDTH = 0.05  # of the running integrals, in ln a: enough for the most sluggish expansion let through
 CLOSURE_TOLERANCE = 1.0e-6  # fractions given in full must sum to one this closely
 LEAST_NET_DENSITY = 1.0e-3  # H^2 over the sum of its terms' sizes; below it the expansion all but stops
+HEAVIEST_NEUTRINO = 10.0  # fast until long after every mode has started [eV]
 HOTTEST_PHOTONS = 1.0e3  # temperature today up to which recombination is over by now [K]
 ROUNDING = 1.0e-12  # relative slack at the ends of a range, which may arrive rounded
 _CHECK_NODES = 4001  # in ln a, where the expansion is seen to go on: a dip between two is shallower than 1e-4
@@ -37,7 +45,7 @@ class Expansion:
     Raises
     ------
     UniverseError
-        If an ingredient is impossible, a neutrino has mass, the fractions given do not sum to one, or the
+        If an ingredient is impossible, the fractions given do not sum to one, or the
         expansion stops somewhere between the beginning and today.
 
     Notes
@@ -72,7 +80,8 @@ class Expansion:
         Parameters
         ----------
         species : str
-            "photon", "neutrino", "baryon", "dark", "curvature" or "constant" (cosmological constant).
+            "photon", "neutrino" (without mass), "massive_neutrino", "baryon", "dark", "curvature" or "constant"
+            (cosmological constant).
         scale_factor : float or array, any shape
             Scale factor, 1 today [unitless].
 
@@ -183,15 +192,22 @@ def _check_ingredients(cosmology):
             f"helium_mass_fraction = {cosmology.helium_mass_fraction} must be less than 1: without hydrogen "
             "nothing recombines here"
         )
-    effective_number = cosmology.neutrinos.effective_number
+    _check_neutrinos(cosmology.neutrinos)
+
+
+def _check_neutrinos(neutrinos):
+    effective_number, masses = neutrinos.effective_number, tuple(neutrinos.masses)
     if not (np.isfinite(effective_number) and effective_number >= 0.0):
         raise UniverseError(
             f"neutrinos.effective_number = {effective_number} must be finite and zero or positive"
         )
-    if any(cosmology.neutrinos.masses):
+    if not all(np.isfinite(mass) and 0.0 <= mass <= HEAVIEST_NEUTRINO for mass in masses):
+        raise UniverseError(f"neutrinos.masses = {masses} eV must lie between 0 and {HEAVIEST_NEUTRINO:g} eV")
+    if len(masses) > NEUTRINO_SPECIES:
+        raise UniverseError(f"neutrinos.masses = {masses} eV are more than the {NEUTRINO_SPECIES} species there are")
+    if any(masses) and effective_number == 0.0:
         raise UniverseError(
-            f"neutrino masses {tuple(cosmology.neutrinos.masses)} eV were given, but every neutrino is "
-            "treated as massless: leave the masses empty"
+            f"neutrinos.masses = {masses} eV were given, but with effective_number = 0 there is no neutrino to have them"
         )
 
 
@@ -201,14 +217,36 @@ def _contents(cosmology):
     photon = photon_density(cosmology.photon_temperature)
     density = {
         "photon": photon,
-        "neutrino": photon * NEUTRINO_PHOTON_RATIO * cosmology.neutrinos.effective_number,
+        "neutrino": photon * NEUTRINO_PHOTON_RATIO * cosmology.neutrinos.effective_number * _massless_share(cosmology),
         "baryon": cosmology.baryon_density,
         "dark": cosmology.dark_matter_density,
     }
+    massive, mass = _massive_neutrinos(cosmology)
+    heavy = [weight * value for weight, value in zip(massive, map(fermi_dirac.energy, mass), strict=True)]
     h_squared = (cosmology.hubble_constant / 100.0) ** 2
     fraction = {species: value / h_squared for species, value in density.items()}
-    fraction["curvature"], fraction["constant"] = _fill(cosmology, sum(fraction.values()))
-    return Contents(**{species: 3.0 * value * h_squared * HUBBLE_UNIT**2 for species, value in fraction.items()})
+    fraction["curvature"], fraction["constant"] = _fill(cosmology, sum(fraction.values()) + sum(heavy) / h_squared)
+    today = {species: 3.0 * value * h_squared * HUBBLE_UNIT**2 for species, value in fraction.items()}
+    return Contents(**today, massive=tuple(3.0 * value * HUBBLE_UNIT**2 for value in massive), mass=mass)
+
+
+def _massless_share(cosmology):
+    """Share of the species without mass in all neutrinos [unitless]."""
+    return 1.0 - sum(mass > 0.0 for mass in cosmology.neutrinos.masses) / NEUTRINO_SPECIES
+
+
+def _massive_neutrinos(cosmology):
+    """Omega h^2 the neutrinos of each mass had without it, and the mass over temperature, both today.
+
+    The species share the effective number equally, and each temperature is that of its share: (N/3)^(1/4) times
+    that of instant decoupling.
+    """
+    shared = cosmology.neutrinos.effective_number / NEUTRINO_SPECIES
+    temperature = cosmology.photon_temperature * NEUTRINO_PHOTON_TEMPERATURE * shared**0.25
+    number = Counter(sorted(mass for mass in cosmology.neutrinos.masses if mass))
+    one = photon_density(cosmology.photon_temperature) * NEUTRINO_PHOTON_RATIO * shared
+    mass = tuple(value * ELECTRON_VOLT / (BOLTZMANN * temperature) for value in number)
+    return tuple(one * count for count in number.values()), mass
 
 
 def _fill(cosmology, others):

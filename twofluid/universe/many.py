@@ -85,6 +85,11 @@ class UniverseStack:
         (contents,) = self._contents.pick(owner)
         return contents.gravity(species, scale_factor)
 
+    @cached_property
+    def contents(self):
+        """8 pi G rho of every species today, a `Contents` of arrays of shape (column,) [1/Mpc^2]."""
+        return self._contents.pick(self.owner)[0]
+
     def conditions(self, conformal_time, columns=None):
         """Conditions at conformal times [Mpc], as `Universe.conditions` finds them for each column.
 

@@ -9,14 +9,19 @@ class SideBySide:
     Parameters
     ----------
     *parts : sequence of dataclass
-        Each a list of dataclasses of one kind that hold nothing but numbers, one a universe.
+        Each a list of dataclasses of one kind that hold nothing but numbers and tuples of them, one a universe.
+        Where a tuple is longer in another universe, zeros are added.
     """
 
     def __init__(self, *parts):
-        self._kinds = [(type(items[0]), tuple(vars(items[0]))) for items in parts]
-        self._values = np.array(
-            [[vars(item)[name] for item in items] for items in parts for name in vars(items[0])]
-        )
+        self._kinds, values = [], []
+        for items in parts:
+            names = {name: _longest(items, name) for name in vars(items[0])}
+            self._kinds.append((type(items[0]), names))
+            for name, length in names.items():
+                rows = [vars(item)[name] for item in items]
+                values += [rows] if length is None else [[(*row, *[0.0] * length)[n] for row in rows] for n in range(length)]
+        self._values = np.array(values)
 
     def pick(self, owner):
         """Arrays of the universes named.
@@ -33,6 +38,16 @@ class SideBySide:
         picked, values = [], iter(self._values.take(owner, axis=1))
         for kind, names in self._kinds:
             part = object.__new__(kind)
-            vars(part).update((name, next(values)) for name in names)  # what it worked out comes along
+            vars(part).update(  # what it worked out comes along
+                (name, next(values) if length is None else tuple(next(values) for _ in range(length)))
+                for name, length in names.items()
+            )
             picked.append(part)
         return picked
+
+
+def _longest(items, name):
+    """Length of the longest of the tuples under a name, None if they are numbers."""
+    if not isinstance(vars(items[0])[name], tuple):
+        return None
+    return max(len(vars(item)[name]) for item in items)

@@ -42,7 +42,8 @@ class Universe:
 
     # --- expansion ---------------------------------------------------------------------------------
     def gravity(self, species, scale_factor, columns=None):
-        """8 pi G a^2 rho of "photon", "neutrino", "baryon", "dark", "curvature" or "constant" [1/Mpc^2].
+        """8 pi G a^2 rho of a species [1/Mpc^2]: "photon", "neutrino" (without mass), "massive_neutrino", "baryon",
+        "dark", "curvature" or "constant".
 
         `columns` is there for a `UniverseStack`, as in `conditions`.
         """
@@ -56,6 +57,19 @@ class Universe:
     def density_fraction(self, species, scale_factor):
         """Share of a species (named as for `gravity`) in the critical density of its time [unitless]."""
         return self._expansion.density_fraction(species, scale_factor)
+
+    @property
+    def masses(self):
+        """8 pi G rho today of everything that has rest mass, as if at rest: "dark", "baryon", "massive_neutrino" [1/Mpc^2].
+
+        They thin out as a^-3; that of the neutrinos is the energy they have once they are slow.
+        """
+        contents = self.contents
+        return {"dark": contents.dark, "baryon": contents.baryon, "massive_neutrino": contents.resting}
+
+    def massive_neutrino_pressure(self, scale_factor):
+        """8 pi G a^2 times the pressure of the neutrinos with mass [1/Mpc^2]."""
+        return self.contents.massive_pressure(scale_factor)
 
     def conformal_hubble_rate(self, scale_factor):
         """Conformal rate a'/a [1/Mpc]."""
@@ -160,14 +174,14 @@ class Universe:
 
     @cached_property
     def equality(self):
-        """Scale factor at which baryons and dark matter equal photons and neutrinos [unitless].
+        """Scale factor at which baryons and dark matter equal photons and neutrinos, all as if massless [unitless].
 
         Raises
         ------
         UniverseError
             If there is none.
         """
-        radiation = self.gravity("photon", 1.0) + self.gravity("neutrino", 1.0)
+        radiation = self.gravity("photon", 1.0) + self.gravity("neutrino", 1.0) + sum(self.contents.massive)
         matter = self.gravity("baryon", 1.0) + self.gravity("dark", 1.0)
         if radiation >= matter:
             raise UniverseError("this universe has no equality: its radiation outweighs its matter to this day")
