@@ -155,6 +155,7 @@ def _compare(options):
 def _prepare(file):
     """Read a scenario and build its universe, landmarks and all."""
     from twofluid import read_scenario
+    from twofluid.fluids import check_closure
     from twofluid.products import check_products
     from twofluid.scenario import ScenarioError
     from twofluid.universe import Universe, UniverseError
@@ -169,6 +170,7 @@ def _prepare(file):
     except UniverseError as error:
         raise RequestError(f"{file}: {error}") from error
     try:
+        check_closure(scenario)
         check_products(scenario, universe)
     except ValueError as error:
         raise RequestError(f"{file}: {error}") from error

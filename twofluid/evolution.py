@@ -5,7 +5,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from .fluids import CLOSURES, Resolution, clock, resolution_for, start_time
+from .fluids import CLOSURES, Resolution, check_closure, clock, resolution_for, start_time
 from .history import History, Trace
 from .scenario import Scenario
 from .solver import Clock, SolverFailure, integrate
@@ -149,6 +149,7 @@ def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, res
         sampling = replace(scenario.sampling, wavenumbers=tuple(k), redshifts=tuple(z))
         scenario = replace(scenario, sampling=sampling, source=None)
     resolution = resolution or resolution_for(universe, scenario.method.accuracy)
+    check_closure(scenario)
     system = CLOSURES[scenario.method.closure](universe, k, resolution.chains)
 
     scale_factors = np.unique(np.append(1.0 / (1.0 + z), 1.0))  # the marks: ascending, today included
@@ -164,7 +165,7 @@ def _sweeps(requests: Sequence[_Request]) -> Iterator[list[int]]:
     """Put requests together that one sweep can solve: same equations, same chains, not too many modes."""
     groups: dict[tuple, list[int]] = {}
     for place, request in enumerate(requests):
-        key = request.scenario.method.closure, request.resolution.chains
+        key = request.scenario.method.closure, request.resolution.chains, tuple(request.system.unknowns)
         groups.setdefault(key if request.system.stackable else (place,), []).append(place)
     for places in groups.values():
         sweep, modes = [], 0
@@ -225,6 +226,7 @@ def _history(request: _Request, times: np.ndarray, observed: np.ndarray, counts:
         delta_baryon=trace.delta_baryon[rows, asked],
         theta_baryon=trace.theta_baryon[rows, asked],
         delta_gas_temperature=trace.delta_gas_temperature[rows, asked],
+        delta_neutrino=None if trace.delta_neutrino is None else trace.delta_neutrino[rows, asked],
         trace=trace,
         constraint=_check_constraint(reading.constraint_drift, request, times),
         counts=counts,

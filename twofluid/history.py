@@ -12,6 +12,10 @@ from .universe import Universe
 
 #: Quantities a history carries, in the order of their columns.
 EVOLVED = ("delta_dark", "delta_baryon", "theta_baryon", "delta_gas_temperature")
+#: And what it carries besides where neutrinos have mass.
+EVOLVED_WITH_MASS = ("delta_neutrino",)
+#: Contrasts put together from others, weighted by rest mass: what is in each.
+TOGETHER = {"delta_cold": ("dark", "baryon"), "delta_matter": ("dark", "baryon", "neutrino")}
 
 _FORMAT = 1  # raised whenever a saved history changes its layout
 
@@ -28,6 +32,8 @@ class Trace:
         As in `History`.
     delta_dark_slope, delta_baryon_slope, theta_baryon_slope, delta_gas_temperature_slope : array, shape (mode, step)
         Their derivatives by ln a, in the unit of the quantity.
+    delta_neutrino, delta_neutrino_slope : array, shape (mode, step), or None
+        The same; None where no neutrino has mass.
     """
 
     log_scale_factor: np.ndarray
@@ -72,6 +78,9 @@ class History:
     constraint : array, shape (mode,)
         Drift of the Einstein energy constraint, summed over the run, relative to its largest term [unitless];
         NaN where the closure has no such constraint.
+    delta_neutrino : array, shape (mode, redshift), or None
+        Contrast of the rest mass of all neutrinos that have mass: of their number, weighted by mass. Of the energy
+        density it is the contrast once they are slow, and 3/4 of that while they are fast [unitless].
     counts : dict of str to int
         What the run cost: "steps" over all modes, "lanes" with padding, "factorizations", "rate_evaluations".
     warnings : tuple of str
@@ -93,11 +102,39 @@ class History:
     counts: dict[str, int]
     warnings: tuple[str, ...] = field(default=())
     certificate: Certificate | None = None
+    delta_neutrino: np.ndarray | None = None
 
     @property
     def has_dark_matter(self) -> bool:
         """Whether there is any dark matter for baryons to lag."""
         return self.scenario.cosmology.dark_matter_density > 0.0
+
+    @property
+    def has_massive_neutrinos(self) -> bool:
+        """Whether a neutrino has mass."""
+        return self.delta_neutrino is not None
+
+    @property
+    def evolved(self) -> tuple[str, ...]:
+        """Names of the quantities this history carries."""
+        return EVOLVED + (EVOLVED_WITH_MASS if self.has_massive_neutrinos else ())
+
+    @property
+    def delta_cold(self) -> np.ndarray:
+        """Contrast of dark matter and baryons together, shape (mode, redshift) [unitless]."""
+        return self._together("delta_cold", lambda name: getattr(self, name))
+
+    @property
+    def delta_matter(self) -> np.ndarray:
+        """Contrast of the rest mass of dark matter, baryons and neutrinos, shape (mode, redshift) [unitless]."""
+        return self._together("delta_matter", lambda name: getattr(self, name))
+
+    def _together(self, name, values):
+        """Weighted sum of the contrasts that make up a contrast, given the function that finds each."""
+        mass = {species.removeprefix("massive_"): mass for species, mass in self.universe.masses.items()}
+        present = [species for species in TOGETHER[name] if f"delta_{species}" in self.evolved]
+        total = sum(mass[species] for species in present)
+        return sum(mass[species] / total * values(f"delta_{species}") for species in present)
 
     def at(self, name: str, redshift, wavenumber=None) -> np.ndarray:
         """Interpolate a quantity to other redshifts and wavenumbers.
@@ -107,7 +144,7 @@ class History:
         Parameters
         ----------
         name : str
-            One of `EVOLVED`.
+            One of `evolved`, "delta_cold" or "delta_matter".
         redshift : float or array, shape (redshift,)
             Redshifts [unitless].
         wavenumber : float or array, shape (mode,), optional
@@ -131,7 +168,7 @@ class History:
         Parameters
         ----------
         name : str
-            One of `EVOLVED`.
+            As in `at`.
         redshift : float or array, shape (redshift,)
             Redshifts [unitless].
 
@@ -149,8 +186,13 @@ class History:
 
     def _between_steps(self, name: str, redshift) -> tuple[np.ndarray, np.ndarray]:
         """Value and slope by ln a at any redshifts, each of shape (mode, redshift)."""
-        if name not in EVOLVED:
-            raise ValueError(f"no quantity is named {name!r}: choose one of {', '.join(EVOLVED)}")
+        if name in TOGETHER:
+            return tuple(
+                self._together(name, lambda part, which=which: self._between_steps(part, redshift)[which])
+                for which in range(2)
+            )
+        if name not in self.evolved:
+            raise ValueError(f"no quantity is named {name!r}: choose one of {', '.join((*self.evolved, *TOGETHER))}")
         log_a = -np.log1p(np.atleast_1d(np.asarray(redshift, dtype=float)))
         trace = self.trace
         return _hermite(trace.log_scale_factor, getattr(trace, name), getattr(trace, name + "_slope"), log_a)
@@ -176,8 +218,9 @@ class History:
         """
         import yaml
 
-        arrays = {name: getattr(self, name) for name in (*EVOLVED, "wavenumber", "redshift", "constraint")}
+        arrays = {name: getattr(self, name) for name in (*self.evolved, "wavenumber", "redshift", "constraint")}
         arrays |= {f"trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
+        arrays = {name: array for name, array in arrays.items() if array is not None}
         if self.certificate is not None:
             arrays |= {f"certificate_{part.name}": getattr(self.certificate, part.name) for part in fields(Certificate)}
         words = {
@@ -220,7 +263,7 @@ def load_history(path) -> History:
     if words["format"] != _FORMAT:
         raise ValueError(f"{path} has layout {words['format']}, this version reads layout {_FORMAT}: run it again")
     scenario = replace(scenario_from_mapping(words["scenario"]), assumed=tuple(words["assumed"]))
-    trace = Trace(**{part.name: arrays.pop(f"trace_{part.name}") for part in fields(Trace)})
+    trace = Trace(**{part.name: arrays.pop(f"trace_{part.name}", None) for part in fields(Trace)})
     certificate = None
     if "certificate_promise" in arrays:
         certificate = Certificate(**{part.name: arrays.pop(f"certificate_{part.name}") for part in fields(Certificate)})

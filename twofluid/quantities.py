@@ -50,6 +50,13 @@ _AMPLITUDES = (
              "divergence of the baryon velocity (conformal time) per unit comoving curvature"),
     Quantity("delta_gas_temperature", r"\delta_T", "",
              "relative contrast of the gas temperature per unit comoving curvature"),
+    Quantity("delta_matter", r"\delta_\mathrm{m}", "",
+             "contrast of all rest mass (dark matter, baryons, neutrinos with mass) per unit comoving curvature"),
+    Quantity("delta_neutrino", r"\delta_\nu", "",
+             "contrast of the rest mass of all neutrinos that have mass (3/4 of that of their energy while they are "
+             "as fast as light) per unit comoving curvature"),
+    Quantity("delta_cold", r"\delta_\mathrm{cb}", "",
+             "contrast of dark matter and baryons together per unit comoving curvature"),
 )
 
 _LAG = (
@@ -97,7 +104,7 @@ _SPHERES = (
 )
 
 _SHORTFALL = (
-    Quantity("fluid", r"\mathrm{fluid}", "", "dark matter, baryons, or matter, both weighted by density"),
+    Quantity("fluid", r"\mathrm{fluid}", "", "dark matter, baryons, or matter: all that has mass, weighted by it"),
     Quantity("rms_dark", r"\Delta_\mathrm{c}", "", "rms dark-matter contrast per unit ln k"),
     Quantity("rms_baryon", r"\Delta_\mathrm{b}", "", "rms baryon contrast per unit ln k"),
     Quantity("rms_matter", r"\Delta_\mathrm{m}", "", "rms matter contrast per unit ln k"),

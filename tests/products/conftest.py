@@ -49,7 +49,9 @@ def make_history():
             delta_baryon=at_redshift[1],
             theta_baryon=-at_redshift[1],
             delta_gas_temperature=at_redshift[1] / 2,
+            delta_matter=(at_redshift[0] + at_redshift[1]) / 2,
             has_dark_matter=has_dark_matter,
+            has_massive_neutrinos=False,
             warnings=("a sentence of warning",),
             certificate=None,
             trace=SimpleNamespace(
@@ -166,6 +168,7 @@ def make_up_run():
             delta_dark=sampled(dark, 0, log_a),
             delta_baryon=sampled(baryon, 0, log_a),
             has_dark_matter=scenario.cosmology.dark_matter_density > 0.0,
+            has_massive_neutrinos=False,
             warnings=(),
             certificate=None,
             constraint=np.full(len(dark), 1.5e-5),

@@ -1,6 +1,6 @@
 """The linear physics: which quantity stands in which row, its rates, its start and its pace."""
 
-from .closures import CLOSURES
+from .closures import CLOSURES, check_closure
 from .kinetic import ChainLengths, KineticSystem
 from .patch import PatchSystem
 from .resolution import ACCURACIES, Resolution, resolution_for
@@ -18,6 +18,7 @@ __all__ = [
     "SoundSpeedSystem",
     "Stepping",
     "adiabatic",
+    "check_closure",
     "clock",
     "resolution_for",
     "start_time",

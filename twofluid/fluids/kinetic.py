@@ -50,7 +50,7 @@ class ChainLengths:
     polarization: int
     neutrino: int
     massive: int = 12
-    momenta: int = 6
+    momenta: int = 5
 
 
 class KineticSystem:
@@ -71,6 +71,7 @@ class KineticSystem:
         "metric_rate", "curvature", "delta_dark", "delta_baryon", "delta_photon", "delta_neutrino",
         "delta_gas_temperature", "theta_baryon", "slip",
     )  # fmt: skip
+    neutrinos_may_have_mass = True
     stackable = True  # modes of several universes may stand side by side
     switches = ()  # one set of equations from first step to last
     cautions = ()

@@ -1,9 +1,10 @@
 """Neutrinos with mass: chains of moments at a few momenta, for every mass.
 
 A neutrino of comoving momentum q (over temperature) streams at v = q/(q^2 + y^2)^(1/2), y = a m c^2/(k T_0). The
-moments N_l of each momentum are scaled such that they are those of massless neutrinos while v = 1: Ma & Bertschinger
-1995 have Psi_l = -(1/4) (d ln f/d ln q) N_l in eqs 55 to 58 (numbers from memory). Hence they start as those do, and the
-equations are theirs with k v in place of k. Which momenta stand for all is said in `twofluid.universe.fermi_dirac`.
+moments N_l of each momentum are scaled such that they are those of massless neutrinos while v = 1: Ma &
+Bertschinger 1995 have Psi_l = -(1/4) (d ln f/d ln q) N_l in eqs 55 to 58 (numbers from memory). Hence they start as
+those do, and the equations are theirs with k v in place of k. Which momenta stand for all is said in
+`twofluid.universe.fermi_dirac`.
 
 The quadrupole is followed as ``N_2 - (8/5) eta``: then nothing but the trace rate of the metric and its curvature eta
 acts on a chain, whatever the number of chains, and the solver can take one after the other out of the equations.
@@ -14,7 +15,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ..solver.collocation import STAGES
+from ..solver.collocation import STAGES, WEIGHTS
 from ..universe import Universe
 from ..universe.fermi_dirac import momentum_sum
 
@@ -146,19 +147,23 @@ class MassiveNeutrinos:
         return rates
 
     def _streaming(self, chain: _Chain, flow: np.ndarray) -> dict:
-        """Free streaming of one chain, absorbed at its far end; the curvature is there for the shifted quadrupole."""
+        """Free streaming of one chain, absorbed at its far end; the curvature is there for the shifted quadrupole.
+
+        Among themselves the moments of the tail stream at the mean speed of the step. What only streams has then gone
+        the right way at the end of it, and with one rate at all stages the solver is quicker.
+        """
         strength, steepness = LAYER
+        mean = WEIGHTS[-1] @ flow
         rates = {}
-        for moment in range(self._last + 1):
-            here, share = chain.unknown(moment), 1.0 / (2 * moment + 1)
-            if moment >= FIRST_TAIL:
-                rates[here, here] = -strength * (moment / self._last) ** steepness * flow
-            if moment > 0:
-                rates[here, chain.unknown(moment - 1)] = moment * share * flow
-            if moment < self._last:
-                rates[here, chain.unknown(moment + 1)] = -(moment + 1) * share * flow
-        rates[chain.unknown(1), "curvature"] = SHIFT * rates[chain.unknown(1), chain.unknown(2)]
-        rates[chain.unknown(3), "curvature"] = SHIFT * rates[chain.unknown(3), chain.unknown(2)]
+        for moment in range(self._last):
+            here, beyond = chain.unknown(moment), chain.unknown(moment + 1)
+            speed = (moment + 1) * (mean if moment >= FIRST_TAIL else flow)
+            rates[here, beyond] = -speed / (2 * moment + 1)
+            rates[beyond, here] = speed / (2 * moment + 3)
+        for moment in range(FIRST_TAIL, self._last + 1):
+            rates[chain.unknown(moment), chain.unknown(moment)] = -strength * (moment / self._last) ** steepness * mean
+        for moment in (1, 3):
+            rates[chain.unknown(moment), "curvature"] = SHIFT * rates[chain.unknown(moment), chain.unknown(2)]
         return rates
 
     def density(self, scale_factor: np.ndarray, y: Mapping[str, np.ndarray]) -> np.ndarray:

@@ -78,6 +78,7 @@ class SoundSpeedSystem:
 
     unknowns = ("delta_stream", "delta_dark", "delta_baryon", "theta_stream", "theta_baryon", "metric_rate")
     observed = unknowns
+    neutrinos_may_have_mass = False
     stackable = False  # the release belongs to one universe
 
     def __init__(self, universe: Universe, wavenumber: np.ndarray, chains: ChainLengths | None = None):

@@ -41,13 +41,15 @@ def cold_growth(universe, redshift):
     equality = 1.0 / (1.0 + universe.landmarks.equality_redshift)
     start = min(np.log(EARLY * equality), log_a[0])
 
+    mass = sum(universe.masses.values())  # a g_m: neutrinos with mass are matter as well
+
     def slope(x, state):
         a = np.exp(x)
         hubble = universe.conformal_hubble_rate(a)
-        gravity = universe.gravity("dark", a) + universe.gravity("baryon", a)
-        return state[1] / (a * hubble), 0.5 * a * gravity * state[0] / hubble
+        return state[1] / (a * hubble), 0.5 * mass * state[0] / hubble
 
-    ratio = np.exp(start) / equality
+    radiation = sum(universe.gravity(name, np.exp(start)) for name in ("photon", "neutrino", "massive_neutrino"))
+    ratio = float(mass / np.exp(start) / radiation)
     momentum = 1.5 * ratio * np.exp(start) * universe.conformal_hubble_rate(np.exp(start))  # a dD/d tau
     solution = solve_ivp(
         slope, (start, max(log_a[-1], start)), (1.0 + 1.5 * ratio, momentum), method="DOP853",

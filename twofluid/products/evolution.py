@@ -20,15 +20,17 @@ def evolution_table(history):
     astropy.table.Table
         One row per mode and redshift, redshift (in the order asked) running fastest: wavenumber [1/Mpc],
         redshift [unitless], delta_dark [unitless], delta_baryon [unitless], theta_baryon [1/Mpc],
-        delta_gas_temperature [unitless]. Without dark matter delta_dark is empty.
+        delta_gas_temperature [unitless], delta_matter [unitless], and where neutrinos have mass delta_neutrino and
+        delta_cold [unitless]. Without dark matter delta_dark is empty.
     """
     no_dark_matter = np.full(history.delta_dark.size, not history.has_dark_matter)
+    of_mass = ("delta_neutrino", "delta_cold") if history.has_massive_neutrinos else ()
     columns = [
         *sample_columns(history),
         column("delta_dark", history.delta_dark.ravel(), masked=no_dark_matter),
         *(
             column(name, getattr(history, name).ravel())
-            for name in ("delta_baryon", "theta_baryon", "delta_gas_temperature")
+            for name in ("delta_baryon", "theta_baryon", "delta_gas_temperature", "delta_matter", *of_mass)
         ),
     ]
     return make_table(history, columns)

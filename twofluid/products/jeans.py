@@ -36,7 +36,7 @@ def jeans_wavenumber(universe, redshift):
     a = 1.0 / (1.0 + np.asarray(redshift, dtype=float))
     plasma = in_plasma(universe, redshift)
     matter = universe.gravity("baryon", a) + universe.gravity("dark", a)
-    radiation = universe.gravity("photon", a) + universe.gravity("neutrino", a)
+    radiation = sum(universe.gravity(species, a) for species in ("photon", "neutrino", "massive_neutrino"))
     speed = np.where(plasma, universe.plasma_sound_speed(a), universe.gas_sound_speed(a))
     return np.sqrt(0.5 * (matter + np.where(plasma, radiation, 0.0))) / speed
 

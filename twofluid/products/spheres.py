@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from twofluid.products.matter import FLUIDS, contrasts, contrasts_at, exists
+from twofluid.products.matter import FLUIDS, contrasts_at, contrasts_of, exists
 from twofluid.products.sphere_filter import SphereFilter
 from twofluid.products.table import column, make_table
 from twofluid.universe.constants import SOLAR_MASS_LENGTH
@@ -37,7 +37,7 @@ def spheres_table(history, radii=None, masses=None):
         wavenumbers do not cover the sphere; the header entry `not_covered` says so.
     """
     radius = sphere_radii(history.universe, radii, masses, default=True)
-    contrast = contrasts(history.universe, history.delta_dark, history.delta_baryon)
+    contrast = contrasts_of(history)
     epochs = len(history.redshift)
     columns = [
         column("sphere_radius", np.repeat(radius, epochs)),
@@ -123,8 +123,7 @@ def sphere_mass(universe, radius):
 
     (4 pi/3) rho_m R^3 = g_m R^3/(6 G) with g_m = 8 pi G rho_m.
     """
-    matter = universe.gravity("dark", 1.0) + universe.gravity("baryon", 1.0)
-    return matter * np.asarray(radius, dtype=float) ** 3 / 6.0 / SOLAR_MASS_LENGTH
+    return sum(universe.masses.values()) * np.asarray(radius, dtype=float) ** 3 / 6.0 / SOLAR_MASS_LENGTH
 
 
 def _covered(spheres, contrast, radii):

@@ -7,7 +7,7 @@ not depend on the state, so they are worked out for a whole stretch of steps as 
 (`Elimination.factor`); only the substitution is sequential in time (`Factors.advance`).
 """
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -46,11 +46,20 @@ class Pivot:
     right: tuple[Symbol, ...]
     response: tuple[Symbol, ...]
 
-    def goes_with(self, other: "Pivot") -> bool:
-        """Whether both are independent, serve different rows, and are made of the very same blocks."""
-        same = (self.inverse, self.below, self.right) == (other.inverse, other.below, other.right)
+    @property
+    def blocks(self) -> tuple:
+        """Symbols of what the substitution is made of."""
+        return self.inverse, self.below, self.right
+
+    def goes_with(self, other: "Pivot", kind: Callable[[Symbol], Kind]) -> bool:
+        """Whether both are independent, serve different rows, and are made of the same kinds of block."""
+        alike, others = ([[kind(symbol) for symbol in part] for part in pivot._parts] for pivot in (self, other))
         touched = (*self.rows, *self.columns)
-        return same and other.index not in touched and not set(self.rows) & set(other.rows)
+        return alike == others and other.index not in touched and not set(self.rows) & set(other.rows)
+
+    @property
+    def _parts(self) -> tuple[tuple[Symbol, ...], ...]:
+        return (self.inverse,), self.below, self.right
 
 
 class Elimination:
@@ -124,20 +133,23 @@ class Elimination:
 
 @dataclass(frozen=True)
 class _Group:
-    """Pivots substituted together because they share their blocks.
+    """Pivots substituted together because their blocks are the same, or of the same kinds.
 
     Attributes
     ----------
+    sets : int
+        Different sets of blocks: one for all pivots, or one for each.
     own, rows, columns : list of int
         Where their unknowns, those below and those to the right stand in the state, pivot by pivot.
     inverse : int
-        Symbol of the inverse, as a stack of one full block.
+        Symbol of the stacked inverses, as full blocks, set by set.
     below, beyond : int or None
-        Symbols of the stacked blocks for the two passes, None if there are none.
+        Symbols of the stacked blocks for the two passes, set by set, None if there are none.
     below_full, beyond_full : bool
         Whether those blocks are full. If none beyond is, the inverse is still to be applied to what comes from there.
     """
 
+    sets: int
     own: list[int]
     rows: list[int]
     columns: list[int]
@@ -157,22 +169,24 @@ def _groups(pivots: Sequence[Pivot], program: Program) -> list[_Group]:
     """Put neighbours together that can be substituted together."""
     members: list[list[Pivot]] = []
     for pivot in pivots:
-        if members and all(member.goes_with(pivot) for member in members[-1]):
+        if members and all(member.goes_with(pivot, program.kind) for member in members[-1]):
             members[-1].append(pivot)
         else:
             members.append([pivot])
     groups = []
     for group in members:
-        shared = group[0]
-        plain = all(program.kind(symbol) in (UNIFORM, DIAGONAL) for symbol in shared.right)
-        below = program.stack(shared.below) if shared.below else None
-        beyond = program.stack(shared.right if plain else shared.response) if shared.right else None
+        different = group[:1] if all(pivot.blocks == group[0].blocks for pivot in group) else group
+        plain = all(program.kind(symbol) in (UNIFORM, DIAGONAL) for symbol in group[0].right)
+        right = [symbol for pivot in different for symbol in (pivot.right if plain else pivot.response)]
+        below = program.stack([symbol for pivot in different for symbol in pivot.below]) if group[0].below else None
+        beyond = program.stack(right) if right else None
         groups.append(
             _Group(
+                sets=len(different),
                 own=[pivot.index for pivot in group],
                 rows=[row for pivot in group for row in pivot.rows],
                 columns=[column for pivot in group for column in pivot.columns],
-                inverse=program.stack([shared.inverse]),
+                inverse=program.stack([pivot.inverse for pivot in different]),
                 below=below,
                 beyond=beyond,
                 below_full=below is not None and program.kind(below) == FULL,
@@ -238,13 +252,15 @@ class _Substitution:
         rows, columns = len(group.rows) // size, len(group.columns) // size
         self.needs_others = group.beyond is not None
         self._below_full, self._beyond_full = group.below_full, group.beyond_full
-        self._inverse = _by_step(values[group.inverse], steps, (STAGES, STAGES))
+        self._inverse = _by_step(values[group.inverse], steps, (group.sets, STAGES, STAGES))
         self._own_load, self._own = load[own], stages[own]
         self._own_alone = self._own[:, None]
         if group.below is not None:
-            self._below = _by_step(values[group.below], steps, (rows, STAGES, STAGES)[: 2 + group.below_full])
+            below = (group.sets, rows, STAGES, STAGES)[: 3 + group.below_full]
+            self._below = _by_step(values[group.below], steps, below)
         if group.beyond is not None:
-            self._beyond = _by_step(values[group.beyond], steps, (columns, STAGES, STAGES)[: 2 + group.beyond_full])
+            beyond = (group.sets, columns, STAGES, STAGES)[: 3 + group.beyond_full]
+            self._beyond = _by_step(values[group.beyond], steps, beyond)
         self._share = np.empty((size, rows, STAGES, modes))
         self._flat_share = self._share.reshape(-1, STAGES, modes)
         self._target = _View(load, group.rows)
@@ -253,11 +269,11 @@ class _Substitution:
 
     def forward(self, step: int) -> None:
         """Solve for these unknowns as if they needed no other; pass their share on to the rows below."""
-        np.einsum("ijm,gjm->gim", self._inverse[step], self._own_load, out=self._own)
+        np.einsum("gijm,gjm->gim", self._inverse[step], self._own_load, out=self._own)  # one set stretches over all
         if not self._share.size:
             return
         if self._below_full:
-            np.einsum("rijm,gjm->grim", self._below[step], self._own, out=self._share)
+            np.einsum("grijm,gjm->grim", self._below[step], self._own, out=self._share)
         else:
             np.multiply(self._below[step], self._own_alone, out=self._share)
         self._target.add(self._flat_share)
@@ -267,14 +283,14 @@ class _Substitution:
         block, change = self._beyond[step], self._change
         given = self._source.read().reshape(self._given)
         if self._beyond_full:
-            np.einsum("cijm,gcjm->gim", block, given, out=change)
+            np.einsum("gcijm,gcjm->gim", block, given, out=change)
         else:
             received = self._received
-            if len(block) == 1:
-                np.multiply(block, given[:, 0], out=received)
+            if block.shape[1] == 1:
+                np.multiply(block[:, 0], given[:, 0], out=received)
             else:
-                np.einsum("cim,gcim->gim", block, given, out=received)
-            np.einsum("ijm,gjm->gim", self._inverse[step], received, out=change)
+                np.einsum("gcim,gcim->gim", block, given, out=received)
+            np.einsum("gijm,gjm->gim", self._inverse[step], received, out=change)
         np.add(self._own, change, out=self._own)
 
 

@@ -207,7 +207,7 @@ def _check_neutrinos(neutrinos):
         raise UniverseError(f"neutrinos.masses = {masses} eV are more than the {NEUTRINO_SPECIES} species there are")
     if any(masses) and effective_number == 0.0:
         raise UniverseError(
-            f"neutrinos.masses = {masses} eV were given, but with effective_number = 0 there is no neutrino to have them"
+            f"neutrinos.masses = {masses} eV were given, but effective_number = 0 leaves no neutrino to have them"
         )
 
 

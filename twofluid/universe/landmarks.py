@@ -18,8 +18,8 @@ class Landmarks:
     Parameters
     ----------
     equality_redshift : float
-        Baryons and dark matter equal photons and neutrinos, all neutrinos taken as massless and none as matter, as is the
-        custom [unitless].
+        Baryons and dark matter equal photons and neutrinos, all neutrinos taken as massless and none as matter, as is
+        the custom [unitless].
     equality_wavenumber : float
         a H there [1/Mpc].
     last_scattering_redshift : float

@@ -20,7 +20,10 @@ class SideBySide:
             self._kinds.append((type(items[0]), names))
             for name, length in names.items():
                 rows = [vars(item)[name] for item in items]
-                values += [rows] if length is None else [[(*row, *[0.0] * length)[n] for row in rows] for n in range(length)]
+                if length is None:
+                    values.append(rows)
+                else:
+                    values += [[row[n] if n < len(row) else 0.0 for row in rows] for n in range(length)]
         self._values = np.array(values)
 
     def pick(self, owner):

@@ -42,10 +42,10 @@ class Universe:
 
     # --- expansion ---------------------------------------------------------------------------------
     def gravity(self, species, scale_factor, columns=None):
-        """8 pi G a^2 rho of a species [1/Mpc^2]: "photon", "neutrino" (without mass), "massive_neutrino", "baryon",
-        "dark", "curvature" or "constant".
+        """8 pi G a^2 rho of a species [1/Mpc^2].
 
-        `columns` is there for a `UniverseStack`, as in `conditions`.
+        The species are "photon", "neutrino" (without mass), "massive_neutrino", "baryon", "dark", "curvature" and
+        "constant" (cosmological constant). `columns` is there for a `UniverseStack`, as in `conditions`.
         """
         return self._expansion.gravity(species, scale_factor)
 
@@ -60,9 +60,9 @@ class Universe:
 
     @property
     def masses(self):
-        """8 pi G rho today of everything that has rest mass, as if at rest: "dark", "baryon", "massive_neutrino" [1/Mpc^2].
+        """8 pi G times the density of rest mass today, of "dark", "baryon" and "massive_neutrino" [1/Mpc^2].
 
-        They thin out as a^-3; that of the neutrinos is the energy they have once they are slow.
+        It thins out as a^-3 at all times; of the neutrinos it is all of their energy once they are slow.
         """
         contents = self.contents
         return {"dark": contents.dark, "baryon": contents.baryon, "massive_neutrino": contents.resting}
