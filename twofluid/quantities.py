@@ -50,6 +50,9 @@ _AMPLITUDES = (
              "divergence of the baryon velocity (conformal time) per unit comoving curvature"),
     Quantity("delta_gas_temperature", r"\delta_T", "",
              "relative contrast of the gas temperature per unit comoving curvature"),
+    Quantity("theta_dark", r"\theta_\mathrm{c}", "1/Mpc",
+             "divergence of the velocity of dark matter with pressure, relative to the frame as that of the baryons, "
+             "per unit comoving curvature"),
 )
 
 _LAG = (

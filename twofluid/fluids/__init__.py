@@ -5,7 +5,7 @@ from .kinetic import ChainLengths, KineticSystem
 from .resolution import ACCURACIES, Resolution, resolution_for
 from .sound_speed import SoundSpeedSystem
 from .start import adiabatic, start_time
-from .stepping import Stepping, clock
+from .stepping import Stepping, check_dark_waves, clock
 
 __all__ = [
     "ACCURACIES",
@@ -16,6 +16,7 @@ __all__ = [
     "SoundSpeedSystem",
     "Stepping",
     "adiabatic",
+    "check_dark_waves",
     "clock",
     "resolution_for",
     "start_time",

@@ -103,8 +103,21 @@ class UniverseStack:
     def _contents(self):
         return side_by_side([universe.contents for universe in self.universes])
 
+    @property
+    def has_dark_pressure(self):
+        """Whether the dark matter of any of the universes is not cold."""
+        return any(universe.has_dark_pressure for universe in self.universes)
+
+    def dark_sound_speed(self, scale_factor, columns=None):
+        """Sound speed of the dark matter [c]; arguments as in `gravity`."""
+        return pick(self._dark_sounds, self._owner(columns)).speed(scale_factor)
+
     def _owner(self, columns):
         return self.owner if columns is None else self.owner[columns]
+
+    @cached_property
+    def _dark_sounds(self):
+        return side_by_side([universe.dark_sound for universe in self.universes])
 
     @cached_property
     def _tables(self):
