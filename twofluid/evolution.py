@@ -305,8 +305,8 @@ def _dark_warnings(universe: Universe, k: np.ndarray) -> tuple[str, ...]:
     if not universe.has_dark_pressure or fast == 0:
         return ()
     return (
-        f"{fast} of {len(k)} wavenumbers were inside the horizon before redshift {1.0 / slow_from - 1.0:.3g}, while the "
-        "sound speed of the dark matter was above 0.1 c: there it is followed as matter that it was not",
+        f"{fast} of {len(k)} wavenumbers were inside the horizon before redshift {1.0 / slow_from - 1.0:.3g}, while "
+        "the sound speed of the dark matter was above 0.1 c: it is followed as slow matter also there",
     )
 
 

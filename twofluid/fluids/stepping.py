@@ -23,7 +23,7 @@ from ..universe import Conditions, Universe
 
 NODES_PER_UNIT = 60  # nodes of the density per unit of log conformal time
 FAR_OUTSIDE = 0.3  # k tau up to which a mode counts as far outside the horizon
-DARK_PHASE_SHARE = 0.25  # longest k c_s dtau of waves of the dark matter, over `Stepping.phase_step` (measured)
+DARK_PHASE_SHARE = 0.5  # longest k c_s dtau of waves of the dark matter, over `Stepping.phase_step` (measured)
 DARK_RADIANS = 100.0  # from so many on steps shorten as radians^(-1/5): the method is of order five
 MOST_DARK_RADIANS = 1000.0  # that are followed; some thousand steps
 

@@ -13,8 +13,8 @@ FRAME = (
     "amplitudes per unit comoving curvature, signed so that densities grow positive"
 )
 FRAME_OF_DUST = (
-    "synchronous, carried by cold dust without mass, against which both the dark matter, since it has pressure, and the "
-    "baryons move; amplitudes per unit comoving curvature, signed so that densities grow positive"
+    "synchronous, carried by cold dust without mass: the dark matter, since it has pressure, moves against it as the "
+    "baryons do; amplitudes per unit comoving curvature, signed so that densities grow positive"
 )
 NO_DARK_MATTER = "this universe has no dark matter; whatever is measured against it is empty"
 NO_CERTIFICATE = "none: the numerical error of this run was not estimated"

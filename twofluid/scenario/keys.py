@@ -165,9 +165,9 @@ KEYS = (
         unit="km/s", allowed=Allowed(0, 29979), default=0.0, example="0 km/s"),  # up to a tenth of c: still matter
     Key("cosmology.dark_matter.at_redshift", Kind.NUMBER, "redshift at which that sound speed is given",
         allowed=Allowed(0, 1e6), default=0.0, example="0"),
-    # Momenta of free particles fall as 1 + z, the root of a temperature tied to the photons' as its square root.
+    # Momenta of free particles fall as 1 + z; sound speeds at the photons' temperature as its root.
     Key("cosmology.dark_matter.scaling", Kind.NUMBER,
-        "power of 1 + z with which it changes: 1 for particles set free, 0.5 for those that keep a photon's temperature",
+        "power of 1 + z with which it changes: 1 for free particles, 0.5 for those heated by photons",
         allowed=Allowed(0, 1), default=1.0, example="1"),
     Key("primordial.amplitude", Kind.NUMBER, "power of the curvature perturbations at the pivot",
         allowed=Allowed(0, 1, low_open=True), default=2.1e-9, example="2.1e-9"),

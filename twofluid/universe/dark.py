@@ -7,7 +7,7 @@ import numpy as np
 from .constants import SPEED_OF_LIGHT
 from .errors import UniverseError
 
-SLOW = 0.1  # largest sound speed that is taken for that of matter [c]: motion adds less than some per cent to its weight
+SLOW = 0.1  # largest sound speed taken for that of matter [c]: motion adds some per cent to its weight
 _METRES_PER_KILOMETRE = 1e3
 
 
