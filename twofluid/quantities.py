@@ -115,6 +115,9 @@ _SCALES = (
              "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber_two_fluids; " + _NO_FILTERING),
     Quantity("filtering_mass_measured", r"M_\mathrm{Fm}", "solMass",
              "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber_measured; " + _NO_FILTERING),
+    Quantity("dark_sound_speed", r"c_\mathrm{c}", "km/s", "effective sound speed of dark matter with pressure"),
+    Quantity("dark_jeans_wavenumber", r"k_\mathrm{Jc}", "1/Mpc",
+             "comoving Jeans wavenumber (a/c) sqrt(4 pi G rho) of dark matter with pressure, rho of it and baryons"),
     Quantity("verdict", r"\mathrm{verdict}", "",
              "what the mode is doing: larger than the horizon, oscillates with the plasma, damped, held up by "
              "pressure, falls in, grows; empty: the steps of the run are too long to follow the wave"),

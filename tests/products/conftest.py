@@ -7,6 +7,7 @@ import numpy as np
 import pytest
 
 from twofluid import evolve
+from twofluid.history import EVOLVED
 from twofluid.scenario import Cosmology, Primordial, Sampling, Scenario
 
 RUN_REDSHIFTS = (10000.0, 3000.0, 1500.0, 1000.0, 500.0, 300.0, 200.0, 100.0, 50.0, 20.0, 10.0, 5.0, 0.0)
@@ -47,6 +48,8 @@ def make_history():
             delta_baryon=at_redshift[1],
             theta_baryon=-at_redshift[1],
             delta_gas_temperature=at_redshift[1] / 2,
+            theta_dark=None,
+            evolved=EVOLVED,
             has_dark_matter=has_dark_matter,
             warnings=("a sentence of warning",),
             certificate=None,
