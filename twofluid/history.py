@@ -135,13 +135,38 @@ class History:
         ValueError
             If the name is unknown, or a redshift or wavenumber lies outside the run.
         """
+        values, _ = self._between_steps(name, redshift)
+        return values if wavenumber is None else self._at_wavenumber(values, wavenumber)
+
+    def slope_at(self, name: str, redshift) -> np.ndarray:
+        """Return the derivative by ln a of a quantity at other redshifts, that of the interpolation `at` makes.
+
+        Parameters
+        ----------
+        name : str
+            One of `evolved`.
+        redshift : float or array, shape (redshift,)
+            Redshifts [unitless].
+
+        Returns
+        -------
+        array, shape (mode, redshift)
+            In the unit of the quantity; at the redshifts of the run as the equations give it.
+
+        Raises
+        ------
+        ValueError
+            If the name is unknown, or a redshift lies outside the run.
+        """
+        return self._between_steps(name, redshift)[1]
+
+    def _between_steps(self, name: str, redshift) -> tuple[np.ndarray, np.ndarray]:
+        """Value and slope by ln a at any redshifts, each of shape (mode, redshift)."""
         if name not in self.evolved:
             raise ValueError(f"no quantity is named {name!r}: choose one of {', '.join(self.evolved)}")
         log_a = -np.log1p(np.atleast_1d(np.asarray(redshift, dtype=float)))
-        values = _hermite(
-            self.trace.log_scale_factor, getattr(self.trace, name), getattr(self.trace, name + "_slope"), log_a
-        )
-        return values if wavenumber is None else self._at_wavenumber(values, wavenumber)
+        trace = self.trace
+        return _hermite(trace.log_scale_factor, getattr(trace, name), getattr(trace, name + "_slope"), log_a)
 
     def _at_wavenumber(self, values: np.ndarray, wavenumber) -> np.ndarray:
         from scipy.interpolate import CubicSpline
@@ -224,8 +249,10 @@ def load_history(path) -> History:
     )
 
 
-def _hermite(log_a: np.ndarray, values: np.ndarray, slopes: np.ndarray, asked: np.ndarray) -> np.ndarray:
-    """Cubic Hermite interpolation of every mode at the same log scale factors, shape (mode, asked)."""
+def _hermite(
+    log_a: np.ndarray, values: np.ndarray, slopes: np.ndarray, asked: np.ndarray
+) -> tuple[np.ndarray, np.ndarray]:
+    """Cubic Hermite interpolation of every mode, and its derivative, at the same log scale factors (mode, asked)."""
     if not np.all((asked >= log_a[:, 0].max()) & (asked <= 0.0)):
         raise ValueError(f"redshifts must lie within the run, 0 to {np.expm1(-log_a[:, 0].max()):.6g}")
     steps = log_a.shape[1]
@@ -236,4 +263,7 @@ def _hermite(log_a: np.ndarray, values: np.ndarray, slopes: np.ndarray, asked: n
     t = np.divide(asked - log_a[rows, left], width, out=np.zeros(width.shape), where=width > 0.0)
     rise = values[rows, right] - values[rows, left]
     start, end = slopes[rows, left] * width - rise, rise - slopes[rows, right] * width
-    return values[rows, left] + t * rise + t * (1.0 - t) * ((1.0 - t) * start + t * end)
+    bend = (1.0 - t) * start + t * end
+    value = values[rows, left] + t * rise + t * (1.0 - t) * bend
+    rate = rise + (1.0 - 2.0 * t) * bend + t * (1.0 - t) * (end - start)
+    return value, np.divide(rate, width, out=slopes[rows, left], where=width > 0.0)

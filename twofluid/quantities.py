@@ -68,6 +68,64 @@ _LAG = (
              "baryon over dark-matter density contrast at redshift 0; empty: no dark matter"),
 )
 
+_GROWTH = (
+    Quantity("growth_dark", r"D_\mathrm{c}", "", "dark-matter contrast over that at the reference epoch"),
+    Quantity("growth_baryon", r"D_\mathrm{b}", "", "baryon contrast over that at the reference epoch"),
+    Quantity("growth_matter", r"D_\mathrm{m}", "", "matter contrast over that at the reference epoch"),
+    Quantity("rate_dark", r"f_\mathrm{c}", "", "growth rate of the dark-matter contrast, d ln delta/d ln a"),
+    Quantity("rate_baryon", r"f_\mathrm{b}", "", "growth rate of the baryon contrast, d ln delta/d ln a"),
+    Quantity("rate_matter", r"f_\mathrm{m}", "", "growth rate of the matter contrast, d ln delta/d ln a"),
+    Quantity("exponent_dark", r"p_\mathrm{c}", "",
+             "power of a with the growth of the dark matter since the reference epoch; empty: sign changed"),
+    Quantity("exponent_baryon", r"p_\mathrm{b}", "",
+             "power of a with the growth of the baryons since the reference epoch; empty: sign changed"),
+    Quantity("exponent_matter", r"p_\mathrm{m}", "",
+             "power of a with the growth of matter since the reference epoch; empty: sign changed"),
+    Quantity("suppression", r"D_\mathrm{m}/D_\mathrm{cold}", "",
+             "growth of matter since the reference epoch over that of a cold fluid in its place"),
+)
+
+_SPHERES = (
+    Quantity("sphere_radius", "R", "Mpc", "comoving radius of a sphere"),
+    Quantity("sphere_mass", "M", "solMass", "mean mass of matter in the sphere"),
+    Quantity("sigma_dark", r"\sigma_\mathrm{c}", "", "rms dark-matter contrast in spheres"),
+    Quantity("sigma_dark_error", r"\Delta\sigma_\mathrm{c}", "",
+             "error of it: sampling in wavenumber, quadrature, and what may lie beyond the run's wavenumbers"),
+    Quantity("sigma_baryon", r"\sigma_\mathrm{b}", "", "rms baryon contrast in spheres"),
+    Quantity("sigma_baryon_error", r"\Delta\sigma_\mathrm{b}", "",
+             "error of it: sampling in wavenumber, quadrature, and what may lie beyond the run's wavenumbers"),
+    Quantity("sigma_matter", r"\sigma_\mathrm{m}", "", "rms matter contrast in spheres"),
+    Quantity("sigma_matter_error", r"\Delta\sigma_\mathrm{m}", "",
+             "error of it: sampling in wavenumber, quadrature, and what may lie beyond the run's wavenumbers"),
+)
+
+_SHORTFALL = (
+    Quantity("fluid", r"\mathrm{fluid}", "", "dark matter, baryons, or matter, both weighted by density"),
+    Quantity("rms_dark", r"\Delta_\mathrm{c}", "", "rms dark-matter contrast per unit ln k"),
+    Quantity("rms_baryon", r"\Delta_\mathrm{b}", "", "rms baryon contrast per unit ln k"),
+    Quantity("rms_matter", r"\Delta_\mathrm{m}", "", "rms matter contrast per unit ln k"),
+    Quantity("rms_at_decoupling", r"\Delta(z_\mathrm{drag})", "",
+             "rms contrast at the drag epoch, of a wave per unit ln k, of a sphere inside it"),
+    Quantity("rms_needed", r"\Delta_\mathrm{needed}", "",
+             "rms contrast at the drag epoch from which a cold fluid in place of all matter reaches 1 at the "
+             "target redshift"),
+    Quantity("shortfall", r"\Delta_\mathrm{needed}/\Delta(z_\mathrm{drag})", "",
+             "factor between the contrast needed and the one there was; below 1: it was enough"),
+    Quantity("rms_at_target", r"\Delta(z_\mathrm{target})", "", "rms contrast at the target redshift"),
+    Quantity("unity_redshift", r"z_1", "",
+             "redshift at which the rms first reaches 1; empty: never by today; inf: before the run"),
+    Quantity("unity_age", r"t_1", "Gyr", "age of the universe when the rms first reaches 1"),
+    Quantity("collapse_redshift", r"z_{1.69}", "",
+             "redshift at which the rms first reaches 1.686, the linear contrast of a collapsing sphere; empty: "
+             "never by today; inf: before the run"),
+    Quantity("collapse_age", r"t_{1.69}", "Gyr", "age of the universe when the rms first reaches 1.686"),
+    Quantity("greatest_rms", r"\Delta_\mathrm{max}", "", "largest rms contrast by today"),
+    Quantity("greatest_redshift", r"z_\mathrm{max}", "",
+             "redshift of the largest rms contrast, where growth stops; 0: it grows to this day"),
+    Quantity("matter_era_age", r"t_\mathrm{matter}", "Gyr",
+             "age at which the contrast at the drag epoch would reach 1 by growing as t^(2/3) alone"),
+)
+
 _COMPARISON = (
     Quantity("scenario", r"\mathrm{scenario}", "", "title of the scenario the row belongs to"),
     Quantity("X_over_first", r"X/X_1", "",
@@ -140,10 +198,9 @@ _LANDMARKS = (
     Quantity("conformal_age", r"\tau_0", "Mpc", "conformal time today"),
 )
 
-QUANTITIES = {
-    quantity.name: quantity
-    for quantity in (*_AXES, *_AMPLITUDES, *_LAG, *_SCALES, *_COMPARISON, *_LANDMARKS)
-}
+_GROUPS = (_AXES, _AMPLITUDES, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _COMPARISON, _LANDMARKS)
+
+QUANTITIES = {quantity.name: quantity for group in _GROUPS for quantity in group}
 
 
 def nomenclature_markdown() -> str:

@@ -10,23 +10,38 @@ import numpy as np
 from twofluid.drawing import (
     difference_figure,
     evolution_comparison_figure,
+    growth_figure,
     lag_comparison_figure,
     lag_figure,
     scales_figure,
+    shortfall_figure,
+    spheres_figure,
 )
 from twofluid.files import FIGURE_FORMATS, figure_bytes, table_bytes
 from twofluid.products import (
     catchup_table,
+    contrast_table,
     course_table,
     difference_table,
     evolution_table,
+    growth_table,
     joined_table,
     lag_table,
     map_redshifts,
     scales_table,
+    shortfall_table,
+    spheres_table,
     verdict_table,
 )
-from twofluid.report import compared_evolution_lines, compared_lag_lines, lag_lines, scales_lines
+from twofluid.report import (
+    compared_evolution_lines,
+    compared_lag_lines,
+    growth_lines,
+    lag_lines,
+    scales_lines,
+    shortfall_lines,
+    spheres_lines,
+)
 
 EVOLUTION = "evolution"  # the amplitudes, written whatever products are asked for
 
@@ -96,6 +111,24 @@ PRODUCTS = {
         figure=scales_figure,
         summary=scales_lines,
         drawn={"scales_map": _on_map(_scales), "verdict_map": _on_map(_verdict)},
+    ),
+    "growth": Product(
+        tables={"growth": lambda history, options: growth_table(history, **options)},
+        figure=growth_figure,
+        summary=growth_lines,
+    ),
+    "spheres": Product(
+        tables={"spheres": lambda history, options: spheres_table(history, **options)},
+        figure=spheres_figure,
+        summary=spheres_lines,
+    ),
+    "shortfall": Product(
+        tables={
+            "shortfall": lambda history, options: shortfall_table(history, **options),
+            "contrast": lambda history, options: contrast_table(history),
+        },
+        figure=shortfall_figure,
+        summary=shortfall_lines,
     ),
 }
 

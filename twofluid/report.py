@@ -185,6 +185,116 @@ def scales_lines(tables):
     return [*aligned(mass_rows), *aligned(verdict_rows), agreement]
 
 
+def growth_lines(tables):
+    """Return the summary of growth: that of matter, and its rate, at a few scales.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        The table of the product, under "growth".
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    table = tables["growth"]
+    epoch = f"growth of matter since z = {table.meta['reference_redshift']:g}"
+    lines = _grid(table, "wavenumber", epoch, "growth_matter", ".5g")
+    lines += _grid(table, "wavenumber", "growth rate of matter", "rate_matter", ".4f")
+    exponent = table.meta["exponent_with_smooth_baryons"]
+    if "no_dark_matter" not in table.meta:
+        lines.append(f"  power of a in the matter era while baryons stay smooth: {exponent:.4f}")
+    return lines
+
+
+def spheres_lines(tables):
+    """Return the summary of spheres: the rms contrast of matter in a few of them.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        The table of the product, under "spheres".
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    table = tables["spheres"]
+    lines = _grid(table, "sphere_radius", "rms of matter in spheres", "sigma_matter", ".4g")
+    error = np.ma.asarray(table["sigma_matter_error"]) / np.ma.asarray(table["sigma_matter"])
+    if error.count():
+        percent = f"{100 * error.max():.2g} per cent"
+        lines.append(f"  sampling, quadrature and range of wavenumbers leave up to {percent} open")
+    if "not_covered" in table.meta:
+        lines.append(f"  spheres: {table.meta['not_covered']}")
+    return lines
+
+
+def shortfall_lines(tables):
+    """Return the summary of the shortfall: contrast at decoupling against the one needed, and what came of it.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        The tables of the product, under "shortfall" and "contrast".
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    table = tables["shortfall"]
+    meta = table.meta
+    needed = np.ma.asarray(table["rms_needed"]).compressed()
+    lines = []
+    if needed.size:
+        lines.append(
+            f"  order unity by z = {meta['target_redshift']:g} takes an rms contrast of {needed[0]:.3g} at "
+            f"decoupling, z = {meta['decoupling_redshift']:.5g}"
+        )
+    rows = [("  rms contrast", "fluid", "at decoupling", "short by", "reaches 1", "by t^(2/3) alone")]
+    scales = table[np.asarray(table["fluid"]) == "matter"]
+    for scale in _few(len(scales), SCALES_SHOWN):
+        for row in table[3 * scale : 3 * scale + 3]:
+            if not np.ma.is_masked(row["rms_at_decoupling"]):
+                rows.append((f"    {_scale_text(row)}", *_shortfall_cells(row)))
+    lines += aligned(rows)
+    return lines + [f"  shortfall: {meta[name]}" for name in ("no_dark_matter", "not_covered") if name in meta]
+
+
+def _scale_text(row):
+    if np.ma.is_masked(row["wavenumber"]):
+        return f"R = {row['sphere_radius']:.4g} {QUANTITIES['sphere_radius'].unit}"
+    return f"k = {row['wavenumber']:.4g} {QUANTITIES['wavenumber'].unit}"
+
+
+def _shortfall_cells(row):
+    if not np.ma.is_masked(row["unity_redshift"]):
+        outcome = f"z = {row['unity_redshift']:.4g}, t = {row['unity_age']:.4g} Gyr"
+    elif row["greatest_redshift"] == 0.0:
+        outcome = f"never by today: {row['greatest_rms']:.3g}, still growing"
+    else:
+        outcome = f"never: growth stops at z = {row['greatest_redshift']:.4g}, at {row['greatest_rms']:.3g}"
+    short = f"{row['shortfall']:.3g}" if row["shortfall"] > 1.0 else "nothing"
+    return (row["fluid"], f"{row['rms_at_decoupling']:.3g}", short, outcome, f"{row['matter_era_age']:.3g} Gyr")
+
+
+def _grid(table, scale, title, name, digits):
+    """Return lines with one quantity at a few scales and redshifts."""
+    redshifts = list(dict.fromkeys(np.asarray(table["redshift"]).tolist()))
+    values = np.ma.asarray(table[name]).reshape(-1, len(redshifts))
+    scales = np.asarray(table[scale])[:: len(redshifts)]
+    shown = _few(len(redshifts), COLUMNS_SHOWN)
+    quantity = QUANTITIES[scale]
+    rows = [(f"  {title}", *(f"z = {redshifts[i]:g}" for i in shown))]
+    for mode in _few(len(scales), SCALES_SHOWN):
+        cells = ["-" if values[mode, i] is np.ma.masked else f"{values[mode, i]:{digits}}" for i in shown]
+        rows.append((f"    {quantity.symbol} = {scales[mode]:.4g} {quantity.unit}", *cells))
+    return aligned(rows)
+
+
 def comparison_lines(comparison):
     """Return the head of the summary of a comparison: the scenarios, and what differs in what was put in.
 

@@ -41,6 +41,15 @@ VALUES = {
     "products.scales.mass_radius": "1",
     "products.scales.together": "0.95",
     "products.scales.map_from": "3e4",
+    "products.growth": "",
+    "products.growth.reference_redshift": "100",
+    "products.spheres": "",
+    "products.spheres.radii": "[1 Mpc, 3 Mpc]",
+    "products.spheres.masses": "[1e6 solMass]",
+    "products.shortfall": "",
+    "products.shortfall.target_redshift": "7",
+    "products.shortfall.radii": "[2 Mpc]",
+    "products.shortfall.masses": "[1e9 solMass]",
 }
 
 NO_PRODUCTS = dict.fromkeys(path for path in VALUES if path.startswith("products."))  # as changes: all lines left out

@@ -23,7 +23,7 @@ from twofluid.scenario import (
     scenario_template,
 )
 from twofluid.scenario.document import entry_from_text
-from twofluid.scenario.keys import BASE, DEFAULT_PRODUCTS, KEYS, SECTIONS, Kind
+from twofluid.scenario.keys import BASE, DEFAULT_PRODUCTS, KEY_AT, KEYS, SECTIONS, Kind
 from twofluid.scenario.values import read_value
 
 SHIPPED = sorted((Path(__file__).parents[2] / "scenarios").glob("*.yaml"))
@@ -35,6 +35,7 @@ TEXTS = {
     "two points": full_text({"sampling.wavenumbers.per_decade": "0.01"}),
     "odd density": full_text({"sampling.wavenumbers.per_decade": "66.66"}),
     "no products": full_text({"products": "{}"} | NO_PRODUCTS),
+    "no spheres named": full_text({"products.spheres.radii": None, "products.shortfall.masses": None}),
     "odd title": full_text({"title": '"5: # no"'}),
 } | {path.name: path.read_text() for path in SHIPPED if "\nbase:" not in path.read_text()}
 
@@ -49,7 +50,7 @@ def test_round_trip_through_mapping_and_yaml(text):
     assert yaml.safe_load(written) == mapping
     assert scenario_from_mapping(mapping) == scenario
     assert again.to_mapping() == mapping
-    assert [key for key in again.assumed if "curvature" not in key and "cosmological" not in key] == []
+    assert all(KEY_AT[key].default is None for key in again.assumed)  # all else is spelled out
 
 
 def test_quantities_carry_their_units_in_the_mapping():
@@ -163,9 +164,16 @@ def test_the_template_stands_at_the_defaults():
     assert replace(left_out, title=scenario.title) == scenario
 
 
+def test_the_template_shows_every_product():
+    products = parse_scenario(scenario_template()).products
+    assert {f"products.{name}" for name in products} == {path for path in SECTIONS if path.startswith("products.")}
+
+
+NO_DEFAULT = [key for key in KEYS if key.default is None and not key.required and key.kind is not Kind.TEXT]
+
+
 def test_the_template_assumes_only_what_has_no_fixed_default():
-    no_default = ("cosmology.curvature_fraction", "cosmology.cosmological_constant_fraction")
-    assert parse_scenario(scenario_template()).assumed == no_default
+    assert set(parse_scenario(scenario_template()).assumed) == {key.path for key in NO_DEFAULT}
 
 
 @pytest.mark.parametrize("key", KEYS, ids=lambda key: key.path)
@@ -181,8 +189,9 @@ def test_the_template_explains_each_key(key):
 
 
 def test_the_commented_keys_of_the_template_are_valid_too():
-    text = scenario_template().replace("# curvature_fraction", "curvature_fraction")
-    text = text.replace("# cosmological_constant_fraction", "cosmological_constant_fraction")
+    text = scenario_template()
+    for key in NO_DEFAULT:
+        text = text.replace(f"# {key.name}: ", f"{key.name}: ")
     scenario = parse_scenario(text)
     assert scenario.assumed == ()
     assert scenario.cosmology.curvature_fraction == 0.01

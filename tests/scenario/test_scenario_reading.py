@@ -47,6 +47,9 @@ def test_every_key_reaches_its_field():
         products={
             "lag": {"fractions": (0.5, 0.9)},
             "scales": {"mass_radius": 1.0, "together": 0.95, "map_from": 3e4},
+            "growth": {"reference_redshift": 100.0},
+            "spheres": {"radii": (1.0, 3.0), "masses": (1e6,)},
+            "shortfall": {"target_redshift": 7.0, "radii": (2.0,), "masses": (1e9,)},
         },
         method=Method("sound-speed", "reference"),
     )
@@ -149,6 +152,13 @@ def test_wavenumber_units_agree_with_astropy(number, unit):
     expected = (float(number) * units.Unit(unit)).to_value(units.Mpc**-1)
     pivot = reread({"primordial.pivot": f"{number} {unit}"}).primordial.pivot
     assert pivot == pytest.approx(expected, rel=1e-13)
+
+
+def test_radii_and_masses_in_other_units():
+    spheres = reread({"products.spheres.radii": "[8 kpc]", "products.spheres.masses": "[1e6 Msun, 2e36 kg]"})
+    assert spheres.products["spheres"]["radii"] == pytest.approx((0.008,), rel=1e-13)
+    expected = (2e36 * units.kg).to_value(units.solMass)
+    assert spheres.products["spheres"]["masses"] == pytest.approx((1e6, expected), rel=1e-13)
 
 
 def test_temperature_in_millikelvin():

@@ -28,8 +28,8 @@ def start_time(universe: Universe, wavenumber: np.ndarray) -> np.ndarray:
     array, shape (mode,)
         Conformal time [Mpc].
     """
-    equality = 1.0 / (1.0 + universe.landmarks.equality_redshift)
-    return np.minimum(START_PHASE / wavenumber, universe.conformal_time(START_MATTER * equality))
+    early_matter = START_MATTER * universe.equality
+    return np.minimum(START_PHASE / wavenumber, universe.conformal_time(early_matter))
 
 
 def adiabatic(universe: Universe, wavenumber: np.ndarray, time: np.ndarray) -> dict[str, np.ndarray]:

@@ -2,18 +2,28 @@
 
 from twofluid.products.comparison import course_table, difference_table, joined_table
 from twofluid.products.evolution import evolution_table
+from twofluid.products.growth import growth_table
 from twofluid.products.lag import catchup_table, lag_table
+from twofluid.products.requirements import check_products
 from twofluid.products.scales import map_redshifts, scales_table
+from twofluid.products.shortfall import contrast_table, shortfall_table
+from twofluid.products.spheres import sigma_8, spheres_table
 from twofluid.products.verdict import verdict_table
 
 __all__ = [
     "catchup_table",
+    "check_products",
+    "contrast_table",
     "course_table",
     "difference_table",
     "evolution_table",
+    "growth_table",
     "joined_table",
     "lag_table",
     "map_redshifts",
     "scales_table",
+    "shortfall_table",
+    "sigma_8",
+    "spheres_table",
     "verdict_table",
 ]

@@ -58,6 +58,26 @@ def column(name, values, *, masked=None, describe_as=None, **words):
     return MaskedColumn(np.where(masked, blank, values), mask=masked, **labels)
 
 
+def words_column(name, words):
+    """Return one described column of words.
+
+    Parameters
+    ----------
+    name : str
+        Name of the column, an entry of `QUANTITIES`.
+    words : list of str
+        Its entries.
+
+    Returns
+    -------
+    astropy.table.Column
+        With description.
+    """
+    from astropy.table import Column
+
+    return Column(words, name=name, dtype=str, description=QUANTITIES[name].meaning)
+
+
 def sample_columns(history):
     """Return the wavenumber and redshift columns: one row per mode and redshift, redshift running fastest.
 

@@ -13,6 +13,7 @@ WAVENUMBER_UNIT = "1/Mpc"
 MOST_WAVENUMBERS = 100_000  # longest list of modes; keeps a slip of the pen from filling the memory
 MOST_REDSHIFTS = 1_000  # longest list of redshifts; the same reason
 MOST_FRACTIONS = 100  # longest list of fractions of one product; the same reason
+MOST_SPHERES = 100  # longest list of radii or masses of one product; the same reason
 
 
 def section_of(path):
@@ -127,11 +128,18 @@ SECTIONS = {
     "products": "which products to make: {} for none, lag if the section is left out",
     "products.lag": "how far the baryons lag the dark matter",
     "products.scales": "horizon, sound, Jeans, filtering and diffusion scales, and what each mode is doing",
+    "products.growth": "growth of dark matter, baryons and matter since an epoch, and growth rates",
+    "products.spheres": "rms contrast in spheres",
+    "products.shortfall": "contrast at decoupling against what order unity by a target redshift takes",
 }
 
 DEFAULT_PRODUCTS = ("lag",)  # made when the file has no section `products`
 
 _WAVENUMBER_LIMITS = Allowed(1e-4, 1e5)  # beyond the horizon to far below the Jeans length of the gas
+_RADIUS_LIMITS = Allowed(1e-5, 1e4)  # [Mpc]; one over the wavenumbers
+_MASS_LIMITS = Allowed(1e-4, 1e23)  # [solMass]; what such spheres hold in a universe like ours
+_REDSHIFT_LIMITS = Allowed(0, 1e6)  # what a run tabulates
+_TOO_MANY_SPHERES = "more spheres are not tabulated in one run"
 
 KEYS = (
     Key("title", Kind.TEXT, "name of the scenario, for tables and figures",
@@ -193,7 +201,7 @@ KEYS = (
         "equations: photons and neutrinos by their full chains of moments, or a plasma with an effective sound speed",
         choices=("kinetic", "sound-speed"), default="kinetic", example="kinetic"),
     Key("method.accuracy", Kind.CHOICE,
-        "step and chain settings: numerical error of the contrasts below 2e-3, 2e-4 or 3e-5",
+        "step and chain settings: numerical error of the contrasts below 3e-3, 3e-4 or 5e-5",
         choices=("draft", "standard", "reference"), default="standard", example="standard"),
     Key("products.lag.fractions", Kind.NUMBERS,
         "ratios of baryon to dark-matter amplitude whose redshift is wanted",
@@ -208,6 +216,24 @@ KEYS = (
         allowed=Allowed(0, 1, low_open=True, high_open=True), default=0.9, example="0.9"),
     Key("products.scales.map_from", Kind.NUMBER, "redshift at which the map of verdicts starts; it ends at 0",
         allowed=Allowed(1, 1e6), default=1e4, example="1e4"),
+    Key("products.growth.reference_redshift", Kind.NUMBER, "redshift at which the growth factors are 1",
+        allowed=_REDSHIFT_LIMITS, default=1000.0, example="1000"),
+    Key("products.spheres.radii", Kind.QUANTITIES, "comoving radii of the spheres",
+        unit="Mpc", allowed=_RADIUS_LIMITS, example="[1 Mpc, 8 Mpc]", longest=MOST_SPHERES,
+        longest_reason=_TOO_MANY_SPHERES,
+        unsaid="8 Mpc/h, none beside masses"),
+    Key("products.spheres.masses", Kind.QUANTITIES, "mean masses of matter in further spheres",
+        unit="solMass", allowed=_MASS_LIMITS, example="[1e6 solMass, 1e8 solMass]", longest=MOST_SPHERES,
+        longest_reason=_TOO_MANY_SPHERES, unsaid="none"),
+    Key("products.shortfall.target_redshift", Kind.NUMBER,
+        "redshift by which order unity is wanted, after the drag epoch",
+        allowed=_REDSHIFT_LIMITS, default=7.5, example="7.5"),
+    Key("products.shortfall.radii", Kind.QUANTITIES, "comoving radii of spheres to follow beside the waves",
+        unit="Mpc", allowed=_RADIUS_LIMITS, example="[1 Mpc, 8 Mpc]", longest=MOST_SPHERES,
+        longest_reason=_TOO_MANY_SPHERES, unsaid="none"),
+    Key("products.shortfall.masses", Kind.QUANTITIES, "mean masses of spheres to follow beside the waves",
+        unit="solMass", allowed=_MASS_LIMITS, example="[1e6 solMass, 1e8 solMass]", longest=MOST_SPHERES,
+        longest_reason=_TOO_MANY_SPHERES, unsaid="none"),
 )  # fmt: skip
 
 KEY_AT = {key.path: key for key in KEYS}

@@ -117,6 +117,21 @@ class Primordial:
     tilt: float = default_of("primordial.tilt")
     pivot: float = default_of("primordial.pivot")
 
+    def power(self, wavenumber):
+        """Power of the curvature perturbations per unit ln k, A (k/pivot)^(n - 1).
+
+        Parameters
+        ----------
+        wavenumber : float or array, any shape
+            Comoving wavenumbers [1/Mpc].
+
+        Returns
+        -------
+        float or array, same shape
+            [unitless]
+        """
+        return self.amplitude * (wavenumber / self.pivot) ** (self.tilt - 1.0)
+
 
 @dataclass(frozen=True)
 class Sampling:
@@ -217,7 +232,9 @@ class Scenario:
         mapping["products"] = {}
         for product, options in self.products.items():
             known = {name: KEY_AT.get(f"products.{product}.{name}") for name in options}
-            mapping["products"][product] = {name: _plain(options[name], known[name]) for name in options}
+            mapping["products"][product] = {
+                name: _plain(value, known[name]) for name, value in options.items() if value is not None
+            }
         return mapping
 
     def assumptions(self):

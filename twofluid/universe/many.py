@@ -7,10 +7,10 @@ import numpy as np
 from .background import solve_backgrounds
 from .conditions import ConditionsStack
 from .errors import UniverseError
-from .members import pick, side_by_side
+from .members import SideBySide
 from .universe import Universe
 
-_GROUP = 16  # universes solved together, so that the intermediate arrays stay in the cache
+_GROUP = 32  # universes solved together, so that the intermediate arrays stay in the cache
 
 
 def build_universes(cosmologies):
@@ -81,7 +81,9 @@ class UniverseStack:
         columns : index of `owner`, optional
             The columns that are meant; all if left out.
         """
-        return pick(self._contents, self._owner(columns)).gravity(species, scale_factor)
+        owner = self.owner if columns is None else self.owner[columns]
+        (contents,) = self._contents.pick(owner)
+        return contents.gravity(species, scale_factor)
 
     def conditions(self, conformal_time, columns=None):
         """Conditions at conformal times [Mpc], as `Universe.conditions` finds them for each column.
@@ -97,11 +99,8 @@ class UniverseStack:
         ValueError
             If a time lies outside.
         """
-        return self._tables(conformal_time, self._owner(columns))
-
-    @cached_property
-    def _contents(self):
-        return side_by_side([universe.contents for universe in self.universes])
+        look_up = self._all_columns if columns is None else self._tables.of(self.owner[columns])
+        return look_up(conformal_time)
 
     @property
     def has_dark_pressure(self):
@@ -110,14 +109,21 @@ class UniverseStack:
 
     def dark_sound_speed(self, scale_factor, columns=None):
         """Sound speed of the dark matter [c]; arguments as in `gravity`."""
-        return pick(self._dark_sounds, self._owner(columns)).speed(scale_factor)
+        owner = self.owner if columns is None else self.owner[columns]
+        (sound,) = self._dark_sounds.pick(owner)
+        return sound.speed(scale_factor)
 
-    def _owner(self, columns):
-        return self.owner if columns is None else self.owner[columns]
+    @cached_property
+    def _contents(self):
+        return SideBySide([universe.contents for universe in self.universes])
+
+    @cached_property
+    def _all_columns(self):
+        return self._tables.of(self.owner)
 
     @cached_property
     def _dark_sounds(self):
-        return side_by_side([universe.dark_sound for universe in self.universes])
+        return SideBySide([universe.dark_sound for universe in self.universes])
 
     @cached_property
     def _tables(self):
