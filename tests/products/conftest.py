@@ -161,6 +161,8 @@ def make_up_run():
         )  # fmt: skip
         log_a = -np.log1p(np.asarray(redshift, dtype=float))
         return SimpleNamespace(
+            theta_dark=None,
+            evolved=EVOLVED,
             scenario=scenario,
             universe=Universe(scenario.cosmology),
             wavenumber=np.arange(1.0, len(dark) + 1) if wavenumber is None else np.asarray(wavenumber),
