@@ -2,6 +2,7 @@
 
 from .closures import CLOSURES
 from .kinetic import ChainLengths, KineticSystem
+from .patch import PatchSystem
 from .resolution import ACCURACIES, Resolution, resolution_for
 from .sound_speed import SoundSpeedSystem
 from .start import adiabatic, start_time
@@ -12,6 +13,7 @@ __all__ = [
     "CLOSURES",
     "ChainLengths",
     "KineticSystem",
+    "PatchSystem",
     "Resolution",
     "SoundSpeedSystem",
     "Stepping",
