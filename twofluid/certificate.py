@@ -20,7 +20,8 @@ class Certificate:
         the larger of its value and a tenth of its largest so far [unitless].
     ratio_error : array, shape (mode, redshift)
         Error of the ratio of baryon to dark-matter contrast, absolute; without dark matter of the
-        baryon contrast, relative to the larger of the baryons' and the dust's [unitless].
+        baryon contrast, relative to the larger of the baryons' and the dust's; where the dark matter
+        has pressure, and the ratio poles, likewise with the dark matter's [unitless].
     temperature_error : array, shape (mode, redshift)
         Error of the gas temperature contrast, relative to the larger of its value and the baryons' [unitless].
     constraint : float

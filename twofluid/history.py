@@ -13,6 +13,9 @@ from .universe import Universe
 #: Quantities a history carries, in the order of their columns.
 EVOLVED = ("delta_dark", "delta_baryon", "theta_baryon", "delta_gas_temperature")
 
+#: Quantities it carries in addition where the dark matter has pressure.
+MOVING_DARK = ("theta_dark",)
+
 _FORMAT = 1  # raised whenever a saved history changes its layout
 
 
@@ -28,6 +31,8 @@ class Trace:
         As in `History`.
     delta_dark_slope, delta_baryon_slope, theta_baryon_slope, delta_gas_temperature_slope : array, shape (mode, step)
         Their derivatives by ln a, in the unit of the quantity.
+    theta_dark, theta_dark_slope : array, shape (mode, step), or None
+        The same, where the dark matter has pressure.
     """
 
     log_scale_factor: np.ndarray
@@ -39,14 +44,16 @@ class Trace:
     delta_baryon_slope: np.ndarray
     theta_baryon_slope: np.ndarray
     delta_gas_temperature_slope: np.ndarray
+    theta_dark: np.ndarray | None = None
+    theta_dark_slope: np.ndarray | None = None
 
 
 @dataclass(frozen=True)
 class History:
     """What became of each mode.
 
-    Synchronous frame at rest with the dark matter; unit primordial comoving curvature; signs such
-    that densities grow positive.
+    Synchronous frame at rest with the dark matter or, where that has pressure, with cold dust of no mass that
+    started with it; unit primordial comoving curvature; signs such that densities grow positive.
 
     Attributes
     ----------
@@ -62,7 +69,7 @@ class History:
         Density contrasts [unitless]. Without dark matter, `delta_dark` is that of the massless dust
         that carries the frame.
     theta_baryon : array, shape (mode, redshift)
-        Velocity divergence of the baryons, by conformal time [1/Mpc].
+        Velocity divergence of the baryons relative to the frame, by conformal time [1/Mpc].
     delta_gas_temperature : array, shape (mode, redshift)
         Relative contrast of the gas temperature [unitless].
     trace : Trace
@@ -76,6 +83,8 @@ class History:
         What the user has to know about this run.
     certificate : Certificate or None
         Estimated numerical error, once `twofluid.certify` has worked it out.
+    theta_dark : array, shape (mode, redshift), or None
+        Velocity divergence of the dark matter relative to the frame, where it has pressure [1/Mpc].
     """
 
     scenario: Scenario
@@ -91,6 +100,12 @@ class History:
     counts: dict[str, int]
     warnings: tuple[str, ...] = field(default=())
     certificate: Certificate | None = None
+    theta_dark: np.ndarray | None = None
+
+    @property
+    def evolved(self) -> tuple[str, ...]:
+        """Names of the quantities this history carries."""
+        return EVOLVED if self.theta_dark is None else (*EVOLVED, *MOVING_DARK)
 
     @property
     def has_dark_matter(self) -> bool:
@@ -105,7 +120,7 @@ class History:
         Parameters
         ----------
         name : str
-            One of `EVOLVED`.
+            One of `evolved`.
         redshift : float or array, shape (redshift,)
             Redshifts [unitless].
         wavenumber : float or array, shape (mode,), optional
@@ -129,7 +144,7 @@ class History:
         Parameters
         ----------
         name : str
-            One of `EVOLVED`.
+            One of `evolved`.
         redshift : float or array, shape (redshift,)
             Redshifts [unitless].
 
@@ -147,8 +162,8 @@ class History:
 
     def _between_steps(self, name: str, redshift) -> tuple[np.ndarray, np.ndarray]:
         """Value and slope by ln a at any redshifts, each of shape (mode, redshift)."""
-        if name not in EVOLVED:
-            raise ValueError(f"no quantity is named {name!r}: choose one of {', '.join(EVOLVED)}")
+        if name not in self.evolved:
+            raise ValueError(f"no quantity is named {name!r}: choose one of {', '.join(self.evolved)}")
         log_a = -np.log1p(np.atleast_1d(np.asarray(redshift, dtype=float)))
         trace = self.trace
         return _hermite(trace.log_scale_factor, getattr(trace, name), getattr(trace, name + "_slope"), log_a)
@@ -174,8 +189,9 @@ class History:
         """
         import yaml
 
-        arrays = {name: getattr(self, name) for name in (*EVOLVED, "wavenumber", "redshift", "constraint")}
-        arrays |= {f"trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
+        arrays = {name: getattr(self, name) for name in (*self.evolved, "wavenumber", "redshift", "constraint")}
+        trace = {f"trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
+        arrays |= {name: array for name, array in trace.items() if array is not None}
         if self.certificate is not None:
             arrays |= {f"certificate_{part.name}": getattr(self.certificate, part.name) for part in fields(Certificate)}
         words = {
@@ -218,7 +234,7 @@ def load_history(path) -> History:
     if words["format"] != _FORMAT:
         raise ValueError(f"{path} has layout {words['format']}, this version reads layout {_FORMAT}: run it again")
     scenario = replace(scenario_from_mapping(words["scenario"]), assumed=tuple(words["assumed"]))
-    trace = Trace(**{part.name: arrays.pop(f"trace_{part.name}") for part in fields(Trace)})
+    trace = Trace(**{part.name: arrays.pop(f"trace_{part.name}", None) for part in fields(Trace)})
     certificate = None
     if "certificate_promise" in arrays:
         certificate = Certificate(**{part.name: arrays.pop(f"certificate_{part.name}") for part in fields(Certificate)})

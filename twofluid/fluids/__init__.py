@@ -6,7 +6,7 @@ from .patch import PatchSystem
 from .resolution import ACCURACIES, Resolution, resolution_for
 from .sound_speed import SoundSpeedSystem
 from .start import adiabatic, start_time
-from .stepping import Stepping, clock
+from .stepping import Stepping, check_dark_waves, clock
 
 __all__ = [
     "ACCURACIES",
@@ -18,6 +18,7 @@ __all__ = [
     "SoundSpeedSystem",
     "Stepping",
     "adiabatic",
+    "check_dark_waves",
     "clock",
     "resolution_for",
     "start_time",

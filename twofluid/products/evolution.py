@@ -20,7 +20,8 @@ def evolution_table(history):
     astropy.table.Table
         One row per mode and redshift, redshift (in the order asked) running fastest: wavenumber [1/Mpc],
         redshift [unitless], delta_dark [unitless], delta_baryon [unitless], theta_baryon [1/Mpc],
-        delta_gas_temperature [unitless]. Without dark matter delta_dark is empty.
+        delta_gas_temperature [unitless], and theta_dark [1/Mpc] where the dark matter has pressure.
+        Without dark matter delta_dark is empty. Velocities are relative to the frame the header names.
     """
     no_dark_matter = np.full(history.delta_dark.size, not history.has_dark_matter)
     columns = [
@@ -28,7 +29,7 @@ def evolution_table(history):
         column("delta_dark", history.delta_dark.ravel(), masked=no_dark_matter),
         *(
             column(name, getattr(history, name).ravel())
-            for name in ("delta_baryon", "theta_baryon", "delta_gas_temperature")
+            for name in history.evolved[1:]
         ),
     ]
     return make_table(history, columns)

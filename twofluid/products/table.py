@@ -12,6 +12,10 @@ FRAME = (
     "synchronous, at rest with the dark matter (without dark matter: carried by massless dust); "
     "amplitudes per unit comoving curvature, signed so that densities grow positive"
 )
+FRAME_OF_DUST = (
+    "synchronous, carried by cold dust without mass: the dark matter, since it has pressure, moves against it as the "
+    "baryons do; amplitudes per unit comoving curvature, signed so that densities grow positive"
+)
 NO_DARK_MATTER = "this universe has no dark matter; whatever is measured against it is empty"
 NO_CERTIFICATE = "none: the numerical error of this run was not estimated"
 _BLANKS = {"b": False, "U": ""}  # under the mask of a column of true and false, or of words; NaN for numbers
@@ -137,7 +141,7 @@ def header(history):
         "scenario": history.scenario.to_mapping(),
         "assumed": list(history.scenario.assumptions()),
         "closure": history.scenario.method.closure,
-        "frame": FRAME,
+        "frame": FRAME if history.theta_dark is None else FRAME_OF_DUST,
         "landmarks": {name: _rounded(name, value) for name, value in landmarks.items()},
         "certificate": NO_CERTIFICATE if history.certificate is None else history.certificate.sentence(),
         "warnings": list(history.warnings),

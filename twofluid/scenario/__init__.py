@@ -3,10 +3,11 @@
 from .errors import ScenarioError
 from .manual import key_table_markdown, scenario_template
 from .reader import parse_scenario, read_scenario, scenario_from_mapping
-from .request import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
+from .request import Cosmology, DarkMatter, Method, Neutrinos, Primordial, Sampling, Scenario
 
 __all__ = [
     "Cosmology",
+    "DarkMatter",
     "Method",
     "Neutrinos",
     "Primordial",

@@ -9,7 +9,7 @@ from .errors import printable
 from .family import read_document, refuse_base
 from .keys import DEFAULT_PRODUCTS, keys_under, name_of, sections_under
 from .names import checked_names
-from .request import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
+from .request import Cosmology, DarkMatter, Method, Neutrinos, Primordial, Sampling, Scenario
 from .values import read_value
 
 UNTITLED = "untitled"  # title of a scenario that has neither a title nor a file
@@ -89,10 +89,13 @@ def _scenario(entry, title, source):
     _read_section("", entry, values, assumed)
     if values["title"] is None:
         values["title"] = title
-    neutrinos = Neutrinos(**_pick(values, "cosmology.neutrinos"))
+    inner = {
+        "neutrinos": Neutrinos(**_pick(values, "cosmology.neutrinos")),
+        "dark_matter": DarkMatter(**_pick(values, "cosmology.dark_matter")),
+    }
     return Scenario(
         title=values["title"],
-        cosmology=Cosmology(**_pick(values, "cosmology"), neutrinos=neutrinos),
+        cosmology=Cosmology(**_pick(values, "cosmology"), **inner),
         primordial=Primordial(**_pick(values, "primordial")),
         sampling=Sampling(**_pick(values, "sampling")),
         products={name: _pick(values, f"products.{name}") for name in entry.content["products"].content},
