@@ -1,15 +1,16 @@
 """The linear physics: which quantity stands in which row, its rates, its start and its pace."""
 
-from .closures import CLOSURES
+from .closures import CLOSURES, MIXTURE_CLOSURES
 from .kinetic import ChainLengths, KineticSystem
 from .resolution import ACCURACIES, Resolution, resolution_for
 from .sound_speed import SoundSpeedSystem
-from .start import adiabatic, start_time
+from .start import adiabatic, mixed, start_time
 from .stepping import Stepping, clock
 
 __all__ = [
     "ACCURACIES",
     "CLOSURES",
+    "MIXTURE_CLOSURES",
     "ChainLengths",
     "KineticSystem",
     "Resolution",
@@ -17,6 +18,7 @@ __all__ = [
     "Stepping",
     "adiabatic",
     "clock",
+    "mixed",
     "resolution_for",
     "start_time",
 ]

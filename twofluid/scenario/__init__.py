@@ -2,19 +2,26 @@
 
 from .errors import ScenarioError
 from .manual import key_table_markdown, scenario_template
+from .mixture import Mixture, Part, Share, check_mixture, mixture_lines, parts
 from .reader import parse_scenario, read_scenario, scenario_from_mapping
 from .request import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
 
 __all__ = [
     "Cosmology",
     "Method",
+    "Mixture",
     "Neutrinos",
+    "Part",
     "Primordial",
     "Sampling",
     "Scenario",
     "ScenarioError",
+    "Share",
+    "check_mixture",
     "key_table_markdown",
+    "mixture_lines",
     "parse_scenario",
+    "parts",
     "read_scenario",
     "scenario_from_mapping",
     "scenario_template",
