@@ -315,8 +315,9 @@ def _explain(failure: SolverFailure, request: _Request, mode: int) -> SolverFail
     """Say which wavenumber failed, and at which redshift."""
     redshift = 1.0 / float(request.universe.scale_factor(failure.time)) - 1.0
     scenario = f"{request.scenario.title}: " if request.named else ""
+    wavenumber = request.system.wavenumber[mode]
     return SolverFailure(
-        f"{scenario}the integration failed at k = {request.system.wavenumber[mode]:.6g} 1/Mpc, z = {redshift:.6g}: {failure}",
+        f"{scenario}the integration failed at k = {wavenumber:.6g} 1/Mpc, z = {redshift:.6g}: {failure}",
         mode=mode,
         time=failure.time,
     )

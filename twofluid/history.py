@@ -208,7 +208,7 @@ class History:
             np.savez_compressed(stream, words=np.array(yaml.safe_dump(words)), **arrays)
 
     def _own_arrays(self, prefix: str) -> dict[str, np.ndarray]:
-        """What a history does not share with its parts, by the names in an archive."""
+        """Return what a history does not share with its parts, by the names in an archive."""
         arrays = {f"{prefix}{name}": getattr(self, name) for name in (*EVOLVED, "constraint")}
         return arrays | {f"{prefix}trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
 
@@ -302,7 +302,7 @@ def _gather(parts: Sequence[History], name: str, suffix: str = "") -> np.ndarray
 
 
 def _directions(lead: np.ndarray, slope: np.ndarray | None = None) -> tuple[np.ndarray, np.ndarray | None]:
-    """Unit vector along the leading quantity in the space of the parts, first axis, and its derivative."""
+    """Return the unit vector along the leading quantity in the space of the parts, first axis, and its derivative."""
     rms = np.sqrt((lead**2).sum(axis=0))
     safe = np.where(rms > 0.0, rms, 1.0)
     unit = lead / safe
@@ -310,7 +310,7 @@ def _directions(lead: np.ndarray, slope: np.ndarray | None = None) -> tuple[np.n
 
 
 def _prefix(number: int) -> str:
-    """What the names of the arrays of a part begin with in an archive; number 0 is the whole."""
+    """Return what the names of the arrays of a part begin with in an archive; number 0 is the whole."""
     return f"part{number}_" if number else ""
 
 

@@ -33,11 +33,12 @@ def make_history():
             return np.array([curve[part](where) for curve in curves], dtype=float)
 
         at_redshift = [sampled(dark, 0, log_a), sampled(baryon, 0, log_a)]
-        return SimpleNamespace(
+        history = SimpleNamespace(
             scenario=SimpleNamespace(
                 to_mapping=lambda: {"title": "Saltmarsh test"},
                 assumptions=lambda: ("primordial.tilt = 0.965",),
                 method=SimpleNamespace(closure="kinetic"),
+                primordial=Primordial(),
             ),
             universe=SimpleNamespace(
                 age=lambda a: AGE_TODAY * a**1.5,  # Einstein-de Sitter
@@ -60,6 +61,8 @@ def make_history():
                 delta_baryon_slope=sampled(baryon, 1, knots),
             ),
         )
+        history.parts = (history,)
+        return history
 
     return make
 
@@ -158,7 +161,7 @@ def make_up_run():
             delta_gas_temperature=nothing, delta_gas_temperature_slope=nothing,
         )  # fmt: skip
         log_a = -np.log1p(np.asarray(redshift, dtype=float))
-        return SimpleNamespace(
+        history = SimpleNamespace(
             scenario=scenario,
             universe=Universe(scenario.cosmology),
             wavenumber=np.arange(1.0, len(dark) + 1) if wavenumber is None else np.asarray(wavenumber),
@@ -173,6 +176,8 @@ def make_up_run():
             at=lambda name, z: between(trace, name, z)[0],
             slope_at=lambda name, z: between(trace, name, z)[1],
         )
+        history.parts = (history,)
+        return history
 
     def between(trace, name, redshift):
         """Value and slope by an interpolation that is not ours."""

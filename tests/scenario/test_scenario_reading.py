@@ -4,7 +4,18 @@ import pytest
 from astropy import units
 from scenario_texts import NO_PRODUCTS, VALUES, full_text, wavenumber_text
 
-from twofluid.scenario import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
+from twofluid.scenario import (
+    Cosmology,
+    Method,
+    Mixture,
+    Neutrinos,
+    Primordial,
+    Sampling,
+    Scenario,
+    Share,
+    parse_scenario,
+    values,
+)
 
 MINIMAL = """
 cosmology: {hubble_constant: 70 km/(s Mpc), baryon_density: 0.02, dark_matter_density: 0.1}
@@ -31,7 +42,19 @@ def test_every_key_reaches_its_field():
             curvature_fraction=0.01,
             cosmological_constant_fraction=0.7,
         ),
-        primordial=Primordial(amplitude=2e-9, tilt=0.96, pivot=0.002),
+        primordial=Primordial(
+            amplitude=2e-9,
+            tilt=0.96,
+            pivot=0.002,
+            mixture=Mixture(
+                adiabatic=0.5,
+                baryon=Share(0.0, correlation=-0.5, tilt=0.9),
+                dark_matter=Share(0.0, correlation=-0.25, tilt=1.0),
+                neutrino_density=Share(0.0, correlation=0.0, tilt=1.1),
+                neutrino_velocity=Share(0.0, correlation=0.25, tilt=1.2),
+                compensated=Share(0.0, correlation=0.5, tilt=1.3),
+            ),
+        ),
         sampling=Sampling(wavenumbers=wavenumbers, redshifts=(1000.0, 100.0, 10.0)),
         products={
             "lag": {"fractions": (0.5, 0.9)},

@@ -1,12 +1,14 @@
 """What is asked: scenario files to frozen dataclasses, with units, limits and errors that name the line."""
 
 from .errors import ScenarioError
+from .keys import ADIABATIC
 from .manual import key_table_markdown, scenario_template
 from .mixture import Mixture, Part, Share, check_mixture, mixture_lines, parts
 from .reader import parse_scenario, read_scenario, scenario_from_mapping
 from .request import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
 
 __all__ = [
+    "ADIABATIC",
     "Cosmology",
     "Method",
     "Mixture",
