@@ -127,13 +127,16 @@ def _run(options):
 
 def _compare(options):
     from twofluid.comparison import align
+    from twofluid.products import check_products
     from twofluid.registry import comparison_names
     from twofluid.solver import SolverFailure
 
     try:
-        scenarios = [_prepare(file)[0] for file in options.files]
+        scenarios, universes = zip(*map(_prepare, options.files), strict=True)
         try:
             alignment = align(scenarios)
+            for scenario, universe in zip(alignment.scenarios, universes, strict=True):
+                check_products(scenario, universe)  # the options of the first have to suit every universe
             names = comparison_names(alignment)
         except ValueError as error:
             raise RequestError(f"compare: {error}") from error

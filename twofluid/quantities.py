@@ -182,6 +182,37 @@ _SCALES = (
              "above jeans_wavenumber; empty: no verdict"),
 )
 
+_NO_WIND = "empty: no dark matter"
+_NOT_TOLD = "empty: no dark matter, before the patches start, or error above that in the header"
+_STREAMING = (
+    Quantity("rms_velocity", r"\sigma_\mathrm{bc}", "km/s",
+             "rms velocity of baryons relative to dark matter, all three components together; " + _NO_WIND),
+    Quantity("rms_velocity_error", r"\Delta\sigma_\mathrm{bc}", "km/s",
+             "error of it: sampling in wavenumber, and what lies beyond the wavenumbers in the header; " + _NO_WIND),
+    Quantity("mach_number", r"\mathcal{M}", "",
+             "rms_velocity over the sound speed of the gas; empty: before the drag epoch, or no dark matter"),
+    Quantity("half_variance_wavenumber", r"k_{50}", "1/Mpc",
+             "wavenumber up to which waves hold half of the variance of the velocity; " + _NO_WIND),
+    Quantity("most_variance_wavenumber", r"k_{90}", "1/Mpc",
+             "wavenumber up to which waves hold 90 per cent of the variance of the velocity; " + _NO_WIND),
+    Quantity("coherence_length", r"r_\mathrm{v}", "Mpc",
+             "comoving distance over which the velocities keep a correlation of 0.95; " + _NO_WIND),
+    Quantity("streaming_wavenumber", r"k_\mathrm{v}", "1/Mpc",
+             "a H/rms_velocity, whose wave the stream crosses in an expansion time; " + _NO_WIND),
+    Quantity("velocity_spectrum", r"\Delta_\mathrm{v}", "km/s",
+             "rms velocity of baryons relative to dark matter per unit ln k; " + _NO_WIND),
+    Quantity("velocity", r"v/\sigma_\mathrm{bc}", "",
+             "streaming velocity of the patch over its rms; empty: average over all patches"),
+    Quantity("suppression_dark", r"P_\mathrm{c}/P_\mathrm{c}(0)", "",
+             "power of dark matter where gas streams over that where it does not; " + _NOT_TOLD),
+    Quantity("suppression_baryon", r"P_\mathrm{b}/P_\mathrm{b}(0)", "",
+             "power of baryons where gas streams over that where it does not; " + _NOT_TOLD),
+    Quantity("suppression_matter", r"P_\mathrm{m}/P_\mathrm{m}(0)", "",
+             "power of matter where gas streams over that where it does not; " + _NOT_TOLD),
+    Quantity("error", r"\Delta[P/P(0)]", "",
+             "numerical error of the suppressions, the largest; empty: no dark matter, or before the patches start"),
+)
+
 _LANDMARKS = (
     Quantity("equality_redshift", r"z_\mathrm{eq}", "", "matter and radiation have equal density"),
     Quantity("equality_wavenumber", r"k_\mathrm{eq}", "1/Mpc", "conformal expansion rate at equality"),
@@ -196,7 +227,7 @@ _LANDMARKS = (
     Quantity("conformal_age", r"\tau_0", "Mpc", "conformal time today"),
 )
 
-_GROUPS = (_AXES, _AMPLITUDES, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _COMPARISON, _LANDMARKS)
+_GROUPS = (_AXES, _AMPLITUDES, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _STREAMING, _COMPARISON, _LANDMARKS)
 
 QUANTITIES = {quantity.name: quantity for group in _GROUPS for quantity in group}
 

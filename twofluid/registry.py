@@ -16,6 +16,7 @@ from twofluid.drawing import (
     scales_figure,
     shortfall_figure,
     spheres_figure,
+    streaming_figure,
 )
 from twofluid.files import FIGURE_FORMATS, figure_bytes, table_bytes
 from twofluid.products import (
@@ -32,6 +33,9 @@ from twofluid.products import (
     scales_table,
     shortfall_table,
     spheres_table,
+    streaming_spectrum_table,
+    streaming_table,
+    streaming_velocity_table,
     verdict_table,
 )
 from twofluid.report import (
@@ -42,8 +46,10 @@ from twofluid.report import (
     scales_lines,
     shortfall_lines,
     spheres_lines,
+    streaming_lines,
 )
 from twofluid.scenario import parts
+from twofluid.streaming import stream
 
 EVOLUTION = "evolution"  # the amplitudes, written whatever products are asked for
 PARTS = "parts"  # those of every independent part of a mixture, where there are several
@@ -69,6 +75,9 @@ class Product:
         of the product consists of its tables.
     drawn : mapping of str to callable
         As `tables`, for tables that only the figure is made from; they are not written.
+    prepare : callable
+        Function (history, options) -> what the tables are made from in place of the history, worked out once; for a
+        product that has to solve more than the run holds.
     """
 
     tables: Mapping[str, Callable]
@@ -77,6 +86,7 @@ class Product:
     comparison_figure: Callable | None = None
     comparison_summary: Callable | None = None
     drawn: Mapping[str, Callable] = field(default_factory=dict)
+    prepare: Callable = lambda history, options: history
 
 
 def _given(options, *names):
@@ -131,6 +141,16 @@ PRODUCTS = {
         },
         figure=shortfall_figure,
         summary=shortfall_lines,
+    ),
+    "streaming": Product(
+        tables={
+            "streaming-velocity": lambda streaming, options: streaming_velocity_table(streaming),
+            "streaming-spectrum": lambda streaming, options: streaming_spectrum_table(streaming),
+            "streaming": lambda streaming, options: streaming_table(streaming),
+        },
+        figure=streaming_figure,
+        summary=streaming_lines,
+        prepare=lambda history, options: stream(history, **options),
     ),
 }
 
@@ -190,9 +210,10 @@ def make_outputs(history):
     summary = []
     for name, options in scenario.products.items():
         product = PRODUCTS[name]
-        tables = {stem: make(history, options) for stem, make in product.tables.items()}
+        material = product.prepare(history, options)
+        tables = {stem: make(material, options) for stem, make in product.tables.items()}
         outputs |= {f"{stem}.ecsv": table_bytes(table) for stem, table in tables.items()}
-        drawn = {stem: make(history, options) for stem, make in product.drawn.items()}
+        drawn = {stem: make(material, options) for stem, make in product.drawn.items()}
         figure = product.figure(tables | drawn)
         if figure is not None:
             outputs |= {f"{name}.{form}": figure_bytes(figure, form, scenario) for form in FIGURE_FORMATS}
@@ -248,8 +269,9 @@ def comparison_tables(comparison):
     tables["courses"] = joined(lambda history: course_table(history, middle), ratios=False)
     tables["differences"] = difference_table(tables[EVOLUTION])
     for name, options in histories[0].scenario.products.items():
+        materials = [PRODUCTS[name].prepare(history, options) for history in histories]
         for stem, make in PRODUCTS[name].tables.items():
-            tables[stem] = joined(lambda history, make=make, options=options: make(history, options))
+            tables[stem] = joined_table([make(material, options) for material in materials], labels, notes)
     return tables
 
 

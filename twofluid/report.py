@@ -304,6 +304,35 @@ def _grid(table, scale, title, name, digits):
     return aligned(rows)
 
 
+def streaming_lines(tables):
+    """Return the summary of the streaming: its velocity, and the power of matter it leaves, at a few scales.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        The tables of the product, under "streaming-velocity" and "streaming".
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    velocity, streaming = tables["streaming-velocity"], tables["streaming"]
+    if "no_dark_matter" in velocity.meta:
+        return [f"  streaming: {velocity.meta['no_dark_matter']}"]
+    shown = _few(len(velocity), COLUMNS_SHOWN)
+    rows = [("  streaming", *(f"z = {velocity['redshift'][i]:g}" for i in shown))]
+    rows += [
+        (f"    {words}", *(_dash_or(velocity[name][i], "{:.4g}") for i in shown))
+        for words, name in (("rms velocity [km/s]", "rms_velocity"), ("Mach number", "mach_number"))
+    ]
+    averages = streaming[np.ma.getmaskarray(np.ma.asarray(streaming["velocity"]))]
+    lines = aligned(rows) + _grid(averages, "wavenumber", "matter power over that without", "suppression_matter", ".4f")
+    if "not_covered" in streaming.meta:
+        lines.append(f"  streaming: {streaming.meta['not_covered']}")
+    return lines
+
+
 def comparison_lines(comparison):
     """Return the head of the summary of a comparison: the scenarios, and what differs in what was put in.
 

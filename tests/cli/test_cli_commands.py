@@ -70,7 +70,10 @@ def nothing_solved(monkeypatch):
     monkeypatch.setattr(twofluid, "evolve", evolve)
 
 
-def run(*arguments):
+def run(*arguments, certificate=False):
+    """Run the program, without a certificate where nothing depends on it: that saves time."""
+    if arguments[:1] in (("run",), ("compare",)) and not certificate:
+        arguments = (*arguments, "--no-certificate")
     return cli.main([str(argument) for argument in arguments])
 
 
@@ -344,6 +347,16 @@ def test_reference_before_the_start_of_the_run_is_refused(tmp_path, out, capsys)
     check_refused(capsys, out, status, "products.growth.reference_redshift = 1e+06 must be at most", "started")
 
 
+@pytest.mark.usefixtures("nothing_solved")
+def test_options_of_the_first_have_to_suit_every_universe_compared(tmp_path, out, capsys):
+    # Many baryons recombine earlier: drag epochs at redshifts 1172 and 1055 (see the error for the second).
+    for name, density, target in (("rich", "0.14", 1100), ("poor", "0.0223", 10)):
+        text = TINY.replace("0.0223", density) + f"  shortfall: {{target_redshift: {target}}}\n"
+        (tmp_path / f"{name}.yaml").write_text(text.replace("tiny", name))
+    status = run("compare", tmp_path / "rich.yaml", tmp_path / "poor.yaml", "--out", out)
+    check_refused(capsys, out, status, "compare: products.shortfall.target_redshift = 1100 must lie between")
+
+
 def test_progress_is_drawn_on_a_terminal_and_wiped():
     from io import StringIO
 
@@ -433,3 +446,26 @@ def test_an_unknown_closure_is_refused(scenario_file, out, capsys, nothing_solve
     scenario_file.write_text(TINY + "method: {closure: sound speed}\n")
     told = "tiny.yaml:11: method.closure = sound speed: must be kinetic or sound-speed; did you mean sound-speed?"
     check_refused(capsys, out, run("run", scenario_file, "--out", out), told)
+
+
+def test_certificate_is_printed_and_stands_in_the_header(lean_file, out, capsys):
+    assert run("run", lean_file, "--out", out, certificate=True) == 0
+    assert "  numerical error of the lag ratio: " in capsys.readouterr().out
+    assert Table.read(out / "evolution.ecsv").meta["certificate"].startswith("numerical error of the lag ratio: ")
+
+
+def test_without_a_certificate_the_header_says_so(lean_file, out, capsys):
+    assert run("run", lean_file, "--out", out) == 0
+    assert "numerical error" not in capsys.readouterr().out
+    assert Table.read(out / "evolution.ecsv").meta["certificate"].startswith("none: ")
+
+
+def test_a_broken_promise_is_status_three_with_the_tables_written_and_marked(lean_file, out, capsys, monkeypatch):
+    from dataclasses import replace
+
+    from twofluid.fluids import ACCURACIES
+
+    monkeypatch.setitem(ACCURACIES, "standard", replace(ACCURACIES["standard"], promise=1e-12))
+    assert run("run", lean_file, "--out", out, certificate=True) == 3
+    assert "EXCEEDS the promised 1e-12" in capsys.readouterr().err
+    assert "EXCEEDS the promised 1e-12" in Table.read(out / "evolution.ecsv").meta["certificate"]

@@ -148,7 +148,7 @@ def test_start_is_early_enough():
 def test_oscillation_is_resolved_while_it_matters():
     universe, stepping, plan = laid_out(cosmology(), 0.3)
     tau = np.exp(plan.boundaries[: plan.steps[0] + 1, 0])
-    matters = oscillation_matters(universe, np.array([0.3]), tau, stepping)[0]
+    matters = oscillation_matters(universe, np.array([0.3]), tau, stepping, tau[-1:])[0]
     phase = 0.3 * np.diff(tau)
     assert np.all(phase[matters[1:]] <= stepping.phase_step * 1.02)  # density interpolated on its grid
     assert phase[~matters[1:] & (tau[1:] > 1000.0)].min() > stepping.phase_step
@@ -158,12 +158,22 @@ def test_oscillation_is_resolved_while_it_matters():
 def test_oscillation_matters_longer_without_dark_matter(dark, baryon):
     universe, stepping, _ = laid_out(cosmology(dark_matter_density=dark, baryon_density=baryon), 20.0)
     tau = universe.conformal_time(np.geomspace(1e-8, 1.0, 400))
-    last = 20.0 * tau[oscillation_matters(universe, np.array([20.0]), tau, stepping)[0]].max()
+    last = 20.0 * tau[oscillation_matters(universe, np.array([20.0]), tau, stepping, tau[-1:])[0]].max()
     if dark == 0.0:
         exponent = (20.0 / universe.diffusion_wavenumber(universe.scale_factor(last / 20.0))) ** 2
         assert exponent > 0.8 * stepping.diffusion_exponent
     else:
         assert last == pytest.approx(stepping.felt_phase / np.sqrt(dark / (dark + baryon)), rel=0.06)
+
+
+def test_oscillation_is_resolved_up_to_a_redshift_asked_for():
+    universe, stepping, _ = laid_out(cosmology(), 1.0)
+    tau = universe.conformal_time(np.geomspace(1e-8, 1.0, 400))
+    early = universe.conformal_time(np.array([1 / 2001.0, 1.0]))
+    plain = oscillation_matters(universe, np.array([1.0]), tau, stepping, tau[-1:])[0]
+    asked = oscillation_matters(universe, np.array([1.0]), tau, stepping, early)[0]
+    assert tau[plain].max() < 0.8 * early[0]  # its gravity is no longer felt, and it will be damped
+    assert tau[asked].max() == pytest.approx(early[0], rel=0.03)  # but here somebody looks
 
 
 def test_steps_a_mode_takes_are_bounded():

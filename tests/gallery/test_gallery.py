@@ -13,9 +13,9 @@ from twofluid.scenario import Sampling, scenario_from_mapping
 ROOT = Path(__file__).parents[2]
 GALLERY = ROOT / "figures"
 REDSHIFTS = (1000.0, 300.0, 100.0, 30.0, 10.0, 1.0, 0.0)
-# Of an amplitude, where it does not oscillate: the accuracy of the runs is 1e-4, the cubic between the steps of
-# the table is as good.
-TOLERANCE = 1e-3
+# Of an amplitude, where it does not oscillate: straight lines in the logarithm between steps of up to 0.3 in ln a;
+# the runs themselves are good to 1e-4.
+TOLERANCE = 5e-3
 
 
 @pytest.fixture(scope="module")

@@ -68,6 +68,9 @@ VALUES = {
     "products.shortfall.target_redshift": "7",
     "products.shortfall.radii": "[2 Mpc]",
     "products.shortfall.masses": "[1e9 solMass]",
+    "products.streaming": "",
+    "products.streaming.from_redshift": "900",
+    "products.streaming.velocities": "[0.5, 1]",
 }
 
 NO_PRODUCTS = dict.fromkeys(path for path in VALUES if path.startswith("products."))  # as changes: all lines left out

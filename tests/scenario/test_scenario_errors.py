@@ -205,6 +205,8 @@ def test_an_absurdly_long_unit_is_refused_unread():
         ("products.growth.reference_redshift", "-0.5", "from 0 to 1e+06"),
         ("products.growth.reference_redshift", "1000001", "from 0 to 1e+06"),
         ("products.shortfall.target_redshift", "-1", "from 0 to 1e+06"),
+        ("products.streaming.from_redshift", "9.9", "from 10 to 2000"),
+        ("products.streaming.from_redshift", "2001", "from 10 to 2000"),
     ],
 )
 def test_each_range_ends(path, value, allowed):
@@ -221,6 +223,7 @@ def test_each_range_ends(path, value, allowed):
         ("products.spheres.radii", "[1 Mpc, 0 Mpc]", "0 Mpc"),
         ("products.spheres.radii", "[1 Mpc, 20 Gpc]", "20 Gpc"),
         ("products.spheres.masses", "[-1 solMass]", "-1 solMass"),
+        ("products.streaming.velocities", "[0, 5.1]", "5.1"),
     ],
 )
 def test_each_range_ends_inside_lists(path, items, value):

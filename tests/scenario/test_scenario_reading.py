@@ -62,6 +62,7 @@ def test_every_key_reaches_its_field():
             "growth": {"reference_redshift": 100.0},
             "spheres": {"radii": (1.0, 3.0), "masses": (1e6,)},
             "shortfall": {"target_redshift": 7.0, "radii": (2.0,), "masses": (1e9,)},
+            "streaming": {"from_redshift": 900.0, "velocities": (0.5, 1.0)},
         },
         method=Method("sound-speed", "reference"),
     )

@@ -179,13 +179,15 @@ def safe_label(text):
     return text.replace("$", r"\$")
 
 
-def label_curves(axes):
+def label_curves(axes, margin=False):
     """Write each curve's label: on the curves where they lie far enough apart, else in the right margin.
 
     Parameters
     ----------
     axes : matplotlib.axes.Axes
         Axes whose lines carry labels; limits must be final.
+    margin : bool
+        Whether to leave the curves whole and write in the margin anyway.
     """
     lines = [line for line in axes.get_lines() if not line.get_label().startswith("_")]
     lines = [line for line in lines if np.isfinite(line.get_ydata()).any()]
@@ -195,7 +197,7 @@ def label_curves(axes):
     rows = place.get_gridspec().nrows if place else 1
     pitch = LABEL_PITCH * rows / (72 * axes.figure.get_figheight() * AXES_SHARE)
     to_fraction = axes.transData + axes.transAxes.inverted()
-    place = _apart(lines, to_fraction, pitch)
+    place = None if margin else _apart(lines, to_fraction, pitch)
     if place is None:
         _label_in_margin(axes, lines, to_fraction, pitch)
         return

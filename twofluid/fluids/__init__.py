@@ -2,6 +2,7 @@
 
 from .closures import CLOSURES, MIXTURE_CLOSURES
 from .kinetic import ChainLengths, KineticSystem
+from .patch import PatchSystem
 from .resolution import ACCURACIES, Resolution, resolution_for
 from .sound_speed import SoundSpeedSystem
 from .start import adiabatic, mixed, start_time
@@ -13,6 +14,7 @@ __all__ = [
     "MIXTURE_CLOSURES",
     "ChainLengths",
     "KineticSystem",
+    "PatchSystem",
     "Resolution",
     "SoundSpeedSystem",
     "Stepping",

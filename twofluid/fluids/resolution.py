@@ -83,19 +83,19 @@ def _resolution(steps: tuple, exponent: float, felt_phase: float, chains: tuple)
 #: change of the scattering rate and the phase of an oscillation. Chains: photon, polarization, neutrino.
 ACCURACIES = {
     "draft": Accuracy(
-        promise=2e-3,
+        promise=3e-3,
         dark_ruled=_resolution((0.8, 0.3, 0.4, 0.8, 2.0), 15.0, 80.0, (7, 7, 9)),
-        baryon_ruled=_resolution((0.4, 0.15, 0.2, 0.8, 1.0), 25.0, 200.0, (12, 12, 18)),
+        baryon_ruled=_resolution((0.4, 0.15, 0.2, 0.8, 1.0), 25.0, 200.0, (16, 16, 18)),
     ),
     "standard": Accuracy(
-        promise=2e-4,
+        promise=3e-4,
         dark_ruled=_resolution((0.6, 0.2, 0.3, 0.4, 1.3), 20.0, 120.0, (10, 10, 12)),
-        baryon_ruled=_resolution((0.2, 0.05, 0.1, 0.5, 0.6), 30.0, 300.0, (16, 16, 24)),
+        baryon_ruled=_resolution((0.2, 0.05, 0.1, 0.5, 0.6), 30.0, 300.0, (22, 22, 24)),
     ),
     "reference": Accuracy(
-        promise=3e-5,
+        promise=5e-5,
         dark_ruled=_resolution((0.2, 0.08, 0.1, 0.2, 0.6), 30.0, 300.0, (16, 16, 28)),
-        baryon_ruled=_resolution((0.1, 0.03, 0.05, 0.25, 0.35), 40.0, 500.0, (22, 22, 36)),
+        baryon_ruled=_resolution((0.1, 0.03, 0.05, 0.25, 0.35), 40.0, 500.0, (28, 28, 36)),
     ),
 }
 

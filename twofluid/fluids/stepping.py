@@ -7,7 +7,8 @@ matters. Once it no longer does it is left unresolved and the method damps it. I
 * diffusion has not yet damped it, (k / k_D)^2 < `Stepping.diffusion_exponent`, and
 * photons still push baryons, r kappa' > `Stepping.drag_ratio` times the expansion rate, and
 * its gravity is felt, k tau < `Stepping.felt_phase` / sqrt(dark-matter fraction), or diffusion
-  will not have damped it when the baryons are released. Without dark matter there is no such bound.
+  will not have damped it when the baryons are released, or at a later time that is asked for.
+  Without dark matter there is no such bound.
 """
 
 from dataclasses import dataclass, replace
@@ -87,11 +88,13 @@ def clock(
     grid = last - np.arange(nodes)[::-1] / NODES_PER_UNIT  # hung up at its end: the same for every choice of modes
     time = np.exp(grid)
     time[-1] = marks[-1]
-    density = step_density(universe, wavenumber, time, stepping)
+    density = step_density(universe, wavenumber, time, stepping, marks)
     return lay_out(grid, density, np.log(start), np.log(marks))
 
 
-def step_density(universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping) -> np.ndarray:
+def step_density(
+    universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping, asked: np.ndarray
+) -> np.ndarray:
     """Give the steps wanted per unit of log conformal time.
 
     Parameters
@@ -102,6 +105,8 @@ def step_density(universe: Universe, wavenumber: np.ndarray, time: np.ndarray, s
     time : array, shape (node,)
         Increasing conformal times [Mpc].
     stepping : Stepping
+    asked : array, shape (mark,)
+        Conformal times asked for [Mpc].
 
     Returns
     -------
@@ -114,7 +119,7 @@ def step_density(universe: Universe, wavenumber: np.ndarray, time: np.ndarray, s
     quiet = np.where(_pushed(now, stepping), stepping.smooth_step, stepping.free_step)
     smooth = per_expansion / quiet + change / stepping.scattering_change
     phase = wavenumber[:, None] * time
-    matters = oscillation_matters(universe, wavenumber, time, stepping)
+    matters = oscillation_matters(universe, wavenumber, time, stepping, asked)
     inside = np.where(matters, np.hypot(smooth, phase / stepping.phase_step), smooth)
     return np.where(phase < FAR_OUTSIDE, per_expansion / stepping.outside_step, inside)
 
@@ -125,7 +130,7 @@ def _pushed(now: Conditions, stepping: Stepping) -> np.ndarray:
 
 
 def oscillation_matters(
-    universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping
+    universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping, asked: np.ndarray
 ) -> np.ndarray:
     """Whether the acoustic oscillation of a mode still has to be resolved; see the module's text.
 
@@ -137,6 +142,8 @@ def oscillation_matters(
     time : array, shape (node,)
         Increasing conformal times [Mpc].
     stepping : Stepping
+    asked : array, shape (mark,)
+        Conformal times asked for [Mpc].
 
     Returns
     -------
@@ -145,9 +152,10 @@ def oscillation_matters(
     now = universe.conditions(time)
     pushed = _pushed(now, stepping)
     exponent = (wavenumber[:, None] / universe.diffusion_wavenumber(now.scale_factor)) ** 2
-    alive = exponent < stepping.diffusion_exponent
-    at_release = exponent[:, np.flatnonzero(pushed)[-1]] if pushed.any() else exponent[:, 0]
-    survives = at_release < stepping.diffusion_exponent
+    alive = pushed & (exponent < stepping.diffusion_exponent)
+    release = time[pushed][-1] if pushed.any() else time[0]
+    seen = alive[:, np.searchsorted(time, np.append(asked[asked < release], release)).clip(max=len(time) - 1)]
+    last_seen = np.max(np.where(seen, np.append(asked[asked < release], release), 0.0), axis=1)
     dark_fraction = now.gravity_dark[0] / (now.gravity_dark[0] + now.gravity_baryon[0])
     felt = wavenumber[:, None] * time * np.sqrt(dark_fraction) < stepping.felt_phase
-    return alive & pushed & (felt | survives[:, None])
+    return alive & (felt | (time <= last_seen[:, None]))

@@ -8,6 +8,7 @@ from twofluid.products.requirements import check_products
 from twofluid.products.scales import map_redshifts, scales_table
 from twofluid.products.shortfall import contrast_table, shortfall_table
 from twofluid.products.spheres import sigma_8, spheres_table
+from twofluid.products.streaming import streaming_spectrum_table, streaming_table, streaming_velocity_table
 from twofluid.products.verdict import verdict_table
 
 __all__ = [
@@ -26,5 +27,8 @@ __all__ = [
     "shortfall_table",
     "sigma_8",
     "spheres_table",
+    "streaming_spectrum_table",
+    "streaming_table",
+    "streaming_velocity_table",
     "verdict_table",
 ]

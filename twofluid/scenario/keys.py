@@ -14,6 +14,7 @@ MOST_WAVENUMBERS = 100_000  # longest list of modes; keeps a slip of the pen fro
 MOST_REDSHIFTS = 1_000  # longest list of redshifts; the same reason
 MOST_FRACTIONS = 100  # longest list of fractions of one product; the same reason
 MOST_SPHERES = 100  # longest list of radii or masses of one product; the same reason
+MOST_VELOCITIES = 20  # longest list of streaming velocities; the same reason
 
 
 def section_of(path):
@@ -142,6 +143,7 @@ SECTIONS = {
     "products.growth": "growth of dark matter, baryons and matter since an epoch, and growth rates",
     "products.spheres": "rms contrast in spheres",
     "products.shortfall": "contrast at decoupling against what order unity by a target redshift takes",
+    "products.streaming": "velocity of baryons relative to dark matter, and what it does to growth on small scales",
 }
 
 #: Sections whose keys are not filled in where the file does not have them.
@@ -226,7 +228,7 @@ KEYS = (
         "equations: photons and neutrinos by their full chains of moments, or a plasma with an effective sound speed",
         choices=("kinetic", "sound-speed"), default="kinetic", example="kinetic"),
     Key("method.accuracy", Kind.CHOICE,
-        "step and chain settings: numerical error of the contrasts below 2e-3, 2e-4 or 3e-5",
+        "step and chain settings: numerical error of the contrasts below 3e-3, 3e-4 or 5e-5",
         choices=("draft", "standard", "reference"), default="standard", example="standard"),
     Key("products.lag.fractions", Kind.NUMBERS,
         "ratios of baryon to dark-matter amplitude whose redshift is wanted",
@@ -259,6 +261,11 @@ KEYS = (
     Key("products.shortfall.masses", Kind.QUANTITIES, "mean masses of spheres to follow beside the waves",
         unit="solMass", allowed=_MASS_LIMITS, example="[1e6 solMass, 1e8 solMass]", longest=MOST_SPHERES,
         longest_reason=_TOO_MANY_SPHERES, unsaid="none"),
+    Key("products.streaming.from_redshift", Kind.NUMBER, "redshift at which patches of uniform streaming start",
+        allowed=Allowed(10, 2000), default=1000.0, example="1000"),
+    Key("products.streaming.velocities", Kind.NUMBERS, "streaming velocities of patches, in units of the rms",
+        allowed=Allowed(0, 5), default=(0.0, 1.0, 2.0), longest=MOST_VELOCITIES,
+        longest_reason="more velocities are not tabulated in one run", example="[0, 1, 2]"),
 )  # fmt: skip
 
 KEY_AT = {key.path: key for key in KEYS}
