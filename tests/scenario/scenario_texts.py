@@ -75,6 +75,8 @@ VALUES = {
 
 NO_PRODUCTS = dict.fromkeys(path for path in VALUES if path.startswith("products."))  # as changes: all lines left out
 
+NO_MIXTURE = dict.fromkeys(path for path in VALUES if path.startswith("primordial.mixture"))
+
 
 def full_text(changes=None, names=None):
     """Write the scenario, some values or names changed; a value of None leaves the line out."""
