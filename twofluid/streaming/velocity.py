@@ -130,7 +130,7 @@ def find_wind(run: History, redshift) -> Wind:
     redshift = np.asarray(redshift, dtype=float)
     primordial = run.scenario.primordial
     power = primordial.amplitude * (k / primordial.pivot) ** (primordial.tilt - 1.0)
-    spectrum = power[:, None] * (run.at("theta_baryon", redshift) / k[:, None]) ** 2
+    spectrum = power[:, None] * sum((part.at("theta_baryon", redshift) / k[:, None]) ** 2 for part in run.parts)
     variance = _integral(k, spectrum)
     coarse = _integral(k[::2], spectrum[::2])
     missing = _beyond(k, spectrum, (0, 2)) + _beyond(k, spectrum, (-1, -3)) + np.abs(coarse - variance)
