@@ -187,6 +187,7 @@ def released(law):
         gravity=lambda species, a: 12 / a if species == "dark" else 0.0,
     )
     return SimpleNamespace(
+        initial_modes="adiabatic",
         universe=smooth,
         wavenumber=K * kappa,
         has_dark_matter=True,

@@ -117,7 +117,8 @@ def test_the_error_covers_a_wider_and_denser_run(make_scenario, windy, wind):
 
 def replace_modes(run, chosen):
     """Return a run of some of its modes."""
-    trace = replace(run.trace, **{name: values[chosen] for name, values in vars(run.trace).items()})
+    courses = {name: values[chosen] for name, values in vars(run.trace).items() if values is not None}
+    trace = replace(run.trace, **courses)
     return replace(run, wavenumber=run.wavenumber[chosen], trace=trace)
 
 
