@@ -117,8 +117,8 @@ def test_the_error_covers_a_wider_and_denser_run(make_scenario, windy, wind):
 
 def replace_modes(run, chosen):
     """Return a run of some of its modes."""
-    courses = {name: values[chosen] for name, values in vars(run.trace).items() if values is not None}
-    trace = replace(run.trace, **courses)
+    followed = {name: values[chosen] for name, values in vars(run.trace).items() if values is not None}
+    trace = replace(run.trace, **followed)
     return replace(run, wavenumber=run.wavenumber[chosen], trace=trace)
 
 
@@ -132,6 +132,17 @@ def test_wind_scales_with_the_primordial_amplitude(windy, wind):
     scenario = replace(windy.scenario, primordial=replace(windy.scenario.primordial, amplitude=4 * 2.1e-9))
     louder = find_wind(replace(windy, scenario=scenario), windy.redshift)
     assert louder.rms == pytest.approx(2.0 * wind.rms, rel=1e-12)
+
+
+def test_velocity_of_the_dark_matter_is_taken_off(windy, wind):
+    # Dark matter that goes half the way with the gas leaves half of the velocity.
+    trace = replace(
+        windy.trace,
+        theta_dark=0.5 * windy.trace.theta_baryon,
+        theta_dark_slope=0.5 * windy.trace.theta_baryon_slope,
+    )
+    moving = replace(windy, trace=trace, theta_dark=0.5 * windy.theta_baryon)
+    assert find_wind(moving, windy.redshift).rms == pytest.approx(0.5 * wind.rms, rel=1e-9)
 
 
 def test_the_wavenumbers_are_a_grid():
