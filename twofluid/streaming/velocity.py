@@ -1,6 +1,7 @@
 """The streaming velocity: how fast baryons move through the dark matter, and over which distance together.
 
-In the frame of a run, at rest with the dark matter, the velocity of the baryons is the relative one:
+In the frame of a run, at rest with the dark matter, the velocity of the baryons is the relative one (where the dark
+matter has pressure and moves too, its own is taken off):
 ``|v| = |theta_baryon|/k`` per unit curvature, by conformal time, which is the proper peculiar velocity in units of c
 (comoving way by conformal time and proper way by cosmic time differ by the same factor a). Its variance is
 
@@ -130,7 +131,10 @@ def find_wind(run: History, redshift) -> Wind:
     redshift = np.asarray(redshift, dtype=float)
     primordial = run.scenario.primordial
     power = primordial.amplitude * (k / primordial.pivot) ** (primordial.tilt - 1.0)
-    spectrum = power[:, None] * (run.at("theta_baryon", redshift) / k[:, None]) ** 2
+    theta = run.at("theta_baryon", redshift)
+    if run.theta_dark is not None:
+        theta = theta - run.at("theta_dark", redshift)
+    spectrum = power[:, None] * (theta / k[:, None]) ** 2
     variance = _integral(k, spectrum)
     coarse = _integral(k[::2], spectrum[::2])
     missing = _beyond(k, spectrum, (0, 2)) + _beyond(k, spectrum, (-1, -3)) + np.abs(coarse - variance)
