@@ -1,5 +1,6 @@
 """The result of a run: amplitudes on (mode, redshift) axes, interpolation, saving and loading."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field, fields
 from pathlib import Path
 
@@ -53,7 +54,13 @@ class History:
     """What became of each mode.
 
     Synchronous frame at rest with the dark matter or, where that has pressure, with cold dust of no mass that
-    started with it; unit primordial comoving curvature; signs such that densities grow positive.
+    started with it; unit primordial comoving curvature, with a mixture of initial modes in units of the square
+    root of the primordial power; signs such that densities grow positive.
+
+    Where a mixture has independent parts, amplitudes say what two random fields have in common: the dark matter (with
+    none, the baryons) has its rms amplitude, and any other quantity X the amplitude <X delta_dark>/rms(delta_dark) of
+    what goes along with it. The ratio of the contrasts is then the cross-power over the power of the dark
+    matter. What an amplitude leaves out is in `parts`.
 
     Attributes
     ----------
@@ -85,6 +92,10 @@ class History:
         Estimated numerical error, once `twofluid.certify` has worked it out.
     theta_dark : array, shape (mode, redshift), or None
         Velocity divergence of the dark matter relative to the frame, where it has pressure [1/Mpc].
+    initial_modes : str
+        The initial modes that follow one random field, joined by plus signs; of independent parts, by commas.
+    independent_parts : tuple of History
+        What became of each independent part of a mixture; empty if there is but one.
     """
 
     scenario: Scenario
@@ -101,11 +112,18 @@ class History:
     warnings: tuple[str, ...] = field(default=())
     certificate: Certificate | None = None
     theta_dark: np.ndarray | None = None
+    initial_modes: str = "adiabatic"
+    independent_parts: tuple["History", ...] = ()
 
     @property
     def evolved(self) -> tuple[str, ...]:
         """Names of the quantities this history carries."""
         return EVOLVED if self.theta_dark is None else (*EVOLVED, *MOVING_DARK)
+
+    @property
+    def parts(self) -> tuple["History", ...]:
+        """Histories of definite amplitudes whose powers add up to that of this one; itself, if it is definite."""
+        return self.independent_parts or (self,)
 
     @property
     def has_dark_matter(self) -> bool:
@@ -189,9 +207,9 @@ class History:
         """
         import yaml
 
-        arrays = {name: getattr(self, name) for name in (*self.evolved, "wavenumber", "redshift", "constraint")}
-        trace = {f"trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
-        arrays |= {name: array for name, array in trace.items() if array is not None}
+        arrays = {name: getattr(self, name) for name in ("wavenumber", "redshift")}
+        for number, part in enumerate((self, *self.independent_parts)):
+            arrays |= part._own_arrays(_prefix(number))
         if self.certificate is not None:
             arrays |= {f"certificate_{part.name}": getattr(self.certificate, part.name) for part in fields(Certificate)}
         words = {
@@ -200,9 +218,16 @@ class History:
             "assumed": list(self.scenario.assumed),
             "counts": self.counts,
             "warnings": list(self.warnings),
+            "initial_modes": [part.initial_modes for part in (self, *self.independent_parts)],
         }
         with replace_atomically(path) as stream:
             np.savez_compressed(stream, words=np.array(yaml.safe_dump(words)), **arrays)
+
+    def _own_arrays(self, prefix: str) -> dict[str, np.ndarray]:
+        """Return what a history does not share with its parts, by the names in an archive."""
+        arrays = {f"{prefix}{name}": getattr(self, name) for name in (*self.evolved, "constraint")}
+        arrays |= {f"{prefix}trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
+        return {name: array for name, array in arrays.items() if array is not None}
 
 
 def load_history(path) -> History:
@@ -234,19 +259,83 @@ def load_history(path) -> History:
     if words["format"] != _FORMAT:
         raise ValueError(f"{path} has layout {words['format']}, this version reads layout {_FORMAT}: run it again")
     scenario = replace(scenario_from_mapping(words["scenario"]), assumed=tuple(words["assumed"]))
-    trace = Trace(**{part.name: arrays.pop(f"trace_{part.name}", None) for part in fields(Trace)})
     certificate = None
     if "certificate_promise" in arrays:
         certificate = Certificate(**{part.name: arrays.pop(f"certificate_{part.name}") for part in fields(Certificate)})
-    return History(
-        scenario=scenario,
-        universe=Universe(scenario.cosmology),
-        trace=trace,
-        counts=words["counts"],
-        warnings=tuple(words["warnings"]),
-        certificate=certificate,
-        **arrays,
+    common = {
+        "scenario": scenario,
+        "universe": Universe(scenario.cosmology),
+        "wavenumber": arrays["wavenumber"],
+        "redshift": arrays["redshift"],
+        "counts": words["counts"],
+        "warnings": tuple(words["warnings"]),
+    }
+    whole, *parts = (
+        History(**common, **_own(arrays, _prefix(number)), initial_modes=modes)
+        for number, modes in enumerate(words.get("initial_modes", ["adiabatic"]))
     )
+    return replace(whole, certificate=certificate, independent_parts=tuple(parts))
+
+
+def history_of_parts(parts: Sequence[History]) -> History:
+    """Sum up the histories of independent random fields; see `History`.
+
+    Parameters
+    ----------
+    parts : sequence of History
+        Of definite amplitudes, at the same wavenumbers and redshifts and with the same steps.
+
+    Returns
+    -------
+    History
+        The only part itself, if there is but one.
+    """
+    from dataclasses import replace
+
+    if len(parts) == 1:
+        return parts[0]
+    lead = "delta_dark" if parts[0].has_dark_matter else "delta_baryon"
+    turning, turn = _directions(_gather(parts, lead), _gather(parts, lead, "_slope"))
+    fixed, _ = _directions(np.stack([getattr(part, lead) for part in parts]))
+    courses, amplitudes = {}, {}
+    for name in parts[0].evolved:
+        course, slope = _gather(parts, name), _gather(parts, name, "_slope")
+        courses[name] = (course * turning).sum(axis=0)
+        courses[name + "_slope"] = (slope * turning + course * turn).sum(axis=0)
+        amplitudes[name] = (np.stack([getattr(part, name) for part in parts]) * fixed).sum(axis=0)
+    return replace(
+        parts[0],
+        **amplitudes,
+        trace=replace(parts[0].trace, **courses),
+        constraint=np.max([part.constraint for part in parts], axis=0),
+        initial_modes=", ".join(part.initial_modes for part in parts),
+        independent_parts=tuple(parts),
+    )
+
+
+def _gather(parts: Sequence[History], name: str, suffix: str = "") -> np.ndarray:
+    """Courses of a quantity in every part, shape (part, mode, step)."""
+    return np.stack([getattr(part.trace, name + suffix) for part in parts])
+
+
+def _directions(lead: np.ndarray, slope: np.ndarray | None = None) -> tuple[np.ndarray, np.ndarray | None]:
+    """Return the unit vector along the leading quantity in the space of the parts, first axis, and its derivative."""
+    rms = np.sqrt((lead**2).sum(axis=0))
+    safe = np.where(rms > 0.0, rms, 1.0)
+    unit = lead / safe
+    return unit, None if slope is None else (slope - unit * (unit * slope).sum(axis=0)) / safe
+
+
+def _prefix(number: int) -> str:
+    """Return what the names of the arrays of a part begin with in an archive; number 0 is the whole."""
+    return f"part{number}_" if number else ""
+
+
+def _own(arrays: dict[str, np.ndarray], prefix: str) -> dict:
+    """Take from an archive what a history does not share with its parts; see `History._own_arrays`."""
+    trace = Trace(**{part.name: arrays.get(f"{prefix}trace_{part.name}") for part in fields(Trace)})
+    names = (name for name in (*EVOLVED, *MOVING_DARK, "constraint") if prefix + name in arrays)
+    return {"trace": trace, **{name: arrays[prefix + name] for name in names}}
 
 
 def _hermite(

@@ -55,6 +55,10 @@ _AMPLITUDES = (
              "per unit comoving curvature"),
 )
 
+_MIXTURE = (
+    Quantity("part", r"\mathrm{part}", "", "initial modes that follow one random field, joined by plus signs"),
+)
+
 _LAG = (
     Quantity("ratio", r"\delta_\mathrm{b}/\delta_\mathrm{c}", "",
              "baryon over dark-matter density contrast; empty: no dark matter"),

@@ -7,6 +7,7 @@ from dataclasses import asdict
 import numpy as np
 
 from twofluid.quantities import QUANTITIES
+from twofluid.scenario import mixture_lines
 
 SCALES_SHOWN = 5  # wavenumbers in a summary
 COLUMNS_SHOWN = 6  # redshifts or fractions in a summary
@@ -84,6 +85,7 @@ def check_lines(scenario, universe):
     return [
         scenario.title,
         f"  asks for  {_request(scenario)}; {', '.join(scenario.products) or 'no products'}",
+        *_mixture_lines(scenario.primordial),
         *(f"  {'assumes' if number == 0 else '':7}   {text}" for number, text in enumerate(assumed)),
         "",
         *(f"  {line}" for line in landmark_lines(universe.landmarks)),
@@ -109,9 +111,16 @@ def run_lines(history):
         for name in LANDMARKS_IN_SUMMARY
     ]
     lines = [history.scenario.title, f"  {_request(history.scenario)}", f"  {', '.join(marks)}"]
+    lines += _mixture_lines(history.scenario.primordial)
     if history.certificate is not None:
         lines += [f"  {part}" for part in history.certificate.sentence().split("; ", maxsplit=2)]
     return lines
+
+
+def _mixture_lines(primordial):
+    """Return a line for each initial mode of a mixture."""
+    lines = mixture_lines(primordial)
+    return [f"  {'starts' if number == 0 else '':7}   {text}" for number, text in enumerate(lines)]
 
 
 def lag_lines(tables):

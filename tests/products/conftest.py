@@ -33,11 +33,12 @@ def make_history():
             return np.array([curve[part](where) for curve in curves], dtype=float)
 
         at_redshift = [sampled(dark, 0, log_a), sampled(baryon, 0, log_a)]
-        return SimpleNamespace(
+        history = SimpleNamespace(
             scenario=SimpleNamespace(
                 to_mapping=lambda: {"title": "Saltmarsh test"},
                 assumptions=lambda: ("primordial.tilt = 0.965",),
                 method=SimpleNamespace(closure="kinetic"),
+                primordial=Primordial(),
             ),
             universe=SimpleNamespace(
                 age=lambda a: AGE_TODAY * a**1.5,  # Einstein-de Sitter
@@ -62,6 +63,8 @@ def make_history():
                 delta_baryon_slope=sampled(baryon, 1, knots),
             ),
         )
+        history.parts = (history,)
+        return history
 
     return make
 
@@ -160,7 +163,7 @@ def make_up_run():
             delta_gas_temperature=nothing, delta_gas_temperature_slope=nothing,
         )  # fmt: skip
         log_a = -np.log1p(np.asarray(redshift, dtype=float))
-        return SimpleNamespace(
+        history = SimpleNamespace(
             theta_dark=None,
             evolved=EVOLVED,
             scenario=scenario,
@@ -177,6 +180,8 @@ def make_up_run():
             at=lambda name, z: between(trace, name, z)[0],
             slope_at=lambda name, z: between(trace, name, z)[1],
         )
+        history.parts = (history,)
+        return history
 
     def between(trace, name, redshift):
         """Value and slope by an interpolation that is not ours."""

@@ -25,6 +25,28 @@ VALUES = {
     "primordial.amplitude": "2e-9",
     "primordial.tilt": "0.96",
     "primordial.pivot": "0.002 1/Mpc",
+    "primordial.mixture": "",
+    "primordial.mixture.adiabatic": "0.5",
+    "primordial.mixture.baryon": "",
+    "primordial.mixture.baryon.ratio": "0",
+    "primordial.mixture.baryon.correlation": "-0.5",
+    "primordial.mixture.baryon.tilt": "0.9",
+    "primordial.mixture.dark_matter": "",
+    "primordial.mixture.dark_matter.ratio": "0",
+    "primordial.mixture.dark_matter.correlation": "-0.25",
+    "primordial.mixture.dark_matter.tilt": "1",
+    "primordial.mixture.neutrino_density": "",
+    "primordial.mixture.neutrino_density.ratio": "0",
+    "primordial.mixture.neutrino_density.correlation": "0",
+    "primordial.mixture.neutrino_density.tilt": "1.1",
+    "primordial.mixture.neutrino_velocity": "",
+    "primordial.mixture.neutrino_velocity.ratio": "0",
+    "primordial.mixture.neutrino_velocity.correlation": "0.25",
+    "primordial.mixture.neutrino_velocity.tilt": "1.2",
+    "primordial.mixture.compensated": "",
+    "primordial.mixture.compensated.ratio": "0",
+    "primordial.mixture.compensated.correlation": "0.5",
+    "primordial.mixture.compensated.tilt": "1.3",
     "sampling": "",
     "sampling.wavenumbers": "",
     "sampling.wavenumbers.from": "0.01 1/Mpc",
@@ -56,6 +78,8 @@ VALUES = {
 }
 
 NO_PRODUCTS = dict.fromkeys(path for path in VALUES if path.startswith("products."))  # as changes: all lines left out
+
+NO_MIXTURE = dict.fromkeys(path for path in VALUES if path.startswith("primordial.mixture"))
 
 
 def full_text(changes=None, names=None):

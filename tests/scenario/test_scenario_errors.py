@@ -45,7 +45,7 @@ def test_each_key_misspelt_once_gets_its_name_offered(path):
 
 def test_an_unlike_key_gets_the_list_of_keys():
     error = refusal(full_text(names={"primordial.tilt": "zzz"}))
-    assert error.remedy == "known in `primordial`: amplitude, tilt, pivot"
+    assert error.remedy == "known in `primordial`: amplitude, tilt, pivot, mixture"
 
 
 def test_a_key_in_the_wrong_section_is_sent_home():

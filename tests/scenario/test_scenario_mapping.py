@@ -1,5 +1,6 @@
 """The way out and back: mapping, YAML, template, key table and the shipped scenarios."""
 
+import re
 from dataclasses import FrozenInstanceError, replace
 from pathlib import Path
 
@@ -16,6 +17,7 @@ from twofluid.scenario import (
     Sampling,
     Scenario,
     ScenarioError,
+    Share,
     key_table_markdown,
     parse_scenario,
     read_scenario,
@@ -23,7 +25,7 @@ from twofluid.scenario import (
     scenario_template,
 )
 from twofluid.scenario.document import entry_from_text
-from twofluid.scenario.keys import BASE, DEFAULT_PRODUCTS, KEY_AT, KEYS, SECTIONS, Kind
+from twofluid.scenario.keys import BASE, DEFAULT_PRODUCTS, INITIAL_MODES, KEY_AT, KEYS, MIXTURE, SECTIONS, Kind
 from twofluid.scenario.values import read_value
 
 SHIPPED = sorted((Path(__file__).parents[2] / "scenarios").glob("*.yaml"))
@@ -169,7 +171,11 @@ def test_the_template_shows_every_product():
     assert {f"products.{name}" for name in products} == {path for path in SECTIONS if path.startswith("products.")}
 
 
-NO_DEFAULT = [key for key in KEYS if key.default is None and not key.required and key.kind is not Kind.TEXT]
+# The section of the mixture is commented out as a whole: being there it means something.
+NO_DEFAULT = [
+    key for key in KEYS
+    if key.default is None and not key.required and key.kind is not Kind.TEXT and not key.path.startswith(MIXTURE)
+]  # fmt: skip
 
 
 def test_the_template_assumes_only_what_has_no_fixed_default():
@@ -195,6 +201,16 @@ def test_the_commented_keys_of_the_template_are_valid_too():
     scenario = parse_scenario(text)
     assert scenario.assumed == ()
     assert scenario.cosmology.curvature_fraction == 0.01
+
+
+def test_the_commented_mixture_of_the_template_is_valid_too():
+    before, rest = scenario_template().split("  # mixture:\n")
+    inside, after = rest.split("\n# where the answer is wanted")
+    keys = r"^( *)# ((?:adiabatic|ratio|correlation|tilt|" + "|".join(INITIAL_MODES) + "):)"
+    text = before + "  mixture:\n" + re.sub(keys, r"\1\2", inside, flags=re.MULTILINE) + after
+    mixture = parse_scenario(text).primordial.mixture
+    assert mixture.shares == dict.fromkeys(INITIAL_MODES, Share(0.1, correlation=0.0, tilt=0.965))
+    assert mixture.adiabatic == 1.0
 
 
 @pytest.mark.parametrize("key", KEYS, ids=lambda key: key.path)
@@ -245,6 +261,7 @@ def test_the_minimal_scenario_has_only_required_keys():
     scenario = read_scenario(next(path for path in SHIPPED if "minimal" in path.name))
     made = tuple(f"products.{product}." for product in DEFAULT_PRODUCTS)
     optional = {
-        key.path for key in KEYS if not key.required and (key.path.startswith(made) or "products" not in key.path)
+        key.path for key in KEYS
+        if not key.required and (key.path.startswith(made) or not key.path.startswith(("products", MIXTURE)))
     }
     assert set(scenario.assumed) == optional

@@ -2,16 +2,18 @@
 
 import pytest
 from astropy import units
-from scenario_texts import NO_PRODUCTS, VALUES, full_text, wavenumber_text
+from scenario_texts import NO_MIXTURE, NO_PRODUCTS, VALUES, full_text, wavenumber_text
 
 from twofluid.scenario import (
     Cosmology,
     DarkMatter,
     Method,
+    Mixture,
     Neutrinos,
     Primordial,
     Sampling,
     Scenario,
+    Share,
     parse_scenario,
     values,
 )
@@ -42,7 +44,19 @@ def test_every_key_reaches_its_field():
             cosmological_constant_fraction=0.7,
             dark_matter=DarkMatter(sound_speed=0.002, at_redshift=100.0, scaling=0.5),
         ),
-        primordial=Primordial(amplitude=2e-9, tilt=0.96, pivot=0.002),
+        primordial=Primordial(
+            amplitude=2e-9,
+            tilt=0.96,
+            pivot=0.002,
+            mixture=Mixture(
+                adiabatic=0.5,
+                baryon=Share(0.0, correlation=-0.5, tilt=0.9),
+                dark_matter=Share(0.0, correlation=-0.25, tilt=1.0),
+                neutrino_density=Share(0.0, correlation=0.0, tilt=1.1),
+                neutrino_velocity=Share(0.0, correlation=0.25, tilt=1.2),
+                compensated=Share(0.0, correlation=0.5, tilt=1.3),
+            ),
+        ),
         sampling=Sampling(wavenumbers=wavenumbers, redshifts=(1000.0, 100.0, 10.0)),
         products={
             "lag": {"fractions": (0.5, 0.9)},
@@ -77,7 +91,7 @@ def test_defaults_fill_what_is_left_out_and_are_named():
         "sampling.redshifts",
     }
     not_made = set(NO_PRODUCTS) - {"products.lag.fractions"}
-    leaves = {path for path, value in VALUES.items() if value} - required - not_made
+    leaves = {path for path, value in VALUES.items() if value} - required - not_made - set(NO_MIXTURE)
     assert set(scenario.assumed) == {path for path in leaves if "wavenumbers" not in path}
     assert len(scenario.assumed) == len(set(scenario.assumed))
 
@@ -111,8 +125,9 @@ def test_dataclass_defaults_are_those_of_the_reader():
 def test_an_empty_section_stands_at_its_defaults(section, empty):
     inner = dict.fromkeys(path for path in VALUES if path.startswith(section + "."))
     scenario = reread({section: empty, **inner})
-    assert set(scenario.assumed) == set(inner)
-    assert scenario.primordial == (Primordial() if section == "primordial" else Primordial(2e-9, 0.96, 0.002))
+    assert set(scenario.assumed) == set(inner) - set(NO_MIXTURE)
+    written = parse_scenario(full_text()).primordial
+    assert scenario.primordial == (Primordial() if section == "primordial" else written)
 
 
 def test_products_may_be_none_at_all():

@@ -44,6 +44,8 @@ numbers from memory). Kaiser, N. 1983, MNRAS 202, 1169 and Hu, W. & White, M. 19
 (from memory).
 """
 
+from collections.abc import Mapping
+
 import numpy as np
 
 from ..solver.collocation import STAGES
@@ -51,7 +53,7 @@ from ..universe import Universe
 from ..universe.gas import plasma_sound_speed
 from .kinetic import ChainLengths
 from .readout import Reading
-from .start import adiabatic
+from .start import mixed
 
 STREAMING_LIMIT = 0.5  # n: rate at which streaming smooths well inside the horizon, over k; dark matter within 4 %
 LOCKED_STIFFNESS = 1 / 3  # delta_T over delta_b in the plasma
@@ -101,19 +103,22 @@ class SoundSpeedSystem:
         measured = MEASURED_WITH_DARK_MATTER if has_dark_matter else MEASURED_WITHOUT
         return (f"closure sound-speed is a small model; against the kinetic closure {measured}",)
 
-    def first_state(self, start: np.ndarray) -> np.ndarray:
+    def first_state(self, start: np.ndarray, weights: Mapping[str, np.ndarray] | None = None) -> np.ndarray:
         """State of every mode at its start.
 
         Parameters
         ----------
         start : array, shape (mode,)
             Conformal time of each start [Mpc].
+        weights : mapping of str to array, shape (mode,), optional
+            How much of each initial mode; only the adiabatic one keeps photons to baryons as this closure has
+            them [unitless].
 
         Returns
         -------
         array, shape (unknown, mode)
         """
-        first = adiabatic(self.universe, self.wavenumber, start)
+        first = mixed(self.universe, self.wavenumber, start, weights)
         first |= {"delta_stream": first["delta_neutrino"], "theta_stream": first["theta_neutrino"]}
         return np.stack([first.get(name, np.zeros(len(start))) for name in self.unknowns])
 

@@ -9,7 +9,7 @@ from __future__ import annotations
 import numpy as np
 
 from twofluid.products.cold_growth import cold_growth
-from twofluid.products.matter import FLUIDS, contrasts, contrasts_at, exists
+from twofluid.products.matter import FLUIDS, contrasts, contrasts_at, contrasts_of, exists
 from twofluid.products.table import column, make_table, sample_columns
 
 REFERENCE_REDSHIFT = 1000.0  # just after the baryons are let go, if the caller names no epoch
@@ -41,7 +41,7 @@ def growth_table(history, reference_redshift=REFERENCE_REDSHIFT):
         If the reference redshift lies outside the run.
     """
     reference, _ = contrasts_at(history, reference_redshift)
-    now = contrasts(history.universe, history.delta_dark, history.delta_baryon)
+    now = contrasts_of(history)
     _, slope = contrasts_at(history, history.redshift)
     span = np.log1p(reference_redshift) - np.log1p(history.redshift)
     factors, rates, exponents = {}, {}, {}

@@ -57,6 +57,7 @@ def catchup_table(history, fractions=FRACTIONS):
     which `ratio_today` shows); empty, never, where b fell below the fraction and has not come back by
     today; and inf, where b has not been below the fraction since the start of the run. A pole of b, where
     delta_dark passes through zero, counts like any other way to come from below the fraction to above.
+    (With initial modes beside the adiabatic one b can begin anywhere; the outcomes mean the same.)
 
     Parameters
     ----------

@@ -14,7 +14,7 @@ import numpy as np
 
 from twofluid.products.cold_growth import cold_growth
 from twofluid.products.crossing import first_rise
-from twofluid.products.matter import FLUIDS, contrasts, contrasts_at, exists
+from twofluid.products.matter import FLUIDS, contrast_courses, contrasts_at, contrasts_of, exists
 from twofluid.products.sphere_filter import SphereFilter
 from twofluid.products.spheres import COVERAGE, NOT_COVERED, sphere_mass, sphere_radii
 from twofluid.products.table import column, make_table, sample_columns, words_column
@@ -62,7 +62,7 @@ def contrast_table(history):
     """
     root = _root_power(history)
     columns = sample_columns(history)
-    for fluid, contrast in contrasts(history.universe, history.delta_dark, history.delta_baryon).items():
+    for fluid, contrast in contrasts_of(history).items():
         missing = np.full(contrast.size, not exists(history, fluid))
         columns.append(column(f"rms_{fluid}", (root * abs(contrast)).ravel(), masked=missing))
     return make_table(history, columns)
@@ -172,8 +172,7 @@ def _spheres(history, radius):
 def _follow(history, redshifts, spheres, count):
     """Return the waves and spheres of each fluid on their way, {fluid: tuple of _Scales}."""
     trace, root = history.trace, _root_power(history)
-    values = contrasts(history.universe, trace.delta_dark, trace.delta_baryon)
-    slopes = contrasts(history.universe, trace.delta_dark_slope, trace.delta_baryon_slope)
+    values, slopes = contrast_courses(history)
     marks, _ = contrasts_at(history, redshifts)
     found = {
         fluid: [_Scales(trace.log_scale_factor, root * values[fluid], root * slopes[fluid], root * abs(marks[fluid]))]

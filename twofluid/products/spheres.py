@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from twofluid.products.matter import FLUIDS, contrasts, contrasts_at, exists
+from twofluid.products.matter import FLUIDS, contrasts_at, contrasts_of, exists
 from twofluid.products.sphere_filter import SphereFilter
 from twofluid.products.table import column, make_table
 from twofluid.universe.constants import SOLAR_MASS_LENGTH
@@ -37,7 +37,7 @@ def spheres_table(history, radii=None, masses=None):
         wavenumbers do not cover the sphere; the header entry `not_covered` says so.
     """
     radius = sphere_radii(history.universe, radii, masses, default=True)
-    contrast = contrasts(history.universe, history.delta_dark, history.delta_baryon)
+    contrast = contrasts_of(history)
     epochs = len(history.redshift)
     columns = [
         column("sphere_radius", np.repeat(radius, epochs)),

@@ -7,6 +7,7 @@ from dataclasses import asdict
 import numpy as np
 
 from twofluid.quantities import QUANTITIES
+from twofluid.scenario import mixture_lines
 
 FRAME = (
     "synchronous, at rest with the dark matter (without dark matter: carried by massless dust); "
@@ -17,6 +18,15 @@ FRAME_OF_DUST = (
     "baryons do; amplitudes per unit comoving curvature, signed so that densities grow positive"
 )
 NO_DARK_MATTER = "this universe has no dark matter; whatever is measured against it is empty"
+MIXTURE = (
+    "initial modes other than the adiabatic one alone: amplitudes are not per unit comoving curvature but per square "
+    "root of the primordial power amplitude (k/pivot)^(tilt - 1)"
+)
+INDEPENDENT = (
+    "its parts follow independent random fields: delta_dark is the rms of them all and any other amplitude X is "
+    "<X delta_dark>/rms(delta_dark), so that delta_baryon/delta_dark is cross-power over power of the dark matter "
+    "(without dark matter the baryons take its place); growth, spheres and shortfall take the rms of each fluid"
+)
 NO_CERTIFICATE = "none: the numerical error of this run was not estimated"
 _BLANKS = {"b": False, "U": ""}  # under the mask of a column of true and false, or of words; NaN for numbers
 LANDMARK_DIGITS = 6  # significant, of a landmark in a header; the physics behind is good to four or five
@@ -146,6 +156,9 @@ def header(history):
         "certificate": NO_CERTIFICATE if history.certificate is None else history.certificate.sentence(),
         "warnings": list(history.warnings),
     }
+    if mixture := mixture_lines(history.scenario.primordial):
+        independent = [INDEPENDENT] if len(history.parts) > 1 else []
+        provenance["mixture"] = [MIXTURE, *independent, *mixture]
     if not history.has_dark_matter:
         provenance["no_dark_matter"] = NO_DARK_MATTER
     return provenance

@@ -119,11 +119,23 @@ class Key:
         return name_of(self.path)
 
 
+ADIABATIC = "adiabatic"  # the initial mode that is there if nothing is said
+INITIAL_MODES = {  # the others, and what is one at the beginning where the amplitude is one
+    "baryon": "baryon density isocurvature; unit delta_b - 3/4 delta_gamma",
+    "dark_matter": "dark-matter density isocurvature; unit delta_c - 3/4 delta_gamma",
+    "neutrino_density": "neutrinos denser where photons are thinner; unit 3/4 (delta_nu - delta_gamma)",
+    "neutrino_velocity": "neutrinos stream through the plasma; unit (theta_nu - theta_gamma)/k",
+    "compensated": "baryons denser where dark matter is thinner, matter uniform; unit delta_b - 3/4 delta_gamma",
+}
+MIXTURE = "primordial.mixture"
+
 SECTIONS = {
     "cosmology": "the smooth universe",
     "cosmology.neutrinos": "neutrinos",
     "cosmology.dark_matter": "pressure of the dark matter: c_s(z) = sound_speed ((1 + z)/(1 + at_redshift))^scaling",
     "primordial": "primordial curvature perturbations, a power law in wavenumber",
+    MIXTURE: "initial modes; without this section the adiabatic one alone",
+    **{f"{MIXTURE}.{mode}": meaning for mode, meaning in INITIAL_MODES.items()},
     "sampling": "where the answer is wanted",
     "method": "how the answer is computed",
     "products": "which products to make: {} for none, lag if the section is left out",
@@ -135,6 +147,9 @@ SECTIONS = {
     "products.streaming": "velocity of baryons relative to dark matter, and what it does to growth on small scales",
 }
 
+#: Sections whose keys are not filled in where the file does not have them.
+OPTIONAL_SECTIONS = tuple(path for path in SECTIONS if path.startswith(("products.", MIXTURE)))
+
 DEFAULT_PRODUCTS = ("lag",)  # made when the file has no section `products`
 
 _WAVENUMBER_LIMITS = Allowed(1e-4, 1e5)  # beyond the horizon to far below the Jeans length of the gas
@@ -142,6 +157,21 @@ _RADIUS_LIMITS = Allowed(1e-5, 1e4)  # [Mpc]; one over the wavenumbers
 _MASS_LIMITS = Allowed(1e-4, 1e23)  # [solMass]; what such spheres hold in a universe like ours
 _REDSHIFT_LIMITS = Allowed(0, 1e6)  # what a run tabulates
 _TOO_MANY_SPHERES = "more spheres are not tabulated in one run"
+
+
+def _mode_keys(mode):
+    """Return the rows of one initial mode beside the adiabatic one."""
+    return (
+        Key(f"{MIXTURE}.{mode}.ratio", Kind.NUMBER,
+            "rms amplitude at the pivot over the square root of primordial.amplitude; 0 leaves the mode out",
+            allowed=Allowed(0, 1e6), required=True, example="0.1"),
+        Key(f"{MIXTURE}.{mode}.correlation", Kind.NUMBER,
+            "with the random field of the adiabatic mode; positive where denser places have an excess",
+            allowed=Allowed(-1, 1), default=0.0, example="0"),
+        Key(f"{MIXTURE}.{mode}.tilt", Kind.NUMBER, "exponent n of its power",
+            allowed=Allowed(-3, 5), unsaid="that of primordial.tilt", example="0.965"),
+    )  # fmt: skip
+
 
 KEYS = (
     Key("title", Kind.TEXT, "name of the scenario, for tables and figures",
@@ -185,6 +215,10 @@ KEYS = (
         allowed=Allowed(-3, 5), default=0.965, example="0.965"),
     Key("primordial.pivot", Kind.QUANTITY, "wavenumber at which the amplitude is given",
         unit=WAVENUMBER_UNIT, allowed=Allowed(1e-6, 1e6), default=0.05, example="0.05 1/Mpc"),
+    Key(f"{MIXTURE}.{ADIABATIC}", Kind.NUMBER,
+        "rms amplitude of the adiabatic mode over the square root of the primordial power; 0 leaves it out",
+        allowed=Allowed(0, 1e6), default=1.0, example="1"),
+    *(key for mode in INITIAL_MODES for key in _mode_keys(mode)),
     Key("sampling.wavenumbers", Kind.WAVENUMBERS, "comoving wavenumbers, as a range or one by one",
         unit=WAVENUMBER_UNIT, allowed=_WAVENUMBER_LIMITS, required=True, longest=MOST_WAVENUMBERS,
         longest_reason="more modes are not solved in one run", example="[0.1 1/Mpc, 1 1/Mpc]"),

@@ -1,6 +1,6 @@
 """What the manual says about scenario files: the commented template and the table of keys."""
 
-from .keys import BASE, KEYS, SECTIONS, Kind, keys_under, name_of, sections_under
+from .keys import BASE, KEYS, MIXTURE, SECTIONS, Kind, keys_under, name_of, sections_under
 
 INDENT = "  "  # one level of the template
 RANGE_SECTION = "sampling.wavenumbers"  # the key whose value may be a mapping; the template shows that form
@@ -51,7 +51,8 @@ def _section_lines(section, depth):
     for key in keys_under(section):
         lines += _key_lines(key, depth)
     for inner in sections_under(section):
-        lines += ["", f"{INDENT * depth}# {SECTIONS[inner]}", f"{INDENT * depth}{name_of(inner)}:"]
+        switch = _switch(inner)
+        lines += ["", f"{INDENT * depth}# {SECTIONS[inner]}", f"{INDENT * depth}{switch}{name_of(inner)}:"]
         lines += _section_lines(inner, depth + 1)
     return lines
 
@@ -66,8 +67,14 @@ def _key_lines(key, depth):
         alternative = f"{margin}#   one by one: {key.name}: {key.example}; as a range:"
         return [*comments, alternative, f"{margin}{key.name}:", *parts]
     # A key without a fixed default is shown commented out: any value would change the meaning.
-    switch = "# " if key.default is None and not key.required and key.kind is not Kind.TEXT else ""
+    open_default = key.default is None and not key.required and key.kind is not Kind.TEXT
+    switch = "# " if open_default else _switch(key.section)
     return [*comments, f"{margin}{switch}{key.name}: {key.example}"]
+
+
+def _switch(section):
+    """Return what comments out a section that changes the meaning by being there."""
+    return "# " if section.startswith(MIXTURE) else ""
 
 
 def _value_text(key):

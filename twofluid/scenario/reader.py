@@ -5,9 +5,10 @@ from os import fsdecode
 from pathlib import Path
 
 from .document import entry_from_plain, entry_from_text
-from .errors import printable
+from .errors import ScenarioError, printable
 from .family import read_document, refuse_base
-from .keys import DEFAULT_PRODUCTS, keys_under, name_of, sections_under
+from .keys import ADIABATIC, DEFAULT_PRODUCTS, MIXTURE, OPTIONAL_SECTIONS, keys_under, name_of, sections_under
+from .mixture import Mixture, Share, check_mixture
 from .names import checked_names
 from .request import Cosmology, DarkMatter, Method, Neutrinos, Primordial, Sampling, Scenario
 from .values import read_value
@@ -93,16 +94,40 @@ def _scenario(entry, title, source):
         "neutrinos": Neutrinos(**_pick(values, "cosmology.neutrinos")),
         "dark_matter": DarkMatter(**_pick(values, "cosmology.dark_matter")),
     }
-    return Scenario(
+    scenario = Scenario(
         title=values["title"],
         cosmology=Cosmology(**_pick(values, "cosmology"), **inner),
-        primordial=Primordial(**_pick(values, "primordial")),
+        primordial=Primordial(**_pick(values, "primordial"), mixture=_mixture(values)),
         sampling=Sampling(**_pick(values, "sampling")),
         products={name: _pick(values, f"products.{name}") for name in entry.content["products"].content},
         assumed=tuple(assumed),
         source=source,
         method=Method(**_pick(values, "method")),
     )
+    try:
+        check_mixture(scenario)
+    except ScenarioError as problem:
+        raise _entry_at(entry, problem.key).error(problem.rule, problem.remedy) from None
+    return scenario
+
+
+def _mixture(values):
+    """Make the mixture of initial modes, None where the file has none."""
+    if f"{MIXTURE}.{ADIABATIC}" not in values:
+        return None
+    shares = {
+        name_of(section): Share(**_pick(values, section))
+        for section in sections_under(MIXTURE)
+        if all(key.path in values for key in keys_under(section))
+    }
+    return Mixture(**_pick(values, MIXTURE), **shares)
+
+
+def _entry_at(entry, path):
+    """Find the entry of a dotted key that the file has."""
+    for name in path.split("."):
+        entry = entry.content[name]
+    return entry
 
 
 def _with_products(entry):
@@ -133,7 +158,7 @@ def _read_section(section, entry, values, assumed):
             assumed.append(key.path)
     for inner in sections_under(section):
         name = name_of(inner)
-        if name in names or section != "products":
+        if name in names or inner not in OPTIONAL_SECTIONS:
             _read_section(inner, names.get(name) or entry.child(name, {}), values, assumed)
 
 

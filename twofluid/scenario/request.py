@@ -2,9 +2,9 @@
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from operator import attrgetter
 
-from .keys import DEFAULT_PRODUCTS, KEY_AT, KEYS, Kind, default_of, keys_under
+from .keys import DEFAULT_PRODUCTS, KEY_AT, KEYS, MIXTURE, SECTIONS, Kind, default_of, keys_under
+from .mixture import Mixture
 from .spacing import range_of
 
 _FIELD_SECTIONS = (  # read into dataclasses
@@ -12,6 +12,7 @@ _FIELD_SECTIONS = (  # read into dataclasses
     "cosmology.neutrinos",
     "cosmology.dark_matter",
     "primordial",
+    *(path for path in SECTIONS if path.startswith(MIXTURE)),
     "sampling",
     "method",
 )
@@ -111,11 +112,15 @@ class Primordial:
         Exponent n; 1 is equal power on all scales [unitless].
     pivot : float
         Wavenumber at which the amplitude is given [1/Mpc].
+    mixture : Mixture or None
+        Initial modes; None is the adiabatic one alone. Every amplitude of a mixture is relative to the square root
+        of the power law.
     """
 
     amplitude: float = default_of("primordial.amplitude")
     tilt: float = default_of("primordial.tilt")
     pivot: float = default_of("primordial.pivot")
+    mixture: Mixture | None = None
 
     def power(self, wavenumber):
         """Power of the curvature perturbations per unit ln k, A (k/pivot)^(n - 1).
@@ -226,7 +231,7 @@ class Scenario:
         for key in KEYS:
             if key.section not in _FIELD_SECTIONS:
                 continue
-            value = attrgetter(key.path)(self)
+            value = _said(self, key.path)
             if value is not None:
                 _section_of(mapping, key)[key.name] = _plain(value, key)
         mapping["products"] = {}
@@ -247,6 +252,14 @@ class Scenario:
         """
         mapping = self.to_mapping()
         return tuple(f"{path} = {_assumed_text(mapping, path)}" for path in self.assumed)
+
+
+def _said(scenario, path):
+    """Return what a scenario says under a dotted key, None where it lacks the section."""
+    value = scenario
+    for name in path.split("."):
+        value = None if value is None else getattr(value, name)
+    return value
 
 
 def _plain(value, key):
