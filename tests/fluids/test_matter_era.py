@@ -191,6 +191,7 @@ def released(law):
         universe=smooth,
         wavenumber=K * kappa,
         has_dark_matter=True,
+        initial_modes="adiabatic",
         at=lambda name, redshift: splines[name](-np.log1p(redshift)).T,
     )
 
