@@ -2,6 +2,7 @@
 
 from .closures import CLOSURES, MIXTURE_CLOSURES
 from .kinetic import ChainLengths, KineticSystem
+from .modes import isocurvature
 from .patch import PatchSystem
 from .resolution import ACCURACIES, Resolution, resolution_for
 from .sound_speed import SoundSpeedSystem
@@ -20,6 +21,7 @@ __all__ = [
     "Stepping",
     "adiabatic",
     "clock",
+    "isocurvature",
     "mixed",
     "resolution_for",
     "start_time",
