@@ -21,7 +21,8 @@ class Certificate:
     ratio_error : array, shape (mode, redshift)
         Error of the ratio of baryon to dark-matter contrast, absolute; of a mixture of initial modes, whose ratio can
         be any number, relative to the larger of it and 1; without dark matter of the baryon contrast, relative to
-        the larger of the baryons' and the dust's [unitless].
+        the larger of the baryons' and the dust's; where the dark matter has pressure, and the ratio poles, likewise
+        with the dark matter's [unitless].
     temperature_error : array, shape (mode, redshift)
         Error of the gas temperature contrast, relative to the larger of its value and the baryons' [unitless].
     constraint : float

@@ -74,7 +74,7 @@ def _compare(history: History, modes: np.ndarray, finer: History, promise: float
     dark_size, baryon_size = np.abs(finer.delta_dark), np.abs(finer.delta_baryon)
     dark_size = np.maximum(dark_size, SMALL_CONTRAST * _largest_so_far(dark_size, history.redshift))
     dark_error = np.abs(dark - finer.delta_dark) / dark_size
-    if history.has_dark_matter:
+    if history.has_dark_matter and history.theta_dark is None:
         ratio_size = dark_size if history.initial_modes == ADIABATIC else np.maximum(dark_size, baryon_size)
         ratio_error = np.abs(baryon - dark * finer.delta_baryon / finer.delta_dark) / ratio_size
     else:

@@ -5,8 +5,8 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from .fluids import CLOSURES, MIXTURE_CLOSURES, Resolution, clock, resolution_for, start_time
-from .history import EVOLVED, History, Trace, history_of_parts
+from .fluids import CLOSURES, MIXTURE_CLOSURES, Resolution, check_dark_waves, clock, resolution_for, start_time
+from .history import EVOLVED, MOVING_DARK, History, Trace, history_of_parts
 from .scenario import Part, Scenario, check_mixture, parts
 from .solver import Clock, SolverFailure, integrate
 from .universe import Universe, UniverseStack, build_universes
@@ -16,6 +16,7 @@ HIGHEST_REDSHIFT = 1e6  # every mode has started long before
 CURVATURE_MARGIN = 100.0  # k times the curvature radius below which curvature could show in the modes
 ELECTRON_MASS_TEMPERATURE = 5.93e9  # electron mass over Boltzmann's constant [K]: pairs annihilate below
 CONSTRAINT_LIMIT = 0.03  # a larger drift of the energy constraint means the run went wrong
+EARLIEST_SCALE_FACTOR = 1e-14  # before it nothing has started
 SAME_MARK = 1e-6  # relative difference of conformal times that one step boundary can stand for
 MODES_TOGETHER = 4096  # of scenarios solved in one sweep: bounds the memory
 
@@ -54,7 +55,8 @@ def evolve(
     Raises
     ------
     ValueError
-        If a wavenumber or redshift is out of range, or the scenario cannot serve its mixture of initial modes.
+        If a wavenumber or redshift is out of range, sound waves of the dark matter are too many to follow, or the
+        scenario cannot serve its mixture of initial modes.
     UniverseError
         If the smooth universe of the scenario cannot be.
     SolverFailure
@@ -165,6 +167,7 @@ def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, res
     check_mixture(scenario)
     k = _wavenumbers(scenario.sampling.wavenumbers if wavenumbers is None else wavenumbers)
     z = _redshifts(scenario.sampling.redshifts if redshifts is None else redshifts)
+    check_dark_waves(universe, k)
     if wavenumbers is not None or redshifts is not None:  # the history tells what was done, not what the file said
         sampling = replace(scenario.sampling, wavenumbers=tuple(k), redshifts=tuple(z))
         scenario = replace(scenario, sampling=sampling, source=None)
@@ -185,10 +188,10 @@ def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, res
 
 
 def _sweeps(requests: Sequence[_Request]) -> Iterator[list[int]]:
-    """Put requests together that one sweep can solve: same equations, same chains, not too many modes."""
+    """Put requests together that one sweep can solve: same equations, same unknowns, not too many modes."""
     groups: dict[tuple, list[int]] = {}
     for place, request in enumerate(requests):
-        key = type(request.system), request.resolution.chains
+        key = type(request.system), request.resolution.chains, request.system.unknowns
         groups.setdefault(key if request.system.stackable else (place,), []).append(place)
     for places in groups.values():
         sweep, modes = [], 0
@@ -246,12 +249,13 @@ def _history(request: _Request, times: np.ndarray, observed: np.ndarray, counts:
     for number, part in enumerate(request.parts):
         lanes = slice(number * modes, (number + 1) * modes)
         trace = Trace(**{name: np.ascontiguousarray(array[:, lanes].T) for name, array in reading.quantities.items()})
+        evolved = EVOLVED if trace.theta_dark is None else (*EVOLVED, *MOVING_DARK)
         history = History(
             scenario=request.scenario,
             universe=request.universe,
             wavenumber=request.wavenumber,
             redshift=request.redshift,
-            **{name: getattr(trace, name)[rows, asked] for name in EVOLVED},
+            **{name: getattr(trace, name)[rows, asked] for name in evolved},
             trace=trace,
             constraint=drift[lanes],
             counts=counts,
@@ -323,6 +327,21 @@ def _explain(failure: SolverFailure, request: _Request, mode: int) -> SolverFail
     )
 
 
+def _dark_warnings(universe: Universe, k: np.ndarray) -> tuple[str, ...]:
+    """Say where the dark matter is not the matter that the equations take it for."""
+    asked = universe.cosmology.dark_matter.sound_speed > 0.0
+    if asked and not universe.has_dark_pressure:
+        return ("a sound speed of the dark matter was given, but there is no dark matter to have it",)
+    slow_from = max(universe.dark_sound.slow_from, EARLIEST_SCALE_FACTOR)
+    fast = np.count_nonzero(k * float(universe.conformal_time(slow_from)) > 1.0)
+    if not universe.has_dark_pressure or fast == 0:
+        return ()
+    return (
+        f"{fast} of {len(k)} wavenumbers were inside the horizon before redshift {1.0 / slow_from - 1.0:.3g}, while "
+        "the sound speed of the dark matter was above 0.1 c: it is followed as slow matter also there",
+    )
+
+
 def _range_warnings(universe: Universe, k: np.ndarray) -> tuple[str, ...]:
     """Say which modes lie at or beyond the range in which the equations hold."""
     warnings = []
@@ -339,4 +358,4 @@ def _range_warnings(universe: Universe, k: np.ndarray) -> tuple[str, ...]:
             f"{early} of {len(k)} wavenumbers are above {smallest:.3g} 1/Mpc and entered the horizon before electrons "
             "and positrons annihilated, which is not followed here"
         )
-    return tuple(warnings)
+    return (*warnings, *_dark_warnings(universe, k))

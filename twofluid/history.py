@@ -14,6 +14,9 @@ from .universe import Universe
 #: Quantities a history carries, in the order of their columns.
 EVOLVED = ("delta_dark", "delta_baryon", "theta_baryon", "delta_gas_temperature")
 
+#: Quantities it carries in addition where the dark matter has pressure.
+MOVING_DARK = ("theta_dark",)
+
 _FORMAT = 1  # raised whenever a saved history changes its layout
 
 
@@ -29,6 +32,8 @@ class Trace:
         As in `History`.
     delta_dark_slope, delta_baryon_slope, theta_baryon_slope, delta_gas_temperature_slope : array, shape (mode, step)
         Their derivatives by ln a, in the unit of the quantity.
+    theta_dark, theta_dark_slope : array, shape (mode, step), or None
+        The same, where the dark matter has pressure.
     """
 
     log_scale_factor: np.ndarray
@@ -40,14 +45,17 @@ class Trace:
     delta_baryon_slope: np.ndarray
     theta_baryon_slope: np.ndarray
     delta_gas_temperature_slope: np.ndarray
+    theta_dark: np.ndarray | None = None
+    theta_dark_slope: np.ndarray | None = None
 
 
 @dataclass(frozen=True)
 class History:
     """What became of each mode.
 
-    Synchronous frame at rest with the dark matter; unit primordial comoving curvature, with a mixture of initial
-    modes in units of the square root of the primordial power; signs such that densities grow positive.
+    Synchronous frame at rest with the dark matter or, where that has pressure, with cold dust of no mass that
+    started with it; unit primordial comoving curvature, with a mixture of initial modes in units of the square
+    root of the primordial power; signs such that densities grow positive.
 
     Where a mixture has independent parts, amplitudes say what two random fields have in common: the dark matter (with
     none, the baryons) has its rms amplitude, and any other quantity X the amplitude <X delta_dark>/rms(delta_dark) of
@@ -68,7 +76,7 @@ class History:
         Density contrasts [unitless]. Without dark matter, `delta_dark` is that of the massless dust
         that carries the frame.
     theta_baryon : array, shape (mode, redshift)
-        Velocity divergence of the baryons, by conformal time [1/Mpc].
+        Velocity divergence of the baryons relative to the frame, by conformal time [1/Mpc].
     delta_gas_temperature : array, shape (mode, redshift)
         Relative contrast of the gas temperature [unitless].
     trace : Trace
@@ -82,6 +90,8 @@ class History:
         What the user has to know about this run.
     certificate : Certificate or None
         Estimated numerical error, once `twofluid.certify` has worked it out.
+    theta_dark : array, shape (mode, redshift), or None
+        Velocity divergence of the dark matter relative to the frame, where it has pressure [1/Mpc].
     initial_modes : str
         The initial modes that follow one random field, joined by plus signs; of independent parts, by commas.
     independent_parts : tuple of History
@@ -101,8 +111,14 @@ class History:
     counts: dict[str, int]
     warnings: tuple[str, ...] = field(default=())
     certificate: Certificate | None = None
+    theta_dark: np.ndarray | None = None
     initial_modes: str = "adiabatic"
     independent_parts: tuple["History", ...] = ()
+
+    @property
+    def evolved(self) -> tuple[str, ...]:
+        """Names of the quantities this history carries."""
+        return EVOLVED if self.theta_dark is None else (*EVOLVED, *MOVING_DARK)
 
     @property
     def parts(self) -> tuple["History", ...]:
@@ -122,7 +138,7 @@ class History:
         Parameters
         ----------
         name : str
-            One of `EVOLVED`.
+            One of `evolved`.
         redshift : float or array, shape (redshift,)
             Redshifts [unitless].
         wavenumber : float or array, shape (mode,), optional
@@ -146,7 +162,7 @@ class History:
         Parameters
         ----------
         name : str
-            One of `EVOLVED`.
+            One of `evolved`.
         redshift : float or array, shape (redshift,)
             Redshifts [unitless].
 
@@ -164,8 +180,8 @@ class History:
 
     def _between_steps(self, name: str, redshift) -> tuple[np.ndarray, np.ndarray]:
         """Value and slope by ln a at any redshifts, each of shape (mode, redshift)."""
-        if name not in EVOLVED:
-            raise ValueError(f"no quantity is named {name!r}: choose one of {', '.join(EVOLVED)}")
+        if name not in self.evolved:
+            raise ValueError(f"no quantity is named {name!r}: choose one of {', '.join(self.evolved)}")
         log_a = -np.log1p(np.atleast_1d(np.asarray(redshift, dtype=float)))
         trace = self.trace
         return _hermite(trace.log_scale_factor, getattr(trace, name), getattr(trace, name + "_slope"), log_a)
@@ -209,8 +225,9 @@ class History:
 
     def _own_arrays(self, prefix: str) -> dict[str, np.ndarray]:
         """Return what a history does not share with its parts, by the names in an archive."""
-        arrays = {f"{prefix}{name}": getattr(self, name) for name in (*EVOLVED, "constraint")}
-        return arrays | {f"{prefix}trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
+        arrays = {f"{prefix}{name}": getattr(self, name) for name in (*self.evolved, "constraint")}
+        arrays |= {f"{prefix}trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
+        return {name: array for name, array in arrays.items() if array is not None}
 
 
 def load_history(path) -> History:
@@ -281,7 +298,7 @@ def history_of_parts(parts: Sequence[History]) -> History:
     turning, turn = _directions(_gather(parts, lead), _gather(parts, lead, "_slope"))
     fixed, _ = _directions(np.stack([getattr(part, lead) for part in parts]))
     courses, amplitudes = {}, {}
-    for name in EVOLVED:
+    for name in parts[0].evolved:
         course, slope = _gather(parts, name), _gather(parts, name, "_slope")
         courses[name] = (course * turning).sum(axis=0)
         courses[name + "_slope"] = (slope * turning + course * turn).sum(axis=0)
@@ -316,8 +333,9 @@ def _prefix(number: int) -> str:
 
 def _own(arrays: dict[str, np.ndarray], prefix: str) -> dict:
     """Take from an archive what a history does not share with its parts; see `History._own_arrays`."""
-    trace = Trace(**{part.name: arrays[f"{prefix}trace_{part.name}"] for part in fields(Trace)})
-    return {"trace": trace, **{name: arrays[prefix + name] for name in (*EVOLVED, "constraint")}}
+    trace = Trace(**{part.name: arrays.get(f"{prefix}trace_{part.name}") for part in fields(Trace)})
+    names = (name for name in (*EVOLVED, *MOVING_DARK, "constraint") if prefix + name in arrays)
+    return {"trace": trace, **{name: arrays[prefix + name] for name in names}}
 
 
 def _hermite(

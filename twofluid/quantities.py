@@ -50,6 +50,9 @@ _AMPLITUDES = (
              "divergence of the baryon velocity (conformal time) per unit comoving curvature"),
     Quantity("delta_gas_temperature", r"\delta_T", "",
              "relative contrast of the gas temperature per unit comoving curvature"),
+    Quantity("theta_dark", r"\theta_\mathrm{c}", "1/Mpc",
+             "divergence of the velocity of dark matter with pressure, relative to the frame as that of the baryons, "
+             "per unit comoving curvature"),
 )
 
 _MIXTURE = (
@@ -174,6 +177,9 @@ _SCALES = (
              "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber_two_fluids; " + _NO_FILTERING),
     Quantity("filtering_mass_measured", r"M_\mathrm{Fm}", "solMass",
              "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber_measured; " + _NO_FILTERING),
+    Quantity("dark_sound_speed", r"c_\mathrm{c}", "km/s", "effective sound speed of dark matter with pressure"),
+    Quantity("dark_jeans_wavenumber", r"k_\mathrm{Jc}", "1/Mpc",
+             "comoving Jeans wavenumber (a/c) sqrt(4 pi G rho) of dark matter with pressure, rho of it and baryons"),
     Quantity("verdict", r"\mathrm{verdict}", "",
              "what the mode is doing: larger than the horizon, oscillates with the plasma, damped, held up by "
              "pressure, falls in, grows; empty: the steps of the run are too long to follow the wave"),

@@ -174,6 +174,16 @@ def test_a_universe_that_cannot_be_is_refused(tmp_path, out, capsys, nothing_sol
     check_refused(capsys, out, run("run", path, "--out", out), "odd.yaml")
 
 
+@pytest.mark.parametrize("command", ["run", "check"])
+def test_too_many_waves_of_the_dark_matter_are_refused(tmp_path, out, capsys, nothing_solved, command):
+    path = tmp_path / "warm.yaml"
+    warm = "  dark_matter: {sound_speed: 100 km/s, scaling: 0.5}\n"
+    path.write_text(TINY.replace("sampling:", f"{warm}sampling:").replace("20 1/Mpc", "2000 1/Mpc"))
+    arguments = (command, path) if command == "check" else (command, path, "--out", out)
+    told = ("warm.yaml", "at k = 2000 1/Mpc", "sound waves of the dark matter", "cosmology.dark_matter.sound_speed")
+    check_refused(capsys, out, run(*arguments), *told)
+
+
 def test_missing_file_is_refused(tmp_path, out, capsys):
     check_refused(capsys, out, run("check", tmp_path / "none.yaml"), "none.yaml")
 

@@ -8,7 +8,7 @@ import pytest
 from scipy.interpolate import CubicHermiteSpline
 
 from twofluid import Universe, evolve
-from twofluid.history import Trace
+from twofluid.history import EVOLVED, Trace
 from twofluid.scenario import Cosmology, Primordial, Sampling, Scenario
 
 RUN_REDSHIFTS = (10000.0, 3000.0, 1500.0, 1000.0, 500.0, 300.0, 200.0, 100.0, 50.0, 20.0, 10.0, 5.0, 0.0)
@@ -50,6 +50,8 @@ def make_history():
             delta_baryon=at_redshift[1],
             theta_baryon=-at_redshift[1],
             delta_gas_temperature=at_redshift[1] / 2,
+            theta_dark=None,
+            evolved=EVOLVED,
             has_dark_matter=has_dark_matter,
             warnings=("a sentence of warning",),
             certificate=None,
@@ -162,6 +164,8 @@ def make_up_run():
         )  # fmt: skip
         log_a = -np.log1p(np.asarray(redshift, dtype=float))
         history = SimpleNamespace(
+            theta_dark=None,
+            evolved=EVOLVED,
             scenario=scenario,
             universe=Universe(scenario.cosmology),
             wavenumber=np.arange(1.0, len(dark) + 1) if wavenumber is None else np.asarray(wavenumber),

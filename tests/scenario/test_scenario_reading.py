@@ -6,6 +6,7 @@ from scenario_texts import NO_MIXTURE, NO_PRODUCTS, VALUES, full_text, wavenumbe
 
 from twofluid.scenario import (
     Cosmology,
+    DarkMatter,
     Method,
     Mixture,
     Neutrinos,
@@ -41,6 +42,7 @@ def test_every_key_reaches_its_field():
             neutrinos=Neutrinos(effective_number=3.0, masses=()),
             curvature_fraction=0.01,
             cosmological_constant_fraction=0.7,
+            dark_matter=DarkMatter(sound_speed=0.002, at_redshift=100.0, scaling=0.5),
         ),
         primordial=Primordial(
             amplitude=2e-9,
@@ -77,6 +79,7 @@ def test_defaults_fill_what_is_left_out_and_are_named():
     assert scenario.title == "untitled"
     assert (cosmology.photon_temperature, cosmology.helium_mass_fraction) == (2.7255, 0.2454)
     assert cosmology.neutrinos == Neutrinos(3.046, ())
+    assert cosmology.dark_matter == DarkMatter(0.0, 0.0, 1.0)
     assert cosmology.curvature_fraction is None
     assert cosmology.cosmological_constant_fraction is None
     assert scenario.primordial == Primordial(2.1e-9, 0.965, 0.05)

@@ -7,7 +7,7 @@ from .patch import PatchSystem
 from .resolution import ACCURACIES, Resolution, resolution_for
 from .sound_speed import SoundSpeedSystem
 from .start import adiabatic, mixed, start_time
-from .stepping import Stepping, clock
+from .stepping import Stepping, check_dark_waves, clock
 
 __all__ = [
     "ACCURACIES",
@@ -20,6 +20,7 @@ __all__ = [
     "SoundSpeedSystem",
     "Stepping",
     "adiabatic",
+    "check_dark_waves",
     "clock",
     "isocurvature",
     "mixed",

@@ -4,6 +4,16 @@ Synchronous frame at rest with the dark matter, unit primordial curvature, signs
 densities grow positive. With no dark matter the frame is carried by massless dust, whose contrast
 stands in the row of the dark matter.
 
+Dark matter with pressure moves against the frame, which cold dust without mass then carries, and has an
+equation of its own, as the baryons do::
+
+    delta_c' = -theta_c - h'/2,        theta_c' = -H theta_c + k^2 c_s^2 delta_c
+
+As for the baryons, pressure counts where the wavenumber multiplies it and nowhere else: terms of order c_s^2 without
+k (the share w of pressure in the weight, 3 c_s^2 delta_c in the source of h'', -3 H (c_s^2 - w) delta_c in the
+continuity) are all left out. One of them without the others would break the constraint between the metric and the
+densities; so they keep it exactly. The dust needs no unknown: its contrast is -h/2, and cold dark matter is that.
+
 The metric's trace rate and all velocities are divided by the wavenumber k, and time enters as
 k tau, so that the rates stay near one. The plasma is followed by the velocity of the baryons and the
 slip ``u = theta_baryon - theta_photon``. However fast Thomson scattering is, the drag
@@ -24,7 +34,7 @@ import numpy as np
 
 from ..solver.collocation import STAGES
 from ..universe import Conditions, Universe
-from .readout import Reading, constraint_drift, read_quantities
+from .readout import Reading, constraint_drift, read_moving_dark_matter, read_quantities
 from .start import mixed
 
 # Absorbing layer: rate at the last moment in units of k, and the power of l / L with which it fades to low moments.
@@ -79,7 +89,10 @@ class KineticSystem:
         self.chains = chains
         curvature = -np.asarray(universe.gravity("curvature", 1.0)) / 3.0
         self._curvature = np.broadcast_to(curvature, self.wavenumber.shape)  # of space [1/Mpc^2]
-        self.unknowns = _elimination_order(self.chains)
+        self.dark_pressure = universe.has_dark_pressure
+        self.unknowns = _elimination_order(self.chains, self.dark_pressure)
+        if self.dark_pressure:
+            self.observed = (*type(self).observed, "theta_dark")
         self._row = {name: row for row, name in enumerate(self.unknowns)}
 
     def first_state(self, start: np.ndarray, weights: Mapping[str, np.ndarray] | None = None) -> np.ndarray:
@@ -118,7 +131,11 @@ class KineticSystem:
         """
         now = self.universe.conditions(times)
         y = dict(zip(self.observed, observed, strict=True))
-        return Reading(read_quantities(now, self.wavenumber, y), constraint_drift(now, self.wavenumber, y))
+        quantities = read_quantities(now, self.wavenumber, y)
+        if self.dark_pressure:
+            speed = self.universe.dark_sound_speed(now.scale_factor)
+            quantities |= read_moving_dark_matter(now, self.wavenumber, y, speed)
+        return Reading(quantities, constraint_drift(now, self.wavenumber, y))
 
     def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict:
         """Evaluate step times rate; see `twofluid.solver.LinearSystem`."""
@@ -133,6 +150,8 @@ class KineticSystem:
             **_polarization(surroundings),
             **_chains(surroundings, self.chains),
         }
+        if self.dark_pressure:
+            named |= _dark_pressure(surroundings, self.universe.dark_sound_speed(now.scale_factor, modes))
         if self.held_to_constraint:
             for entry, rate in _constraint(surroundings, self.wavenumber[modes] * time).items():
                 named[entry] = named.get(entry, 0.0) + rate
@@ -150,7 +169,7 @@ class ConstrainedKineticSystem(KineticSystem):
     held_to_constraint = True
 
 
-def _elimination_order(chains: ChainLengths) -> tuple[str, ...]:
+def _elimination_order(chains: ChainLengths, dark_pressure: bool) -> tuple[str, ...]:
     """Passive curvature first, then chains from their far end, the most coupled unknowns last.
 
     Equal moments of photons and polarization follow one another: chains of equal length share
@@ -164,6 +183,7 @@ def _elimination_order(chains: ChainLengths) -> tuple[str, ...]:
     ]
     tails += [f"neutrino_{moment}" for moment in range(chains.neutrino, FIRST_ABSORBED - 1, -1)]
     densities = ["delta_dark", "delta_baryon", "delta_photon", "delta_neutrino"]
+    densities += ["theta_dark"] if dark_pressure else []
     core = ["delta_gas_temperature", "polarization_1", "polarization_0", "neutrino_2", "polarization_2",
             "photon_2", "slip", "theta_neutrino", "theta_baryon", "metric_rate"]  # fmt: skip
     return ("curvature", *tails, *densities, *core)
@@ -262,6 +282,19 @@ def _velocities(s: _Surroundings) -> dict:
         ("slip", "photon_2"): s.x / 2,
         ("theta_neutrino", "delta_neutrino"): s.x / 4,
         ("theta_neutrino", "neutrino_2"): -s.x / 2,
+    }
+
+
+def _dark_pressure(s: _Surroundings, speed: np.ndarray) -> dict:
+    """Velocity of dark matter with pressure, and what it does to metric and shears; see the module's text."""
+    shear = 4 / 5 * s.gravity_dark
+    return {
+        ("delta_dark", "theta_dark"): -s.x,
+        ("theta_dark", "theta_dark"): -s.hubble,
+        ("theta_dark", "delta_dark"): (speed**2).reshape(STAGES, -1) * s.x,
+        ("curvature", "theta_dark"): s.gravity_dark / 2,
+        ("photon_2", "theta_dark"): shear,
+        ("neutrino_2", "theta_dark"): shear,
     }
 
 

@@ -2,7 +2,8 @@
 
 Where dark matter rules, its smooth gravity forgives much. Where it does not, the damped acoustic
 oscillation and the free streaming of the radiation are all there is, so both have to be followed
-more finely for the same accuracy.
+more finely for the same accuracy. Dark matter with pressure does not rule: below its Jeans scale it
+is as smooth as they are.
 """
 
 from dataclasses import dataclass, fields, replace
@@ -55,7 +56,7 @@ class Accuracy:
         Numerical error that is not exceeded: of the dark-matter contrast, relative, and of the ratio of
         baryon to dark-matter contrast, absolute [unitless]. Measured; see the guide for developers.
     dark_ruled, baryon_ruled : Resolution
-        Settings where dark matter is more, or less, than a quarter of the matter.
+        Settings where dark matter is cold and more than a quarter of the matter, and where it is not.
     """
 
     promise: float
@@ -115,4 +116,5 @@ def resolution_for(universe: Universe, accuracy: str = "standard") -> Resolution
     """
     dark, baryon = universe.gravity("dark", 1.0), universe.gravity("baryon", 1.0)
     settings = ACCURACIES[accuracy]
-    return settings.dark_ruled if dark >= RULING_FRACTION * (dark + baryon) else settings.baryon_ruled
+    rules = dark >= RULING_FRACTION * (dark + baryon) and not universe.has_dark_pressure
+    return settings.dark_ruled if rules else settings.baryon_ruled

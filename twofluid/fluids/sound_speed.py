@@ -30,6 +30,10 @@ Streaming radiation
     where shear has built up since the beginning, sigma = (2/15) tau S, and makes the contrast smooth
     inside, with the rate ``n k``. Photons do not remember their waves in the plasma.
 
+Dark matter
+    With pressure it moves against the frame: ``-theta_c`` is added to delta_c', the velocity follows
+    ``theta_c' = -H theta_c + k^2 c_s^2 delta_c`` and adds to eta', as in the kinetic closure.
+
 The energy constraint of Einstein's equations is no check on this closure: photons change over from one
 fluid to the other, and the shear of what streams is prescribed.
 
@@ -87,6 +91,9 @@ class SoundSpeedSystem:
         self.wavenumber = np.asarray(wavenumber, dtype=float)
         self.release = float(universe.conformal_time(1.0 / (1.0 + universe.landmarks.drag_redshift)))
         self.switches = (self.release,)
+        self.dark_pressure = universe.has_dark_pressure
+        if self.dark_pressure:
+            self.unknowns = self.observed = ("theta_dark", *type(self).unknowns)
         self._row = {name: row for row, name in enumerate(self.unknowns)}
 
     @property
@@ -113,7 +120,7 @@ class SoundSpeedSystem:
         """
         first = mixed(self.universe, self.wavenumber, start, weights)
         first |= {"delta_stream": first["delta_neutrino"], "theta_stream": first["theta_neutrino"]}
-        return np.stack([first[name] for name in self.unknowns])
+        return np.stack([first.get(name, np.zeros(len(start))) for name in self.unknowns])
 
     def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict:
         """Evaluate step times rate; see `twofluid.solver.LinearSystem`."""
@@ -153,6 +160,13 @@ class SoundSpeedSystem:
             "theta_baryon": 1.5 * (now.gravity_baryon + 4 / 3 * held) / k**2,
             "theta_stream": 2.0 * streaming / k**2,
         }
+        if self.dark_pressure:
+            rates |= {
+                ("delta_dark", "theta_dark"): -k,
+                ("theta_dark", "theta_dark"): -hubble,
+                ("theta_dark", "delta_dark"): k * self.universe.dark_sound_speed(now.scale_factor) ** 2,
+            }
+            expansion["theta_dark"] = 1.5 * now.gravity_dark / k**2
         resistance = {"theta_baryon": np.where(in_plasma, 2.0 * k**2 * diffusion, 0.0), "theta_stream": viscosity}
         for fluid, rate in resistance.items():
             for name, share in expansion.items():
@@ -192,6 +206,9 @@ class SoundSpeedSystem:
             "theta_baryon_slope": self.wavenumber * slope["theta_baryon"],
             "delta_gas_temperature_slope": stiffness * slope["delta_baryon"] + change * y["delta_baryon"],
         }
+        if self.dark_pressure:
+            velocity = {"theta_dark": y["theta_dark"], "theta_dark_slope": slope["theta_dark"]}
+            quantities |= {name: self.wavenumber * value for name, value in velocity.items()}
         return Reading(quantities, np.full((len(times) - 1, times.shape[1]), np.nan))
 
 

@@ -9,6 +9,10 @@ matters. Once it no longer does it is left unresolved and the method damps it. I
 * its gravity is felt, k tau < `Stepping.felt_phase` / sqrt(dark-matter fraction), or diffusion
   will not have damped it when the baryons are released, or at a later time that is asked for.
   Without dark matter there is no such bound.
+
+Dark matter with pressure oscillates too, below its own Jeans scale. Nothing damps that, and where the Jeans scale
+shrinks the wave that is left is what grows in the end: it is resolved to the last, and the finer the more radians
+there are for errors to add up over. Modes of too many radians are refused (`check_dark_waves`).
 """
 
 from dataclasses import dataclass, replace
@@ -21,6 +25,9 @@ from ..universe import Conditions, Universe
 NODES_PER_UNIT = 60  # nodes of the density per unit of log conformal time
 MIXTURES_OUTSIDE = 3.0  # shorter steps far outside the horizon for mixtures of initial modes (measured)
 FAR_OUTSIDE = 0.3  # k tau up to which a mode counts as far outside the horizon
+DARK_PHASE_SHARE = 0.5  # longest k c_s dtau of waves of the dark matter, over `Stepping.phase_step` (measured)
+DARK_RADIANS = 100.0  # from so many on steps shorten as radians^(-1/5): the method is of order five
+MOST_DARK_RADIANS = 1000.0  # that are followed; some thousand steps
 
 
 @dataclass(frozen=True)
@@ -121,7 +128,41 @@ def step_density(
     phase = wavenumber[:, None] * time
     matters = oscillation_matters(universe, wavenumber, time, stepping, asked)
     inside = np.where(matters, np.hypot(smooth, phase / stepping.phase_step), smooth)
+    if universe.has_dark_pressure:
+        dark_phase = phase * universe.dark_sound_speed(now.scale_factor)
+        inside = np.hypot(inside, dark_phase / _longest_dark_phase(universe, wavenumber, stepping)[:, None])
     return np.where(phase < FAR_OUTSIDE, per_expansion / stepping.outside_step, inside)
+
+
+def check_dark_waves(universe: Universe, wavenumber: np.ndarray) -> None:
+    """Refuse modes in which the dark matter oscillates more often than is followed.
+
+    Parameters
+    ----------
+    universe : Universe
+    wavenumber : array, shape (mode,)
+        Comoving wavenumbers [1/Mpc].
+
+    Raises
+    ------
+    ValueError
+        If one goes through more than `MOST_DARK_RADIANS` by today.
+    """
+    if not universe.has_dark_pressure:
+        return
+    way, largest = float(universe.dark_sound_horizon(1.0)), np.max(wavenumber)
+    if way * largest > MOST_DARK_RADIANS:
+        raise ValueError(
+            f"at k = {largest:.6g} 1/Mpc sound waves of the dark matter go through {way * largest:.3g} radians by "
+            f"today, and {MOST_DARK_RADIANS:g} are followed at most: ask for wavenumbers up to "
+            f"{MOST_DARK_RADIANS / way:.3g} 1/Mpc, or a lower cosmology.dark_matter.sound_speed"
+        )
+
+
+def _longest_dark_phase(universe: Universe, wavenumber: np.ndarray, stepping: Stepping) -> np.ndarray:
+    """Longest k c_s dtau of waves of the dark matter, shape (mode,)."""
+    radians = wavenumber * universe.dark_sound_horizon(1.0)
+    return DARK_PHASE_SHARE * stepping.phase_step * np.minimum(1.0, DARK_RADIANS / radians) ** 0.2
 
 
 def _pushed(now: Conditions, stepping: Stepping) -> np.ndarray:

@@ -20,7 +20,8 @@ def evolution_table(history):
     astropy.table.Table
         One row per mode and redshift, redshift (in the order asked) running fastest: wavenumber [1/Mpc],
         redshift [unitless], delta_dark [unitless], delta_baryon [unitless], theta_baryon [1/Mpc],
-        delta_gas_temperature [unitless]. Without dark matter delta_dark is empty.
+        delta_gas_temperature [unitless], and theta_dark [1/Mpc] where the dark matter has pressure.
+        Without dark matter delta_dark is empty. Velocities are relative to the frame the header names.
     """
     return make_table(history, _amplitude_columns(history))
 
@@ -55,6 +56,6 @@ def _amplitude_columns(history):
         column("delta_dark", history.delta_dark.ravel(), masked=no_dark_matter),
         *(
             column(name, getattr(history, name).ravel())
-            for name in ("delta_baryon", "theta_baryon", "delta_gas_temperature")
+            for name in history.evolved[1:]
         ),
     ]

@@ -3,6 +3,9 @@
 The ratio is b = delta_baryon/delta_dark. Both densities are read between the steps of the run as cubic
 Hermite pieces in ln a. Where baryons dominate, their waves can carry delta_dark through zero; only signs
 relative to it matter below.
+
+Dark matter with pressure can be the one that lags: then b is above 1 and the delay is empty. Its own waves, too, can
+carry delta_dark through zero.
 """
 
 from __future__ import annotations

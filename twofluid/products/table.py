@@ -13,6 +13,10 @@ FRAME = (
     "synchronous, at rest with the dark matter (without dark matter: carried by massless dust); "
     "amplitudes per unit comoving curvature, signed so that densities grow positive"
 )
+FRAME_OF_DUST = (
+    "synchronous, carried by cold dust without mass: the dark matter, since it has pressure, moves against it as the "
+    "baryons do; amplitudes per unit comoving curvature, signed so that densities grow positive"
+)
 NO_DARK_MATTER = "this universe has no dark matter; whatever is measured against it is empty"
 MIXTURE = (
     "initial modes other than the adiabatic one alone: amplitudes are not per unit comoving curvature but per square "
@@ -147,7 +151,7 @@ def header(history):
         "scenario": history.scenario.to_mapping(),
         "assumed": list(history.scenario.assumptions()),
         "closure": history.scenario.method.closure,
-        "frame": FRAME,
+        "frame": FRAME if history.theta_dark is None else FRAME_OF_DUST,
         "landmarks": {name: _rounded(name, value) for name, value in landmarks.items()},
         "certificate": NO_CERTIFICATE if history.certificate is None else history.certificate.sentence(),
         "warnings": list(history.warnings),

@@ -5,11 +5,12 @@ from .keys import ADIABATIC
 from .manual import key_table_markdown, scenario_template
 from .mixture import Mixture, Part, Share, check_mixture, mixture_lines, parts
 from .reader import parse_scenario, read_scenario, scenario_from_mapping
-from .request import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
+from .request import Cosmology, DarkMatter, Method, Neutrinos, Primordial, Sampling, Scenario
 
 __all__ = [
     "ADIABATIC",
     "Cosmology",
+    "DarkMatter",
     "Method",
     "Mixture",
     "Neutrinos",

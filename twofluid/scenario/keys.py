@@ -132,6 +132,7 @@ MIXTURE = "primordial.mixture"
 SECTIONS = {
     "cosmology": "the smooth universe",
     "cosmology.neutrinos": "neutrinos",
+    "cosmology.dark_matter": "pressure of the dark matter: c_s(z) = sound_speed ((1 + z)/(1 + at_redshift))^scaling",
     "primordial": "primordial curvature perturbations, a power law in wavenumber",
     MIXTURE: "initial modes; without this section the adiabatic one alone",
     **{f"{MIXTURE}.{mode}": meaning for mode, meaning in INITIAL_MODES.items()},
@@ -200,6 +201,14 @@ KEYS = (
     Key("cosmology.neutrinos.masses", Kind.QUANTITIES, "neutrino masses; for now only the empty list",
         unit="eV", default=(), example="[]", shortest=0, longest=0,
         longest_reason="this version follows massless neutrinos only"),
+    Key("cosmology.dark_matter.sound_speed", Kind.QUANTITY, "effective sound speed of the dark matter; 0 is cold",
+        unit="km/s", allowed=Allowed(0, 29979), default=0.0, example="0 km/s"),  # up to a tenth of c: still matter
+    Key("cosmology.dark_matter.at_redshift", Kind.NUMBER, "redshift at which that sound speed is given",
+        allowed=Allowed(0, 1e6), default=0.0, example="0"),
+    # Momenta of free particles fall as 1 + z; sound speeds at the photons' temperature as its root.
+    Key("cosmology.dark_matter.scaling", Kind.NUMBER,
+        "power of 1 + z with which it changes: 1 for free particles, 0.5 for those heated by photons",
+        allowed=Allowed(0, 1), default=1.0, example="1"),
     Key("primordial.amplitude", Kind.NUMBER, "power of the curvature perturbations at the pivot",
         allowed=Allowed(0, 1, low_open=True), default=2.1e-9, example="2.1e-9"),
     Key("primordial.tilt", Kind.NUMBER, "exponent n of the power law, 1 for equal power on all scales",

@@ -10,7 +10,7 @@ from .family import read_document, refuse_base
 from .keys import ADIABATIC, DEFAULT_PRODUCTS, MIXTURE, OPTIONAL_SECTIONS, keys_under, name_of, sections_under
 from .mixture import Mixture, Share, check_mixture
 from .names import checked_names
-from .request import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
+from .request import Cosmology, DarkMatter, Method, Neutrinos, Primordial, Sampling, Scenario
 from .values import read_value
 
 UNTITLED = "untitled"  # title of a scenario that has neither a title nor a file
@@ -90,10 +90,13 @@ def _scenario(entry, title, source):
     _read_section("", entry, values, assumed)
     if values["title"] is None:
         values["title"] = title
-    neutrinos = Neutrinos(**_pick(values, "cosmology.neutrinos"))
+    inner = {
+        "neutrinos": Neutrinos(**_pick(values, "cosmology.neutrinos")),
+        "dark_matter": DarkMatter(**_pick(values, "cosmology.dark_matter")),
+    }
     scenario = Scenario(
         title=values["title"],
-        cosmology=Cosmology(**_pick(values, "cosmology"), neutrinos=neutrinos),
+        cosmology=Cosmology(**_pick(values, "cosmology"), **inner),
         primordial=Primordial(**_pick(values, "primordial"), mixture=_mixture(values)),
         sampling=Sampling(**_pick(values, "sampling")),
         products={name: _pick(values, f"products.{name}") for name in entry.content["products"].content},

@@ -10,6 +10,7 @@ from .spacing import range_of
 _FIELD_SECTIONS = (  # read into dataclasses
     "cosmology",
     "cosmology.neutrinos",
+    "cosmology.dark_matter",
     "primordial",
     *(path for path in SECTIONS if path.startswith(MIXTURE)),
     "sampling",
@@ -41,6 +42,25 @@ class Neutrinos:
 
 
 @dataclass(frozen=True)
+class DarkMatter:
+    """Pressure of the dark matter, as an effective sound speed.
+
+    Parameters
+    ----------
+    sound_speed : float
+        Sound speed at `at_redshift`; 0 is cold [km/s].
+    at_redshift : float
+        Redshift at which it is given [unitless].
+    scaling : float
+        Power of 1 + z with which it changes [unitless].
+    """
+
+    sound_speed: float = default_of("cosmology.dark_matter.sound_speed")
+    at_redshift: float = default_of("cosmology.dark_matter.at_redshift")
+    scaling: float = default_of("cosmology.dark_matter.scaling")
+
+
+@dataclass(frozen=True)
 class Cosmology:
     """The smooth universe asked for.
 
@@ -54,7 +74,7 @@ class Cosmology:
     baryon_density : float
         Physical density of baryons today, Omega_b h^2 [unitless].
     dark_matter_density : float
-        Physical density of cold dark matter today, Omega_c h^2 [unitless].
+        Physical density of dark matter today, Omega_c h^2 [unitless].
     photon_temperature : float
         Temperature of the photon background today [K].
     helium_mass_fraction : float
@@ -65,6 +85,8 @@ class Cosmology:
         Omega_k today, positive for an open universe [unitless].
     cosmological_constant_fraction : float or None
         Omega_Lambda today [unitless].
+    dark_matter : DarkMatter
+        Pressure of the dark matter; cold if left out.
     """
 
     hubble_constant: float
@@ -75,6 +97,7 @@ class Cosmology:
     neutrinos: Neutrinos = Neutrinos()
     curvature_fraction: float | None = None
     cosmological_constant_fraction: float | None = None
+    dark_matter: DarkMatter = DarkMatter()
 
 
 @dataclass(frozen=True)

@@ -102,6 +102,17 @@ class UniverseStack:
         look_up = self._all_columns if columns is None else self._tables.of(self.owner[columns])
         return look_up(conformal_time)
 
+    @property
+    def has_dark_pressure(self):
+        """Whether the dark matter of any of the universes is not cold."""
+        return any(universe.has_dark_pressure for universe in self.universes)
+
+    def dark_sound_speed(self, scale_factor, columns=None):
+        """Sound speed of the dark matter [c]; arguments as in `gravity`."""
+        owner = self.owner if columns is None else self.owner[columns]
+        (sound,) = self._dark_sounds.pick(owner)
+        return sound.speed(scale_factor)
+
     @cached_property
     def _contents(self):
         return SideBySide([universe.contents for universe in self.universes])
@@ -109,6 +120,10 @@ class UniverseStack:
     @cached_property
     def _all_columns(self):
         return self._tables.of(self.owner)
+
+    @cached_property
+    def _dark_sounds(self):
+        return SideBySide([universe.dark_sound for universe in self.universes])
 
     @cached_property
     def _tables(self):

@@ -7,6 +7,7 @@ import numpy as np
 from . import gas
 from .background import solve_backgrounds
 from .conditions import ConditionsTable
+from .dark import dark_sound
 from .errors import UniverseError
 from .expansion import log_scale_factor
 from .landmarks import find_landmarks
@@ -38,6 +39,7 @@ class Universe:
         background = background or solve_backgrounds([cosmology])[0]
         self._expansion = background.expansion
         self._baryons = background.baryons
+        self.dark_sound = dark_sound(cosmology)
         self._ionization = background.ionization
 
     # --- expansion ---------------------------------------------------------------------------------
@@ -126,6 +128,23 @@ class Universe:
         factor = gas.adiabatic_factor(self.gas_temperature_slope(scale_factor))
         return self.isothermal_sound_speed(scale_factor) * np.sqrt(factor)
 
+    # --- dark matter -------------------------------------------------------------------------------
+    @property
+    def has_dark_pressure(self):
+        """Whether there is dark matter, and it is not cold."""
+        return self.dark_sound.today > 0.0
+
+    def dark_sound_speed(self, scale_factor, columns=None):
+        """Sound speed of the dark matter, 0 if it is cold [c].
+
+        `columns` is there for a `UniverseStack`, as in `conditions`.
+        """
+        return self.dark_sound.speed(np.asarray(scale_factor, dtype=float))
+
+    def dark_sound_horizon(self, scale_factor):
+        """Comoving way of sound in the dark matter since the beginning [Mpc]."""
+        return self._dark_sound_way(log_scale_factor(scale_factor))
+
     # --- plasma ------------------------------------------------------------------------------------
     def plasma_sound_speed(self, scale_factor):
         """Sound speed of photons and baryons tied together, 1/sqrt(3 (1 + R)) [c]."""
@@ -147,6 +166,12 @@ class Universe:
     def _sound_way(self):
         return self._expansion.running_integral(
             lambda a: self.plasma_sound_speed(a) / self.conformal_hubble_rate(a), power=1
+        )
+
+    @cached_property
+    def _dark_sound_way(self):
+        return self._expansion.running_integral(
+            lambda a: self.dark_sound_speed(a) / self.conformal_hubble_rate(a), power=1
         )
 
     @cached_property
