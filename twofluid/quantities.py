@@ -233,7 +233,9 @@ _LANDMARKS = (
     Quantity("conformal_age", r"\tau_0", "Mpc", "conformal time today"),
 )
 
-_GROUPS = (_AXES, _AMPLITUDES, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _STREAMING, _COMPARISON, _LANDMARKS)
+_GROUPS = (
+    _AXES, _AMPLITUDES, _MIXTURE, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _STREAMING, _COMPARISON, _LANDMARKS,
+)  # fmt: skip
 
 QUANTITIES = {quantity.name: quantity for group in _GROUPS for quantity in group}
 
