@@ -149,7 +149,7 @@ def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, res
         sampling = replace(scenario.sampling, wavenumbers=tuple(k), redshifts=tuple(z))
         scenario = replace(scenario, sampling=sampling, source=None)
     resolution = resolution or resolution_for(universe, scenario.method.accuracy)
-    system = CLOSURES[scenario.method.closure](universe, k, resolution.chains)
+    system = _system(scenario, universe, k, resolution)
 
     scale_factors = np.unique(np.append(1.0 / (1.0 + z), 1.0))  # the marks: ascending, today included
     marks = universe.conformal_time(scale_factors)
@@ -160,11 +160,22 @@ def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, res
     return _Request(scenario, universe, k, z, resolution, system, asked, start, plan, named)
 
 
+def _system(scenario: Scenario, universe: Universe | UniverseStack, wavenumber: np.ndarray, resolution: Resolution):
+    """Set up the equations of a scenario."""
+    method = scenario.method
+    if not method.ionization_fluctuations:
+        return CLOSURES[method.closure](universe, wavenumber, resolution.chains)
+    if method.closure != "kinetic":
+        raise ValueError(f"ionization_fluctuations needs the closure kinetic, got {method.closure}")
+    return CLOSURES[method.closure](universe, wavenumber, resolution.chains, ionization_fluctuations=True)
+
+
 def _sweeps(requests: Sequence[_Request]) -> Iterator[list[int]]:
     """Put requests together that one sweep can solve: same equations, same chains, not too many modes."""
     groups: dict[tuple, list[int]] = {}
     for place, request in enumerate(requests):
-        key = request.scenario.method.closure, request.resolution.chains
+        method = request.scenario.method
+        key = method.closure, method.ionization_fluctuations, request.resolution.chains
         groups.setdefault(key if request.system.stackable else (place,), []).append(place)
     for places in groups.values():
         sweep, modes = [], 0
@@ -185,7 +196,7 @@ def _sweep(requests: Sequence[_Request], progress: Progress | None) -> list[Hist
     else:
         stack = UniverseStack([request.universe for request in requests], np.repeat(np.arange(len(sizes)), sizes))
         wavenumber = np.concatenate([request.wavenumber for request in requests])
-        system = type(requests[0].system)(stack, wavenumber, requests[0].resolution.chains)
+        system = _system(requests[0].scenario, stack, wavenumber, requests[0].resolution)
     times = np.exp(_side_by_side([request.plan.boundaries for request in requests]))
     first = np.concatenate([request.system.first_state(request.start) for request in requests], axis=1)
     ends = np.cumsum(sizes)

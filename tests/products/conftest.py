@@ -36,6 +36,7 @@ def make_history():
                 to_mapping=lambda: {"title": "Saltmarsh test"},
                 assumptions=lambda: ("primordial.tilt = 0.965",),
                 method=SimpleNamespace(closure="kinetic"),
+                cosmology=SimpleNamespace(thermal=None, reionization=None),
             ),
             universe=SimpleNamespace(
                 age=lambda a: AGE_TODAY * a**1.5,  # Einstein-de Sitter

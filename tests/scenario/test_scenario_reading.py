@@ -4,7 +4,19 @@ import pytest
 from astropy import units
 from scenario_texts import NO_PRODUCTS, VALUES, full_text, wavenumber_text
 
-from twofluid.scenario import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
+from twofluid.scenario import (
+    Cosmology,
+    Method,
+    Neutrinos,
+    Primordial,
+    Reionization,
+    Sampling,
+    Scenario,
+    ThermalTable,
+    parse_scenario,
+    values,
+)
+from twofluid.scenario.keys import OPTIONAL_SECTIONS
 
 MINIMAL = """
 cosmology: {hubble_constant: 70 km/(s Mpc), baryon_density: 0.02, dark_matter_density: 0.1}
@@ -30,6 +42,14 @@ def test_every_key_reaches_its_field():
             neutrinos=Neutrinos(effective_number=3.0, masses=()),
             curvature_fraction=0.01,
             cosmological_constant_fraction=0.7,
+            thermal=ThermalTable(
+                redshift=(0.0, 0.6, 1.5, 3.0, 5.5, 9.0, 14.0, 21.0, 33.0),
+                gas_temperature=(8e3, 9e3, 1e4, 1e4, 9e3, 500.0, 60.0, 15.0, 22.0),
+                electron_fraction=(1.0, 1.0, 1.0, 1.0, 0.9, 0.1, 0.01, 5e-4, 2e-4),
+                below_redshift=30.0,
+                joining_width=0.2,
+            ),
+            reionization=Reionization(redshift=7.7, width=0.6, gas_temperature=12000.0),
         ),
         primordial=Primordial(amplitude=2e-9, tilt=0.96, pivot=0.002),
         sampling=Sampling(wavenumbers=wavenumbers, redshifts=(1000.0, 100.0, 10.0)),
@@ -37,7 +57,7 @@ def test_every_key_reaches_its_field():
             "lag": {"fractions": (0.5, 0.9)},
             "scales": {"mass_radius": 1.0, "together": 0.95, "map_from": 3e4},
         },
-        method=Method("sound-speed", "reference"),
+        method=Method("kinetic", "reference", True),
     )
     assert len(wavenumbers) == 21  # four decades, five points each, both ends
     assert scenario.assumed == ()
@@ -62,6 +82,7 @@ def test_defaults_fill_what_is_left_out_and_are_named():
     }
     not_made = set(NO_PRODUCTS) - {"products.lag.fractions"}
     leaves = {path for path, value in VALUES.items() if value} - required - not_made
+    leaves = {path for path in leaves if not path.startswith(tuple(OPTIONAL_SECTIONS))} | set(OPTIONAL_SECTIONS)
     assert set(scenario.assumed) == {path for path in leaves if "wavenumbers" not in path}
     assert len(scenario.assumed) == len(set(scenario.assumed))
 

@@ -7,6 +7,7 @@ from dataclasses import asdict
 import numpy as np
 
 from twofluid.quantities import QUANTITIES
+from twofluid.scenario import thermal_sentence
 
 FRAME = (
     "synchronous, at rest with the dark matter (without dark matter: carried by massless dust); "
@@ -107,7 +108,8 @@ def header(history):
     Returns
     -------
     dict
-        Program and version, scenario, what was assumed, closure, frame, landmarks, certificate, warnings.
+        Program and version, scenario, what was assumed, closure, frame, landmarks, certificate, warnings, and
+        where there is one the late history of the gas.
     """
     from twofluid import __version__
 
@@ -118,10 +120,12 @@ def header(history):
         "assumed": list(history.scenario.assumptions()),
         "closure": history.scenario.method.closure,
         "frame": FRAME,
-        "landmarks": {name: _rounded(name, value) for name, value in landmarks.items()},
+        "landmarks": {name: _rounded(name, value) for name, value in landmarks.items() if value is not None},
         "certificate": NO_CERTIFICATE if history.certificate is None else history.certificate.sentence(),
         "warnings": list(history.warnings),
     }
+    if sentence := thermal_sentence(history.scenario.cosmology):
+        provenance["gas"] = sentence
     if not history.has_dark_matter:
         provenance["no_dark_matter"] = NO_DARK_MATTER
     return provenance

@@ -13,6 +13,7 @@ WAVENUMBER_UNIT = "1/Mpc"
 MOST_WAVENUMBERS = 100_000  # longest list of modes; keeps a slip of the pen from filling the memory
 MOST_REDSHIFTS = 1_000  # longest list of redshifts; the same reason
 MOST_FRACTIONS = 100  # longest list of fractions of one product; the same reason
+MOST_TABLE_ROWS = 5_000  # of a thermal history: smooth curves need a few dozen, and all of it goes into every header
 
 
 def section_of(path):
@@ -40,6 +41,8 @@ class Kind(Enum):
     QUANTITIES = "list of numbers with unit"
     WAVENUMBERS = "range, or list of numbers with unit"
     CHOICE = "one word of a few"
+    SWITCH = "true or false"
+    TABLE = "file name, or columns"
 
 
 @dataclass(frozen=True)
@@ -120,12 +123,20 @@ class Key:
 SECTIONS = {
     "cosmology": "the smooth universe",
     "cosmology.neutrinos": "neutrinos",
+    "thermal": "gas temperature and electrons of a table in place of the computed ones, late in the history",
+    "reionization": "a simple step from neutral to ionized gas: hydrogen and the first electron of helium",
     "primordial": "primordial curvature perturbations, a power law in wavenumber",
     "sampling": "where the answer is wanted",
     "method": "how the answer is computed",
     "products": "which products to make: {} for none, lag if the section is left out",
     "products.lag": "how far the baryons lag the dark matter",
     "products.scales": "horizon, sound, Jeans, filtering and diffusion scales, and what each mode is doing",
+}
+
+# Sections that ask for something only by being there, and what is done without them.
+OPTIONAL_SECTIONS = {
+    "thermal": "none, the gas is heated by Compton scattering alone",
+    "reionization": "none, the gas stays neutral but for what recombination leaves",
 }
 
 DEFAULT_PRODUCTS = ("lag",)  # made when the file has no section `products`
@@ -160,6 +171,31 @@ KEYS = (
     Key("cosmology.neutrinos.masses", Kind.QUANTITIES, "neutrino masses; for now only the empty list",
         unit="eV", default=(), example="[]", shortest=0, longest=0,
         longest_reason="this version follows massless neutrinos only"),
+    Key("thermal.table", Kind.TABLE,
+        "ECSV file beside this one with the columns below, or these columns; from z = 0, no gap of 0.5 in ln(1 + z)",
+        required=True, longest=MOST_TABLE_ROWS, example="heating.ecsv"),
+    Key("thermal.table.redshift", Kind.NUMBERS, "redshift of each row, rising or falling",
+        allowed=Allowed(0, 1000), required=True, longest=MOST_TABLE_ROWS,
+        example="[0, 0.6, 1.5, 3, 5.5, 9, 14, 21, 33]"),
+    Key("thermal.table.gas_temperature", Kind.QUANTITIES, "temperature of the gas, its logarithm interpolated",
+        unit="K", allowed=Allowed(0, 1e9, low_open=True), required=True, longest=MOST_TABLE_ROWS,
+        example="[8000 K, 9000 K, 11000 K, 12000 K, 9500 K, 500 K, 60 K, 15 K, 22 K]"),
+    Key("thermal.table.electron_fraction", Kind.NUMBERS, "free electrons per hydrogen nucleus, helium's included",
+        allowed=Allowed(0, 10, low_open=True), required=True, longest=MOST_TABLE_ROWS,
+        example="[1.08, 1.07, 1.06, 1.05, 0.9, 0.1, 0.01, 5e-4, 2e-4]"),
+    Key("thermal.below_redshift", Kind.NUMBER, "redshift below which the table is used",
+        allowed=Allowed(1, 600), required=True, example="30"),
+    Key("thermal.joining_width", Kind.NUMBER,
+        "stretch of ln(1 + z), down from that redshift, over which the computed history passes into the table",
+        allowed=Allowed(0.02, 1), default=0.1, example="0.1"),
+    Key("reionization.redshift", Kind.NUMBER, "redshift at which half of the hydrogen is ionized",
+        allowed=Allowed(2, 100), required=True, example="7.7"),
+    Key("reionization.width", Kind.NUMBER,
+        "w of the step (1 + tanh((z_re - z)/w))/2 in redshift; at least 0.02 (1 + z_re), at most z_re/4",
+        allowed=Allowed(0.06, 25), required=True, example="0.5"),
+    Key("reionization.gas_temperature", Kind.QUANTITY, "temperature the step brings the gas to, and keeps it at",
+        unit="K", allowed=Allowed(1, 1e6), example="1e4 K",
+        unsaid="no heat from ionizing light: Compton heating and expansion, or the table"),
     Key("primordial.amplitude", Kind.NUMBER, "power of the curvature perturbations at the pivot",
         allowed=Allowed(0, 1, low_open=True), default=2.1e-9, example="2.1e-9"),
     Key("primordial.tilt", Kind.NUMBER, "exponent n of the power law, 1 for equal power on all scales",
@@ -186,6 +222,9 @@ KEYS = (
     Key("method.accuracy", Kind.CHOICE,
         "step and chain settings: numerical error of the contrasts below 2e-3, 2e-4 or 3e-5",
         choices=("draft", "standard", "reference"), default="standard", example="standard"),
+    Key("method.ionization_fluctuations", Kind.SWITCH,
+        "recombination responds to density and temperature: electron fraction contrasts (kinetic closure)",
+        default=False, example="false"),
     Key("products.lag.fractions", Kind.NUMBERS,
         "ratios of baryon to dark-matter amplitude whose redshift is wanted",
         allowed=Allowed(0, 1, low_open=True, high_open=True), default=(0.5, 0.9, 0.95, 0.99),

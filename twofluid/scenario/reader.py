@@ -4,12 +4,14 @@ from dataclasses import replace
 from os import fsdecode
 from pathlib import Path
 
+from .attached import with_tables
 from .document import entry_from_plain, entry_from_text
 from .errors import printable
 from .family import read_document, refuse_base
-from .keys import DEFAULT_PRODUCTS, keys_under, name_of, sections_under
+from .keys import DEFAULT_PRODUCTS, OPTIONAL_SECTIONS, keys_under, name_of, sections_under
 from .names import checked_names
-from .request import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
+from .request import Cosmology, Method, Neutrinos, Primordial, Reionization, Sampling, Scenario, ThermalTable
+from .thermal import refuse_faults
 from .values import read_value
 
 UNTITLED = "untitled"  # title of a scenario that has neither a title nor a file
@@ -35,7 +37,7 @@ def read_scenario(path):
     """
     name = fsdecode(path)
     return _scenario(
-        read_document(path, name), title=printable(Path(name).stem).strip() or UNTITLED, source=name
+        with_tables(read_document(path, name)), title=printable(Path(name).stem).strip() or UNTITLED, source=name
     )
 
 
@@ -89,10 +91,9 @@ def _scenario(entry, title, source):
     _read_section("", entry, values, assumed)
     if values["title"] is None:
         values["title"] = title
-    neutrinos = Neutrinos(**_pick(values, "cosmology.neutrinos"))
-    return Scenario(
+    scenario = Scenario(
         title=values["title"],
-        cosmology=Cosmology(**_pick(values, "cosmology"), neutrinos=neutrinos),
+        cosmology=_cosmology(values),
         primordial=Primordial(**_pick(values, "primordial")),
         sampling=Sampling(**_pick(values, "sampling")),
         products={name: _pick(values, f"products.{name}") for name in entry.content["products"].content},
@@ -100,6 +101,19 @@ def _scenario(entry, title, source):
         source=source,
         method=Method(**_pick(values, "method")),
     )
+    refuse_faults(entry, scenario)
+    return scenario
+
+
+def _cosmology(values):
+    thermal = reionization = None
+    if "thermal.table" in values:
+        options = _pick(values, "thermal")
+        thermal = ThermalTable(**options.pop("table"), **options)
+    if "reionization.redshift" in values:
+        reionization = Reionization(**_pick(values, "reionization"))
+    neutrinos = Neutrinos(**_pick(values, "cosmology.neutrinos"))
+    return Cosmology(**_pick(values, "cosmology"), neutrinos=neutrinos, thermal=thermal, reionization=reionization)
 
 
 def _with_products(entry):
@@ -130,7 +144,11 @@ def _read_section(section, entry, values, assumed):
             assumed.append(key.path)
     for inner in sections_under(section):
         name = name_of(inner)
-        if name in names or section != "products":
+        if inner in OPTIONAL_SECTIONS and (name not in names or names[name].cleared):
+            assumed.append(inner)
+        elif inner in OPTIONAL_SECTIONS and names[name].content == {}:
+            continue  # none, as the file says
+        elif name in names or section != "products":
             _read_section(inner, names.get(name) or entry.child(name, {}), values, assumed)
 
 

@@ -4,10 +4,13 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from operator import attrgetter
 
-from .keys import DEFAULT_PRODUCTS, KEY_AT, KEYS, Kind, default_of, keys_under
+from .keys import DEFAULT_PRODUCTS, KEY_AT, KEYS, OPTIONAL_SECTIONS, Kind, default_of, keys_under
 from .spacing import range_of
 
-_FIELD_SECTIONS = ("cosmology", "cosmology.neutrinos", "primordial", "sampling", "method")  # read into dataclasses
+_FIELD_SECTIONS = (
+    "cosmology", "cosmology.neutrinos", *OPTIONAL_SECTIONS, "primordial", "sampling", "method",
+)  # read into dataclasses  # fmt: skip
+TABLE_COLUMNS = tuple(key.name for key in keys_under("thermal.table"))
 
 
 def _floats(values):
@@ -31,6 +34,63 @@ class Neutrinos:
 
     def __post_init__(self):
         object.__setattr__(self, "masses", _floats(self.masses))
+
+
+@dataclass(frozen=True)
+class ThermalTable:
+    """A history of the gas that takes the place of the computed one. Rows are kept in order of rising redshift.
+
+    Parameters
+    ----------
+    redshift : tuple of float
+        Rising or falling, shape (row,) [unitless].
+    gas_temperature : tuple of float
+        Temperature of the gas, shape (row,) [K].
+    electron_fraction : tuple of float
+        Free electrons per hydrogen nucleus, shape (row,) [unitless].
+    below_redshift : float
+        Redshift below which it is used [unitless].
+    joining_width : float
+        Stretch of ln(1 + z), down from there, over which one history passes into the other [unitless].
+    """
+
+    redshift: tuple[float, ...]
+    gas_temperature: tuple[float, ...]
+    electron_fraction: tuple[float, ...]
+    below_redshift: float
+    joining_width: float = default_of("thermal.joining_width")
+
+    def __post_init__(self):
+        falling = len(self.redshift) > 1 and self.redshift[0] > self.redshift[-1]
+        for name in TABLE_COLUMNS:
+            values = _floats(getattr(self, name))
+            object.__setattr__(self, name, values[::-1] if falling else values)
+
+    @property
+    def table(self):
+        """The columns by name, a dict of str to tuple of float."""
+        return {name: getattr(self, name) for name in TABLE_COLUMNS}
+
+
+@dataclass(frozen=True)
+class Reionization:
+    """A step from neutral to ionized gas: hydrogen and the first electron of helium.
+
+    The ionized share is (1 + tanh((redshift - z)/width))/2.
+
+    Parameters
+    ----------
+    redshift : float
+        Where half of the hydrogen is ionized [unitless].
+    width : float
+        Of the step in redshift [unitless].
+    gas_temperature : float or None
+        Temperature of the ionized gas, from then on to this day [K]; None: ionizing brings no heat.
+    """
+
+    redshift: float
+    width: float
+    gas_temperature: float | None = None
 
 
 @dataclass(frozen=True)
@@ -58,6 +118,10 @@ class Cosmology:
         Omega_k today, positive for an open universe [unitless].
     cosmological_constant_fraction : float or None
         Omega_Lambda today [unitless].
+    thermal : ThermalTable or None
+        Late history of the gas from a table.
+    reionization : Reionization or None
+        Step from neutral to ionized gas; where there is a table too, it acts on what the table gives.
     """
 
     hubble_constant: float
@@ -68,6 +132,8 @@ class Cosmology:
     neutrinos: Neutrinos = Neutrinos()
     curvature_fraction: float | None = None
     cosmological_constant_fraction: float | None = None
+    thermal: ThermalTable | None = None
+    reionization: Reionization | None = None
 
 
 @dataclass(frozen=True)
@@ -119,10 +185,13 @@ class Method:
         Which equations are solved: "kinetic" or "sound-speed".
     accuracy : str
         How finely they are followed: "draft", "standard" or "reference".
+    ionization_fluctuations : bool
+        Whether recombination responds to the contrasts of density and temperature.
     """
 
     closure: str = default_of("method.closure")
     accuracy: str = default_of("method.accuracy")
+    ionization_fluctuations: bool = default_of("method.ionization_fluctuations")
 
 
 def default_products():
@@ -153,7 +222,7 @@ class Scenario:
     products : mapping of str to mapping
         Names of the products to make and their options.
     assumed : tuple of str
-        Dotted keys the file left to their defaults.
+        Dotted keys, and optional sections, that the file left out.
     source : str or None
         File the scenario was read from.
     method : Method
@@ -169,6 +238,16 @@ class Scenario:
     source: str | None = field(default=None, compare=False)
     method: Method = Method()
 
+    @property
+    def thermal(self):
+        """The table of the cosmology, a `ThermalTable` or None; a section of its own in a file."""
+        return self.cosmology.thermal
+
+    @property
+    def reionization(self):
+        """The step of the cosmology, a `Reionization` or None; a section of its own in a file."""
+        return self.cosmology.reionization
+
     def to_mapping(self):
         """Write the request as a nested mapping of plain values, quantities as text with their unit.
 
@@ -181,6 +260,9 @@ class Scenario:
         mapping = {"title": str(self.title)}
         for key in KEYS:
             if key.section not in _FIELD_SECTIONS:
+                continue
+            if key.section in OPTIONAL_SECTIONS and getattr(self, key.section) is None:
+                mapping[key.section] = {}
                 continue
             value = attrgetter(key.path)(self)
             if value is not None:
@@ -207,16 +289,24 @@ def _plain(value, key):
     """Turn a clean value into what a file would say: plain numbers, and text where a unit is due."""
     if key is None:
         return list(value) if isinstance(value, tuple) else value
+    if key.kind in _WRITTEN:
+        return _WRITTEN[key.kind](value)
     if key.kind is Kind.WAVENUMBERS and (found := range_of(value)):
         low, high, per_decade = found
         return {"from": _with_unit(low, key), "to": _with_unit(high, key), "per_decade": per_decade}
     if key.kind in (Kind.WAVENUMBERS, Kind.QUANTITIES):
         return [_with_unit(item, key) for item in value]
-    if key.kind is Kind.NUMBERS:
-        return [float(item) for item in value]
-    if key.kind is Kind.CHOICE:
-        return str(value)
-    return _with_unit(value, key) if key.kind is Kind.QUANTITY else float(value)
+    if key.kind is Kind.TABLE:
+        return {part.name: _plain(value[part.name], part) for part in keys_under(key.path)}
+    return _with_unit(value, key)
+
+
+_WRITTEN = {
+    Kind.NUMBER: float,
+    Kind.NUMBERS: lambda value: [float(item) for item in value],
+    Kind.CHOICE: str,
+    Kind.SWITCH: bool,
+}
 
 
 def _with_unit(value, key):
@@ -231,6 +321,8 @@ def _section_of(mapping, key):
 
 
 def _assumed_text(mapping, path):
+    if path in OPTIONAL_SECTIONS:
+        return OPTIONAL_SECTIONS[path]
     value = mapping
     for name in path.split("."):
         value = value.get(name)

@@ -71,8 +71,13 @@ class ConditionsTable:
     Parameters
     ----------
     expansion : Expansion
-    ionization : Ionization
+    ionization : Ionization or HeatedGas
     baryons : Baryons
+
+    Attributes
+    ----------
+    scale_factor : array, shape (node,)
+        At the nodes of the table [unitless].
     """
 
     def __init__(self, expansion, ionization, baryons):
@@ -80,7 +85,7 @@ class ConditionsTable:
         earliest = float(expansion.conformal_time(EARLIEST_TABLE_SCALE_FACTOR))
         latest = float(expansion.conformal_time(1.0))
         log_time = np.linspace(np.log(earliest), np.log(latest), TABLE_INTERVALS + 1)
-        a = expansion.scale_factor(np.minimum(np.exp(log_time), latest))
+        self.scale_factor = a = expansion.scale_factor(np.minimum(np.exp(log_time), latest))
         electrons, lag = ionization.state(a)
         step = (log_time[-1] - log_time[0]) / TABLE_INTERVALS
         self.rows = UniformCubic(log_time[0], step, np.stack([np.log(a), np.log(electrons), lag])).rows
@@ -122,6 +127,31 @@ class ConditionsStack:
             If a time lies outside the table of its universe.
         """
         return _look_up(conformal_time, np.shape(owner), self._rows, *(pick(part, owner) for part in self._each))
+
+
+class FurtherFields:
+    """Further functions on the nodes of the tables of one universe or several, for what few ask for.
+
+    Parameters
+    ----------
+    tables : sequence of ConditionsTable
+    values : sequence of array, shape (field, node)
+        The functions, one array a table.
+    """
+
+    def __init__(self, tables, values):
+        self._rows = np.concatenate([UniformCubic(0.0, 1.0, one).rows for one in values])
+        frames = [replace(table.frame, first_row=n * TABLE_INTERVALS) for n, table in enumerate(tables)]
+        self._frames = side_by_side(frames)
+
+    def __call__(self, conformal_time, owner=0):
+        """Values at `conformal_time`, any shape, its last axis one column for each `owner`: a list of arrays.
+
+        Times have to lie in the table of their universe.
+        """
+        frame = pick(self._frames, owner)
+        place = (np.log(conformal_time) - frame.start) * frame.per_step
+        return evaluate_rows(self._rows, place, TABLE_INTERVALS, frame.first_row)
 
 
 def _look_up(conformal_time, columns, rows, frame, contents, baryons):

@@ -5,9 +5,10 @@ from functools import cached_property
 import numpy as np
 
 from .background import solve_backgrounds
-from .conditions import ConditionsStack
+from .conditions import ConditionsStack, FurtherFields
 from .errors import UniverseError
 from .members import pick, side_by_side
+from .response import Response
 from .universe import Universe
 
 _GROUP = 16  # universes solved together, so that the intermediate arrays stay in the cache
@@ -109,3 +110,26 @@ class UniverseStack:
     @cached_property
     def _tables(self):
         return ConditionsStack([universe.conditions_table for universe in self.universes])
+
+    @property
+    def heated(self):
+        """Whether any of the universes is heated beside Compton scattering."""
+        return any(universe.heated for universe in self.universes) or None
+
+    def heating_rate(self, conformal_time, columns=None):
+        """Rate of heating as `Universe.heating_rate`, times and columns as in `conditions` [1/Mpc]."""
+        return self._heating(conformal_time, self._owner(columns))[0]
+
+    def response(self, conformal_time, columns=None):
+        """Response of the electrons as `Universe.response`, times and columns as in `conditions`."""
+        return Response(*self._response(conformal_time, self._owner(columns)))
+
+    @cached_property
+    def _heating(self):
+        tables = [universe.conditions_table for universe in self.universes]
+        return FurtherFields(tables, [universe.heating_values for universe in self.universes])
+
+    @cached_property
+    def _response(self):
+        tables = [universe.conditions_table for universe in self.universes]
+        return FurtherFields(tables, [universe.response_values for universe in self.universes])
