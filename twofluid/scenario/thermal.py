@@ -57,12 +57,12 @@ def thermal_fault(cosmology):
     Fault or None
         Rows are counted in the order of rising redshift.
     """
-    faults = []
-    if cosmology.thermal is not None:
-        faults += [_order(cosmology.thermal), _cover(cosmology.thermal), _values(cosmology)]
+    fault = None
+    if cosmology.thermal is not None:  # each rule counts on those before it
+        fault = _order(cosmology.thermal) or _cover(cosmology.thermal) or _values(cosmology)
     if cosmology.reionization is not None:
-        faults.append(_step(cosmology.reionization))
-    return next((fault for fault in faults if fault is not None), None)
+        fault = fault or _step(cosmology.reionization)
+    return fault
 
 
 def _order(table):
