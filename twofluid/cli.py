@@ -127,13 +127,16 @@ def _run(options):
 
 def _compare(options):
     from twofluid.comparison import align
+    from twofluid.products import check_products
     from twofluid.registry import comparison_names
     from twofluid.solver import SolverFailure
 
     try:
-        scenarios = [_prepare(file)[0] for file in options.files]
+        scenarios, universes = zip(*map(_prepare, options.files), strict=True)
         try:
             alignment = align(scenarios)
+            for scenario, universe in zip(alignment.scenarios, universes, strict=True):
+                check_products(scenario, universe)  # the options of the first have to suit every universe
             names = comparison_names(alignment)
         except ValueError as error:
             raise RequestError(f"compare: {error}") from error
@@ -152,8 +155,10 @@ def _compare(options):
 def _prepare(file):
     """Read a scenario and build its universe, landmarks and all."""
     from twofluid import read_scenario
+    from twofluid.fluids import check_dark_waves
+    from twofluid.products import check_products
     from twofluid.scenario import ScenarioError
-    from twofluid.universe import Universe, UniverseError
+    from twofluid.universe import Universe
 
     try:
         scenario = read_scenario(file)
@@ -162,7 +167,12 @@ def _prepare(file):
     try:
         universe = Universe(scenario.cosmology)
         _ = universe.landmarks  # a universe without them is refused now
-    except UniverseError as error:
+        check_dark_waves(universe, scenario.sampling.wavenumbers)
+    except ValueError as error:  # UniverseError is one
+        raise RequestError(f"{file}: {error}") from error
+    try:
+        check_products(scenario, universe)
+    except ValueError as error:
         raise RequestError(f"{file}: {error}") from error
     return scenario, universe
 

@@ -50,6 +50,13 @@ _AMPLITUDES = (
              "divergence of the baryon velocity (conformal time) per unit comoving curvature"),
     Quantity("delta_gas_temperature", r"\delta_T", "",
              "relative contrast of the gas temperature per unit comoving curvature"),
+    Quantity("theta_dark", r"\theta_\mathrm{c}", "1/Mpc",
+             "divergence of the velocity of dark matter with pressure, relative to the frame as that of the baryons, "
+             "per unit comoving curvature"),
+)
+
+_MIXTURE = (
+    Quantity("part", r"\mathrm{part}", "", "initial modes that follow one random field, joined by plus signs"),
 )
 
 _LAG = (
@@ -63,6 +70,64 @@ _LAG = (
              "inf: not below it at any time since the start of the run"),
     Quantity("ratio_today", r"(\delta_\mathrm{b}/\delta_\mathrm{c})_0", "",
              "baryon over dark-matter density contrast at redshift 0; empty: no dark matter"),
+)
+
+_GROWTH = (
+    Quantity("growth_dark", r"D_\mathrm{c}", "", "dark-matter contrast over that at the reference epoch"),
+    Quantity("growth_baryon", r"D_\mathrm{b}", "", "baryon contrast over that at the reference epoch"),
+    Quantity("growth_matter", r"D_\mathrm{m}", "", "matter contrast over that at the reference epoch"),
+    Quantity("rate_dark", r"f_\mathrm{c}", "", "growth rate of the dark-matter contrast, d ln delta/d ln a"),
+    Quantity("rate_baryon", r"f_\mathrm{b}", "", "growth rate of the baryon contrast, d ln delta/d ln a"),
+    Quantity("rate_matter", r"f_\mathrm{m}", "", "growth rate of the matter contrast, d ln delta/d ln a"),
+    Quantity("exponent_dark", r"p_\mathrm{c}", "",
+             "power of a with the growth of the dark matter since the reference epoch; empty: sign changed"),
+    Quantity("exponent_baryon", r"p_\mathrm{b}", "",
+             "power of a with the growth of the baryons since the reference epoch; empty: sign changed"),
+    Quantity("exponent_matter", r"p_\mathrm{m}", "",
+             "power of a with the growth of matter since the reference epoch; empty: sign changed"),
+    Quantity("suppression", r"D_\mathrm{m}/D_\mathrm{cold}", "",
+             "growth of matter since the reference epoch over that of a cold fluid in its place"),
+)
+
+_SPHERES = (
+    Quantity("sphere_radius", "R", "Mpc", "comoving radius of a sphere"),
+    Quantity("sphere_mass", "M", "solMass", "mean mass of matter in the sphere"),
+    Quantity("sigma_dark", r"\sigma_\mathrm{c}", "", "rms dark-matter contrast in spheres"),
+    Quantity("sigma_dark_error", r"\Delta\sigma_\mathrm{c}", "",
+             "error of it: sampling in wavenumber, quadrature, and what may lie beyond the run's wavenumbers"),
+    Quantity("sigma_baryon", r"\sigma_\mathrm{b}", "", "rms baryon contrast in spheres"),
+    Quantity("sigma_baryon_error", r"\Delta\sigma_\mathrm{b}", "",
+             "error of it: sampling in wavenumber, quadrature, and what may lie beyond the run's wavenumbers"),
+    Quantity("sigma_matter", r"\sigma_\mathrm{m}", "", "rms matter contrast in spheres"),
+    Quantity("sigma_matter_error", r"\Delta\sigma_\mathrm{m}", "",
+             "error of it: sampling in wavenumber, quadrature, and what may lie beyond the run's wavenumbers"),
+)
+
+_SHORTFALL = (
+    Quantity("fluid", r"\mathrm{fluid}", "", "dark matter, baryons, or matter, both weighted by density"),
+    Quantity("rms_dark", r"\Delta_\mathrm{c}", "", "rms dark-matter contrast per unit ln k"),
+    Quantity("rms_baryon", r"\Delta_\mathrm{b}", "", "rms baryon contrast per unit ln k"),
+    Quantity("rms_matter", r"\Delta_\mathrm{m}", "", "rms matter contrast per unit ln k"),
+    Quantity("rms_at_decoupling", r"\Delta(z_\mathrm{drag})", "",
+             "rms contrast at the drag epoch, of a wave per unit ln k, of a sphere inside it"),
+    Quantity("rms_needed", r"\Delta_\mathrm{needed}", "",
+             "rms contrast at the drag epoch from which a cold fluid in place of all matter reaches 1 at the "
+             "target redshift"),
+    Quantity("shortfall", r"\Delta_\mathrm{needed}/\Delta(z_\mathrm{drag})", "",
+             "factor between the contrast needed and the one there was; below 1: it was enough"),
+    Quantity("rms_at_target", r"\Delta(z_\mathrm{target})", "", "rms contrast at the target redshift"),
+    Quantity("unity_redshift", r"z_1", "",
+             "redshift at which the rms first reaches 1; empty: never by today; inf: before the run"),
+    Quantity("unity_age", r"t_1", "Gyr", "age of the universe when the rms first reaches 1"),
+    Quantity("collapse_redshift", r"z_{1.69}", "",
+             "redshift at which the rms first reaches 1.686, the linear contrast of a collapsing sphere; empty: "
+             "never by today; inf: before the run"),
+    Quantity("collapse_age", r"t_{1.69}", "Gyr", "age of the universe when the rms first reaches 1.686"),
+    Quantity("greatest_rms", r"\Delta_\mathrm{max}", "", "largest rms contrast by today"),
+    Quantity("greatest_redshift", r"z_\mathrm{max}", "",
+             "redshift of the largest rms contrast, where growth stops; 0: it grows to this day"),
+    Quantity("matter_era_age", r"t_\mathrm{matter}", "Gyr",
+             "age at which the contrast at the drag epoch would reach 1 by growing as t^(2/3) alone"),
 )
 
 _COMPARISON = (
@@ -112,12 +177,46 @@ _SCALES = (
              "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber_two_fluids; " + _NO_FILTERING),
     Quantity("filtering_mass_measured", r"M_\mathrm{Fm}", "solMass",
              "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber_measured; " + _NO_FILTERING),
+    Quantity("dark_sound_speed", r"c_\mathrm{c}", "km/s", "effective sound speed of dark matter with pressure"),
+    Quantity("dark_jeans_wavenumber", r"k_\mathrm{Jc}", "1/Mpc",
+             "comoving Jeans wavenumber (a/c) sqrt(4 pi G rho) of dark matter with pressure, rho of it and baryons"),
     Quantity("verdict", r"\mathrm{verdict}", "",
              "what the mode is doing: larger than the horizon, oscillates with the plasma, damped, held up by "
              "pressure, falls in, grows; empty: the steps of the run are too long to follow the wave"),
     Quantity("agrees_with_jeans", r"\mathrm{agrees}", "",
              "whether the mode withstands gravity (oscillates, damped, held up) exactly where its wavenumber is "
              "above jeans_wavenumber; empty: no verdict"),
+)
+
+_NO_WIND = "empty: no dark matter"
+_NOT_TOLD = "empty: no dark matter, before the patches start, or error above that in the header"
+_STREAMING = (
+    Quantity("rms_velocity", r"\sigma_\mathrm{bc}", "km/s",
+             "rms velocity of baryons relative to dark matter, all three components together; " + _NO_WIND),
+    Quantity("rms_velocity_error", r"\Delta\sigma_\mathrm{bc}", "km/s",
+             "error of it: sampling in wavenumber, and what lies beyond the wavenumbers in the header; " + _NO_WIND),
+    Quantity("mach_number", r"\mathcal{M}", "",
+             "rms_velocity over the sound speed of the gas; empty: before the drag epoch, or no dark matter"),
+    Quantity("half_variance_wavenumber", r"k_{50}", "1/Mpc",
+             "wavenumber up to which waves hold half of the variance of the velocity; " + _NO_WIND),
+    Quantity("most_variance_wavenumber", r"k_{90}", "1/Mpc",
+             "wavenumber up to which waves hold 90 per cent of the variance of the velocity; " + _NO_WIND),
+    Quantity("coherence_length", r"r_\mathrm{v}", "Mpc",
+             "comoving distance over which the velocities keep a correlation of 0.95; " + _NO_WIND),
+    Quantity("streaming_wavenumber", r"k_\mathrm{v}", "1/Mpc",
+             "a H/rms_velocity, whose wave the stream crosses in an expansion time; " + _NO_WIND),
+    Quantity("velocity_spectrum", r"\Delta_\mathrm{v}", "km/s",
+             "rms velocity of baryons relative to dark matter per unit ln k; " + _NO_WIND),
+    Quantity("velocity", r"v/\sigma_\mathrm{bc}", "",
+             "streaming velocity of the patch over its rms; empty: average over all patches"),
+    Quantity("suppression_dark", r"P_\mathrm{c}/P_\mathrm{c}(0)", "",
+             "power of dark matter where gas streams over that where it does not; " + _NOT_TOLD),
+    Quantity("suppression_baryon", r"P_\mathrm{b}/P_\mathrm{b}(0)", "",
+             "power of baryons where gas streams over that where it does not; " + _NOT_TOLD),
+    Quantity("suppression_matter", r"P_\mathrm{m}/P_\mathrm{m}(0)", "",
+             "power of matter where gas streams over that where it does not; " + _NOT_TOLD),
+    Quantity("error", r"\Delta[P/P(0)]", "",
+             "numerical error of the suppressions, the largest; empty: no dark matter, or before the patches start"),
 )
 
 _LANDMARKS = (
@@ -136,10 +235,9 @@ _LANDMARKS = (
              "photon optical depth of the electrons that a table or reionization adds; other landmarks are without"),
 )
 
-QUANTITIES = {
-    quantity.name: quantity
-    for quantity in (*_AXES, *_AMPLITUDES, *_LAG, *_SCALES, *_COMPARISON, *_LANDMARKS)
-}
+_GROUPS = (_AXES, _AMPLITUDES, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _STREAMING, _COMPARISON, _LANDMARKS)
+
+QUANTITIES = {quantity.name: quantity for group in _GROUPS for quantity in group}
 
 
 def nomenclature_markdown() -> str:

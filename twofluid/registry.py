@@ -10,26 +10,49 @@ import numpy as np
 from twofluid.drawing import (
     difference_figure,
     evolution_comparison_figure,
+    growth_figure,
     lag_comparison_figure,
     lag_figure,
     scales_figure,
+    shortfall_figure,
+    spheres_figure,
+    streaming_figure,
 )
 from twofluid.files import FIGURE_FORMATS, figure_bytes, table_bytes
 from twofluid.products import (
     catchup_table,
+    contrast_table,
     course_table,
     difference_table,
     evolution_table,
+    growth_table,
     joined_table,
     lag_table,
     map_redshifts,
+    parts_table,
     scales_table,
+    shortfall_table,
+    spheres_table,
+    streaming_spectrum_table,
+    streaming_table,
+    streaming_velocity_table,
     verdict_table,
 )
-from twofluid.report import compared_evolution_lines, compared_lag_lines, lag_lines, scales_lines
+from twofluid.report import (
+    compared_evolution_lines,
+    compared_lag_lines,
+    growth_lines,
+    lag_lines,
+    scales_lines,
+    shortfall_lines,
+    spheres_lines,
+    streaming_lines,
+)
+from twofluid.scenario import parts
+from twofluid.streaming import stream
 
 EVOLUTION = "evolution"  # the amplitudes, written whatever products are asked for
-
+PARTS = "parts"  # those of every independent part of a mixture, where there are several
 
 COMPARISON = "comparison-{}"  # what the file names of a comparison look like
 
@@ -52,6 +75,9 @@ class Product:
         of the product consists of its tables.
     drawn : mapping of str to callable
         As `tables`, for tables that only the figure is made from; they are not written.
+    prepare : callable
+        Function (history, options) -> what the tables are made from in place of the history, worked out once; for a
+        product that has to solve more than the run holds.
     """
 
     tables: Mapping[str, Callable]
@@ -60,6 +86,7 @@ class Product:
     comparison_figure: Callable | None = None
     comparison_summary: Callable | None = None
     drawn: Mapping[str, Callable] = field(default_factory=dict)
+    prepare: Callable = lambda history, options: history
 
 
 def _given(options, *names):
@@ -97,6 +124,34 @@ PRODUCTS = {
         summary=scales_lines,
         drawn={"scales_map": _on_map(_scales), "verdict_map": _on_map(_verdict)},
     ),
+    "growth": Product(
+        tables={"growth": lambda history, options: growth_table(history, **options)},
+        figure=growth_figure,
+        summary=growth_lines,
+    ),
+    "spheres": Product(
+        tables={"spheres": lambda history, options: spheres_table(history, **options)},
+        figure=spheres_figure,
+        summary=spheres_lines,
+    ),
+    "shortfall": Product(
+        tables={
+            "shortfall": lambda history, options: shortfall_table(history, **options),
+            "contrast": lambda history, options: contrast_table(history),
+        },
+        figure=shortfall_figure,
+        summary=shortfall_lines,
+    ),
+    "streaming": Product(
+        tables={
+            "streaming-velocity": lambda streaming, options: streaming_velocity_table(streaming),
+            "streaming-spectrum": lambda streaming, options: streaming_spectrum_table(streaming),
+            "streaming": lambda streaming, options: streaming_table(streaming),
+        },
+        figure=streaming_figure,
+        summary=streaming_lines,
+        prepare=lambda history, options: stream(history, **options),
+    ),
 }
 
 
@@ -118,7 +173,13 @@ def output_names(scenario):
     ValueError
         If a product of that name does not exist.
     """
-    names = [f"{EVOLUTION}.ecsv"]
+    independent = parts(scenario.primordial, scenario.sampling.wavenumbers)
+    names = [f"{EVOLUTION}.ecsv", *([f"{PARTS}.ecsv"] if len(independent) > 1 else [])]
+    return names + _product_names(scenario)
+
+
+def _product_names(scenario):
+    names = []
     for name in scenario.products:
         if name not in PRODUCTS:
             raise ValueError(f"products: there is no product {name!r}; there is {', '.join(PRODUCTS)}")
@@ -144,12 +205,15 @@ def make_outputs(history):
     """
     scenario = history.scenario
     outputs = {f"{EVOLUTION}.ecsv": table_bytes(evolution_table(history))}
+    if len(history.parts) > 1:
+        outputs[f"{PARTS}.ecsv"] = table_bytes(parts_table(history))
     summary = []
     for name, options in scenario.products.items():
         product = PRODUCTS[name]
-        tables = {stem: make(history, options) for stem, make in product.tables.items()}
+        material = product.prepare(history, options)
+        tables = {stem: make(material, options) for stem, make in product.tables.items()}
         outputs |= {f"{stem}.ecsv": table_bytes(table) for stem, table in tables.items()}
-        drawn = {stem: make(history, options) for stem, make in product.drawn.items()}
+        drawn = {stem: make(material, options) for stem, make in product.drawn.items()}
         figure = product.figure(tables | drawn)
         if figure is not None:
             outputs |= {f"{name}.{form}": figure_bytes(figure, form, scenario) for form in FIGURE_FORMATS}
@@ -176,7 +240,8 @@ def comparison_names(alignment):
         If a product of that name does not exist.
     """
     figures = (EVOLUTION, "differences", *(name for name in alignment.scenarios[0].products))
-    names = dict.fromkeys([*output_names(alignment.scenarios[0]), "courses.ecsv", "differences.ecsv"])
+    tables = (f"{EVOLUTION}.ecsv", *_product_names(alignment.scenarios[0]), "courses.ecsv", "differences.ecsv")
+    names = dict.fromkeys(tables)
     names |= dict.fromkeys(f"{name}.{form}" for name in figures for form in FIGURE_FORMATS)
     return [COMPARISON.format(name) for name in names]
 
@@ -204,8 +269,9 @@ def comparison_tables(comparison):
     tables["courses"] = joined(lambda history: course_table(history, middle), ratios=False)
     tables["differences"] = difference_table(tables[EVOLUTION])
     for name, options in histories[0].scenario.products.items():
+        materials = [PRODUCTS[name].prepare(history, options) for history in histories]
         for stem, make in PRODUCTS[name].tables.items():
-            tables[stem] = joined(lambda history, make=make, options=options: make(history, options))
+            tables[stem] = joined_table([make(material, options) for material in materials], labels, notes)
     return tables
 
 

@@ -7,7 +7,7 @@ from dataclasses import asdict
 import numpy as np
 
 from twofluid.quantities import QUANTITIES
-from twofluid.scenario import thermal_sentence
+from twofluid.scenario import mixture_lines, thermal_sentence
 
 SCALES_SHOWN = 5  # wavenumbers in a summary
 COLUMNS_SHOWN = 6  # redshifts or fractions in a summary
@@ -86,6 +86,7 @@ def check_lines(scenario, universe):
     return [
         scenario.title,
         f"  asks for  {_request(scenario)}; {', '.join(scenario.products) or 'no products'}",
+        *_mixture_lines(scenario.primordial),
         *(f"  {'assumes' if number == 0 else '':7}   {text}" for number, text in enumerate(assumed)),
         "",
         *(f"  {line}" for line in landmark_lines(universe.landmarks)),
@@ -113,9 +114,16 @@ def run_lines(history):
     lines = [history.scenario.title, f"  {_request(history.scenario)}", f"  {', '.join(marks)}"]
     if sentence := thermal_sentence(history.scenario.cosmology):
         lines.append(f"  {sentence}")
+    lines += _mixture_lines(history.scenario.primordial)
     if history.certificate is not None:
         lines += [f"  {part}" for part in history.certificate.sentence().split("; ", maxsplit=2)]
     return lines
+
+
+def _mixture_lines(primordial):
+    """Return a line for each initial mode of a mixture."""
+    lines = mixture_lines(primordial)
+    return [f"  {'starts' if number == 0 else '':7}   {text}" for number, text in enumerate(lines)]
 
 
 def lag_lines(tables):
@@ -187,6 +195,145 @@ def scales_lines(tables):
     agrees = np.ma.asarray(verdict["agrees_with_jeans"])
     agreement = f"  the Jeans criterion agrees with {np.ma.filled(agrees, False).sum()} of {agrees.count()} verdicts"
     return [*aligned(mass_rows), *aligned(verdict_rows), agreement]
+
+
+def growth_lines(tables):
+    """Return the summary of growth: that of matter, and its rate, at a few scales.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        The table of the product, under "growth".
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    table = tables["growth"]
+    epoch = f"growth of matter since z = {table.meta['reference_redshift']:g}"
+    lines = _grid(table, "wavenumber", epoch, "growth_matter", ".5g")
+    lines += _grid(table, "wavenumber", "growth rate of matter", "rate_matter", ".4f")
+    exponent = table.meta["exponent_with_smooth_baryons"]
+    if "no_dark_matter" not in table.meta:
+        lines.append(f"  power of a in the matter era while baryons stay smooth: {exponent:.4f}")
+    return lines
+
+
+def spheres_lines(tables):
+    """Return the summary of spheres: the rms contrast of matter in a few of them.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        The table of the product, under "spheres".
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    table = tables["spheres"]
+    lines = _grid(table, "sphere_radius", "rms of matter in spheres", "sigma_matter", ".4g")
+    error = np.ma.asarray(table["sigma_matter_error"]) / np.ma.asarray(table["sigma_matter"])
+    if error.count():
+        percent = f"{100 * error.max():.2g} per cent"
+        lines.append(f"  sampling, quadrature and range of wavenumbers leave up to {percent} open")
+    if "not_covered" in table.meta:
+        lines.append(f"  spheres: {table.meta['not_covered']}")
+    return lines
+
+
+def shortfall_lines(tables):
+    """Return the summary of the shortfall: contrast at decoupling against the one needed, and what came of it.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        The tables of the product, under "shortfall" and "contrast".
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    table = tables["shortfall"]
+    meta = table.meta
+    needed = np.ma.asarray(table["rms_needed"]).compressed()
+    lines = []
+    if needed.size:
+        lines.append(
+            f"  order unity by z = {meta['target_redshift']:g} takes an rms contrast of {needed[0]:.3g} at "
+            f"decoupling, z = {meta['decoupling_redshift']:.5g}"
+        )
+    rows = [("  rms contrast", "fluid", "at decoupling", "short by", "reaches 1", "by t^(2/3) alone")]
+    scales = table[np.asarray(table["fluid"]) == "matter"]
+    for scale in _few(len(scales), SCALES_SHOWN):
+        for row in table[3 * scale : 3 * scale + 3]:
+            if not np.ma.is_masked(row["rms_at_decoupling"]):
+                rows.append((f"    {_scale_text(row)}", *_shortfall_cells(row)))
+    lines += aligned(rows)
+    return lines + [f"  shortfall: {meta[name]}" for name in ("no_dark_matter", "not_covered") if name in meta]
+
+
+def _scale_text(row):
+    if np.ma.is_masked(row["wavenumber"]):
+        return f"R = {row['sphere_radius']:.4g} {QUANTITIES['sphere_radius'].unit}"
+    return f"k = {row['wavenumber']:.4g} {QUANTITIES['wavenumber'].unit}"
+
+
+def _shortfall_cells(row):
+    if not np.ma.is_masked(row["unity_redshift"]):
+        outcome = f"z = {row['unity_redshift']:.4g}, t = {row['unity_age']:.4g} Gyr"
+    elif row["greatest_redshift"] == 0.0:
+        outcome = f"never by today: {row['greatest_rms']:.3g}, still growing"
+    else:
+        outcome = f"never: growth stops at z = {row['greatest_redshift']:.4g}, at {row['greatest_rms']:.3g}"
+    short = f"{row['shortfall']:.3g}" if row["shortfall"] > 1.0 else "nothing"
+    return (row["fluid"], f"{row['rms_at_decoupling']:.3g}", short, outcome, f"{row['matter_era_age']:.3g} Gyr")
+
+
+def _grid(table, scale, title, name, digits):
+    """Return lines with one quantity at a few scales and redshifts."""
+    redshifts = list(dict.fromkeys(np.asarray(table["redshift"]).tolist()))
+    values = np.ma.asarray(table[name]).reshape(-1, len(redshifts))
+    scales = np.asarray(table[scale])[:: len(redshifts)]
+    shown = _few(len(redshifts), COLUMNS_SHOWN)
+    quantity = QUANTITIES[scale]
+    rows = [(f"  {title}", *(f"z = {redshifts[i]:g}" for i in shown))]
+    for mode in _few(len(scales), SCALES_SHOWN):
+        cells = ["-" if values[mode, i] is np.ma.masked else f"{values[mode, i]:{digits}}" for i in shown]
+        rows.append((f"    {quantity.symbol} = {scales[mode]:.4g} {quantity.unit}", *cells))
+    return aligned(rows)
+
+
+def streaming_lines(tables):
+    """Return the summary of the streaming: its velocity, and the power of matter it leaves, at a few scales.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        The tables of the product, under "streaming-velocity" and "streaming".
+
+    Returns
+    -------
+    list of str
+        Lines.
+    """
+    velocity, streaming = tables["streaming-velocity"], tables["streaming"]
+    if "no_dark_matter" in velocity.meta:
+        return [f"  streaming: {velocity.meta['no_dark_matter']}"]
+    shown = _few(len(velocity), COLUMNS_SHOWN)
+    rows = [("  streaming", *(f"z = {velocity['redshift'][i]:g}" for i in shown))]
+    rows += [
+        (f"    {words}", *(_dash_or(velocity[name][i], "{:.4g}") for i in shown))
+        for words, name in (("rms velocity [km/s]", "rms_velocity"), ("Mach number", "mach_number"))
+    ]
+    averages = streaming[np.ma.getmaskarray(np.ma.asarray(streaming["velocity"]))]
+    lines = aligned(rows) + _grid(averages, "wavenumber", "matter power over that without", "suppression_matter", ".4f")
+    if "not_covered" in streaming.meta:
+        lines.append(f"  streaming: {streaming.meta['not_covered']}")
+    return lines
 
 
 def comparison_lines(comparison):

@@ -70,7 +70,10 @@ def nothing_solved(monkeypatch):
     monkeypatch.setattr(twofluid, "evolve", evolve)
 
 
-def run(*arguments):
+def run(*arguments, certificate=False):
+    """Run the program, without a certificate where nothing depends on it: that saves time."""
+    if arguments[:1] in (("run",), ("compare",)) and not certificate:
+        arguments = (*arguments, "--no-certificate")
     return cli.main([str(argument) for argument in arguments])
 
 
@@ -171,6 +174,16 @@ def test_a_universe_that_cannot_be_is_refused(tmp_path, out, capsys, nothing_sol
     check_refused(capsys, out, run("run", path, "--out", out), "odd.yaml")
 
 
+@pytest.mark.parametrize("command", ["run", "check"])
+def test_too_many_waves_of_the_dark_matter_are_refused(tmp_path, out, capsys, nothing_solved, command):
+    path = tmp_path / "warm.yaml"
+    warm = "  dark_matter: {sound_speed: 100 km/s, scaling: 0.5}\n"
+    path.write_text(TINY.replace("sampling:", f"{warm}sampling:").replace("20 1/Mpc", "2000 1/Mpc"))
+    arguments = (command, path) if command == "check" else (command, path, "--out", out)
+    told = ("warm.yaml", "at k = 2000 1/Mpc", "sound waves of the dark matter", "cosmology.dark_matter.sound_speed")
+    check_refused(capsys, out, run(*arguments), *told)
+
+
 def test_missing_file_is_refused(tmp_path, out, capsys):
     check_refused(capsys, out, run("check", tmp_path / "none.yaml"), "none.yaml")
 
@@ -260,6 +273,98 @@ def test_check_shows_landmarks_and_what_was_assumed_and_solves_nothing(scenario_
     assert meaning == "comoving sound horizon at the drag epoch"
     assert "cosmology.helium_mass_fraction = 0.2454" in shown
     assert "cosmology.baryon_density" not in shown  # the file says it
+
+
+EVERY_PRODUCT = """\
+  growth: {reference_redshift: 100}
+  spheres: {radii: [1 Mpc], masses: [1e9 solMass]}
+  shortfall: {target_redshift: 10, radii: [2 Mpc]}
+"""
+WIDE = TINY.replace("[0.05 1/Mpc, 1 1/Mpc, 20 1/Mpc]", "{from: 0.005 1/Mpc, to: 50 1/Mpc, per_decade: 12}")
+
+
+def test_growth_spheres_and_shortfall_from_the_command_line(tmp_path, out, capsys):
+    path = tmp_path / "wide.yaml"
+    path.write_text(WIDE + EVERY_PRODUCT)
+    assert run("run", path, "--out", out) == 0
+    tables = {name: Table.read(out / f"{name}.ecsv") for name in ("growth", "spheres", "shortfall", "contrast")}
+    assert tables["growth"].meta["reference_redshift"] == 100
+    assert tables["shortfall"].meta["target_redshift"] == 10
+    assert len(tables["spheres"]) == 4
+    assert tables["shortfall"]["sphere_radius"].compressed().tolist() == [2, 2, 2]
+    for name in ("growth", "spheres", "shortfall"):
+        assert (out / f"{name}.pdf").stat().st_size > 5000
+        assert (out / f"{name}.png").stat().st_size > 5000
+    shown = capsys.readouterr()
+    assert shown.err == ""
+    assert "growth of matter since z = 100  z = 100  z = 20" in shown.out
+    assert f"{tables['growth']['growth_matter'][1]:.5g}" in shown.out
+    assert f"{tables['spheres']['sigma_matter'][1]:.4g}" in shown.out
+    needed = tables["shortfall"]["rms_needed"][0]
+    assert f"order unity by z = 10 takes an rms contrast of {needed:.3g} at decoupling" in shown.out
+    assert "never by today" in shown.out
+    assert "R = 2 Mpc" in shown.out
+
+
+def test_growth_spheres_and_shortfall_without_dark_matter(tmp_path, out, capsys):
+    path = tmp_path / "bare.yaml"
+    path.write_text(WIDE.replace("0.1195", "0").replace("to: 50", "to: 2") + EVERY_PRODUCT)
+    assert run("run", path, "--out", out) == 0
+    shown = capsys.readouterr().out
+    assert "shortfall: this universe has no dark matter" in shown
+    assert "never: growth stops at z = " in shown  # waves that were damped before decoupling
+    assert "nan" not in shown
+    for name, columns in {"growth": ["rate_dark"], "spheres": ["sigma_dark"], "contrast": ["rms_dark"]}.items():
+        table = Table.read(out / f"{name}.ecsv")
+        assert all(table[column].mask.all() for column in columns)
+        assert "no dark matter" in table.meta["no_dark_matter"]
+
+
+def test_spheres_no_run_covers_are_said_and_not_drawn(tmp_path, out, capsys):
+    path = tmp_path / "few.yaml"
+    path.write_text(TINY + "  spheres: {}\n")
+    assert run("run", path, "--out", out) == 0
+    assert "spheres need at least 8 wavenumbers" in capsys.readouterr().out
+    assert Table.read(out / "spheres.ecsv")["sigma_matter"].mask.all()
+    assert not (out / "spheres.pdf").exists()
+
+
+@pytest.mark.parametrize("command", ["run", "check"])
+@pytest.mark.parametrize(
+    ("product", "told"),
+    [
+        ("shortfall: {target_redshift: 1100}", "products.shortfall.target_redshift = 1100 must lie between"),
+        ("shortfall: {target_redshift: -0.5}", "products.shortfall.target_redshift = -0.5: is out of range"),
+        ("growth: {reference_redshift: 2e6}", "products.growth.reference_redshift = 2e6: is out of range"),
+        ("spheres: {radii: [8]}", "products.spheres.radii = 8: needs a unit"),
+    ],
+)
+@pytest.mark.usefixtures("nothing_solved")
+def test_product_options_are_refused_before_anything_is_solved(tmp_path, out, capsys, command, product, told):
+    path = tmp_path / "odd.yaml"
+    path.write_text(TINY + f"  {product}\n")
+    arguments = ("--out", out) if command == "run" else ()
+    check_refused(capsys, out, run(command, path, *arguments), told, "odd.yaml")
+
+
+@pytest.mark.usefixtures("nothing_solved")
+def test_reference_before_the_start_of_the_run_is_refused(tmp_path, out, capsys):
+    # So much radiation that matter took over at redshift 2: the waves start when matter is 4e-6 of radiation.
+    path = tmp_path / "hot.yaml"
+    text = TINY.replace("0.0223", "0.0001").replace("0.1195", "0.00005").replace("[0.05", "[0.001")
+    path.write_text(text + "  growth: {reference_redshift: 1e6}\n")
+    status = run("run", path, "--out", out)
+    check_refused(capsys, out, status, "products.growth.reference_redshift = 1e+06 must be at most", "started")
+
+
+@pytest.mark.usefixtures("nothing_solved")
+def test_options_of_the_first_have_to_suit_every_universe_compared(tmp_path, out, capsys):
+    # Many baryons recombine earlier: drag epochs at redshifts 1172 and 1055 (see the error for the second).
+    for name, density, target in (("rich", "0.14", 1100), ("poor", "0.0223", 10)):
+        text = TINY.replace("0.0223", density) + f"  shortfall: {{target_redshift: {target}}}\n"
+        (tmp_path / f"{name}.yaml").write_text(text.replace("tiny", name))
+    status = run("compare", tmp_path / "rich.yaml", tmp_path / "poor.yaml", "--out", out)
+    check_refused(capsys, out, status, "compare: products.shortfall.target_redshift = 1100 must lie between")
 
 
 def test_progress_is_drawn_on_a_terminal_and_wiped():
@@ -369,3 +474,26 @@ def test_a_bad_thermal_table_is_refused_with_its_line(tmp_path, capsys, nothing_
     assert told.count("\n") == 1
     assert f"{tmp_path / 'heating.ecsv'}:10: thermal.table.gas_temperature = -10000.0 K: is out of range" in told
     assert not (tmp_path / "out").exists()
+
+
+def test_certificate_is_printed_and_stands_in_the_header(lean_file, out, capsys):
+    assert run("run", lean_file, "--out", out, certificate=True) == 0
+    assert "  numerical error of the lag ratio: " in capsys.readouterr().out
+    assert Table.read(out / "evolution.ecsv").meta["certificate"].startswith("numerical error of the lag ratio: ")
+
+
+def test_without_a_certificate_the_header_says_so(lean_file, out, capsys):
+    assert run("run", lean_file, "--out", out) == 0
+    assert "numerical error" not in capsys.readouterr().out
+    assert Table.read(out / "evolution.ecsv").meta["certificate"].startswith("none: ")
+
+
+def test_a_broken_promise_is_status_three_with_the_tables_written_and_marked(lean_file, out, capsys, monkeypatch):
+    from dataclasses import replace
+
+    from twofluid.fluids import ACCURACIES
+
+    monkeypatch.setitem(ACCURACIES, "standard", replace(ACCURACIES["standard"], promise=1e-12))
+    assert run("run", lean_file, "--out", out, certificate=True) == 3
+    assert "EXCEEDS the promised 1e-12" in capsys.readouterr().err
+    assert "EXCEEDS the promised 1e-12" in Table.read(out / "evolution.ecsv").meta["certificate"]

@@ -55,7 +55,7 @@ def nothing_solved(monkeypatch):
     def evolve(*arguments, **options):
         raise AssertionError("solved, though the request should have been refused")
 
-    monkeypatch.setattr("twofluid.comparison.evolve", evolve)
+    monkeypatch.setattr("twofluid.comparison.evolve_many", evolve)
 
 
 @pytest.fixture
@@ -64,7 +64,10 @@ def unsaved(monkeypatch):
     monkeypatch.setattr("twofluid.registry.figure_bytes", lambda *arguments: b"figure")
 
 
-def run(*arguments):
+def run(*arguments, certificate=False):
+    """Run the program, without a certificate where nothing depends on it: that saves time."""
+    if arguments[:1] in (("run",), ("compare",)) and not certificate:
+        arguments = (*arguments, "--no-certificate")
     return cli.main([str(argument) for argument in arguments])
 
 
@@ -204,6 +207,6 @@ def test_a_full_disk_is_status_one_and_an_interrupt_130(files, tmp_path, capsys,
     assert run("compare", files / "base.yaml", files / "half.yaml", "--out", out) == 1
     assert f"cannot write {out / 'comparison-evolution.ecsv'}: No space left" in capsys.readouterr().err
     assert os.listdir(out) == []
-    monkeypatch.setattr("twofluid.comparison.evolve", stop(KeyboardInterrupt()))
+    monkeypatch.setattr("twofluid.comparison.evolve_many", stop(KeyboardInterrupt()))
     assert run("compare", files / "base.yaml", files / "half.yaml", "--out", tmp_path / "other") == 130
     assert not Path(tmp_path / "other").exists()

@@ -34,6 +34,8 @@ def test_each_key_misspelt_once_gets_its_name_offered(path):
     wrong = name[:-2] + name[-1] + name[-2]  # the last two letters swapped
     if path.count(".") == 2 and len(name) <= 4:
         wrong = name + "s"  # `ot` for `to` is too far away to be recognised
+    if wrong == name:  # twice the same letter
+        wrong = name[:-1]
     error = refusal(full_text(names={path: wrong}))
     assert error.line == line_of(path)
     assert error.key.rpartition(".")[2] == wrong
@@ -43,7 +45,7 @@ def test_each_key_misspelt_once_gets_its_name_offered(path):
 
 def test_an_unlike_key_gets_the_list_of_keys():
     error = refusal(full_text(names={"primordial.tilt": "zzz"}))
-    assert error.remedy == "known in `primordial`: amplitude, tilt, pivot"
+    assert error.remedy == "known in `primordial`: amplitude, tilt, pivot, mixture"
 
 
 def test_a_key_in_the_wrong_section_is_sent_home():
@@ -191,6 +193,10 @@ def test_an_absurdly_long_unit_is_refused_unread():
         ("cosmology.curvature_fraction", "1.5", "from -1 to 1"),
         ("cosmology.cosmological_constant_fraction", "-2.5", "from -2 to 2"),
         ("cosmology.neutrinos.effective_number", "-1", "from 0 to 20"),
+        ("cosmology.dark_matter.sound_speed", "-1 km/s", "from 0 to 29979 km/s"),
+        ("cosmology.dark_matter.sound_speed", "3e4 km/s", "from 0 to 29979 km/s"),
+        ("cosmology.dark_matter.at_redshift", "-1", "from 0 to 1e+06"),
+        ("cosmology.dark_matter.scaling", "1.5", "from 0 to 1"),
         ("primordial.amplitude", "0", "above 0 and at most 1"),
         ("primordial.amplitude", "1.1", "above 0 and at most 1"),
         ("primordial.tilt", "7", "from -3 to 5"),
@@ -198,6 +204,11 @@ def test_an_absurdly_long_unit_is_refused_unread():
         ("sampling.wavenumbers.from", "9e-5 1/Mpc", "from 0.0001 to 100000 1/Mpc"),
         ("sampling.wavenumbers.to", "1.1e5 1/Mpc", "from 0.0001 to 100000 1/Mpc"),
         ("sampling.wavenumbers.per_decade", "0", "above 0 and at most 100000"),
+        ("products.growth.reference_redshift", "-0.5", "from 0 to 1e+06"),
+        ("products.growth.reference_redshift", "1000001", "from 0 to 1e+06"),
+        ("products.shortfall.target_redshift", "-1", "from 0 to 1e+06"),
+        ("products.streaming.from_redshift", "9.9", "from 10 to 2000"),
+        ("products.streaming.from_redshift", "2001", "from 10 to 2000"),
     ],
 )
 def test_each_range_ends(path, value, allowed):
@@ -211,6 +222,10 @@ def test_each_range_ends(path, value, allowed):
         ("sampling.redshifts", "[10, 1000001]", "1000001"),
         ("products.lag.fractions", "[0.5, 1]", "1"),
         ("products.lag.fractions", "[0, 0.5]", "0"),
+        ("products.spheres.radii", "[1 Mpc, 0 Mpc]", "0 Mpc"),
+        ("products.spheres.radii", "[1 Mpc, 20 Gpc]", "20 Gpc"),
+        ("products.spheres.masses", "[-1 solMass]", "-1 solMass"),
+        ("products.streaming.velocities", "[0, 5.1]", "5.1"),
     ],
 )
 def test_each_range_ends_inside_lists(path, items, value):
@@ -232,6 +247,21 @@ def test_each_range_ends_inside_lists(path, items, value):
     ],
 )
 def test_lists_of_numbers(path, value, shown, rule):
+    check(refusal(full_text({path: value})), path, shown, rule, "")
+
+
+@pytest.mark.parametrize("path", [key.path for key in KEYS if key.kind is Kind.QUANTITIES and key.longest > 1])
+@pytest.mark.parametrize(
+    ("value", "shown", "rule"),
+    [
+        ("5", "5", "must be a list"),
+        ("[]", "[]", "must not be an empty list"),
+        ("[5]", "5", "needs a unit"),
+        ("[5 mol]", "5 mol", "has a unit that cannot be read or converted"),
+        ("[nan Mpc]", "nan Mpc", "must be a number with a unit"),
+    ],
+)
+def test_lists_of_quantities(path, value, shown, rule):
     check(refusal(full_text({path: value})), path, shown, rule, "")
 
 

@@ -17,6 +17,7 @@ from twofluid.scenario import (
     Sampling,
     Scenario,
     ScenarioError,
+    Share,
     key_table_markdown,
     parse_scenario,
     read_scenario,
@@ -24,7 +25,17 @@ from twofluid.scenario import (
     scenario_template,
 )
 from twofluid.scenario.document import entry_from_text
-from twofluid.scenario.keys import BASE, DEFAULT_PRODUCTS, KEYS, OPTIONAL_SECTIONS, SECTIONS, Kind
+from twofluid.scenario.keys import (
+    BASE,
+    DEFAULT_PRODUCTS,
+    GAS_SECTIONS,
+    INITIAL_MODES,
+    KEY_AT,
+    KEYS,
+    MIXTURE,
+    SECTIONS,
+    Kind,
+)
 from twofluid.scenario.values import read_value
 
 SHIPPED = sorted((Path(__file__).parents[2] / "scenarios").glob("*.yaml"))
@@ -36,6 +47,7 @@ TEXTS = {
     "two points": full_text({"sampling.wavenumbers.per_decade": "0.01"}),
     "odd density": full_text({"sampling.wavenumbers.per_decade": "66.66"}),
     "no products": full_text({"products": "{}"} | NO_PRODUCTS),
+    "no spheres named": full_text({"products.spheres.radii": None, "products.shortfall.masses": None}),
     "odd title": full_text({"title": '"5: # no"'}),
 } | {path.name: path.read_text() for path in SHIPPED if "\nbase:" not in path.read_text()}
 
@@ -50,7 +62,7 @@ def test_round_trip_through_mapping_and_yaml(text):
     assert yaml.safe_load(written) == mapping
     assert scenario_from_mapping(mapping) == scenario
     assert again.to_mapping() == mapping
-    assert [key for key in again.assumed if "curvature" not in key and "cosmological" not in key] == []
+    assert all(KEY_AT[key].default is None for key in again.assumed)  # all else is spelled out
 
 
 def test_quantities_carry_their_units_in_the_mapping():
@@ -165,9 +177,21 @@ def test_the_template_stands_at_the_defaults():
     assert replace(left_out, title=scenario.title) == scenario
 
 
+def test_the_template_shows_every_product():
+    products = parse_scenario(scenario_template()).products
+    assert {f"products.{name}" for name in products} == {path for path in SECTIONS if path.startswith("products.")}
+
+
+# The sections of the mixture and of the gas are commented out as a whole: being there they mean something.
+NO_DEFAULT = [
+    key for key in KEYS
+    if key.default is None and not key.required and key.kind is not Kind.TEXT
+    and not key.path.startswith((MIXTURE, *GAS_SECTIONS))
+]  # fmt: skip
+
+
 def test_the_template_assumes_only_what_has_no_fixed_default():
-    no_default = ("cosmology.curvature_fraction", "cosmology.cosmological_constant_fraction", *OPTIONAL_SECTIONS)
-    assert parse_scenario(scenario_template()).assumed == no_default
+    assert set(parse_scenario(scenario_template()).assumed) == {key.path for key in NO_DEFAULT} | set(GAS_SECTIONS)
 
 
 @pytest.mark.parametrize("key", KEYS, ids=lambda key: key.path)
@@ -183,17 +207,28 @@ def test_the_template_explains_each_key(key):
 
 
 def test_the_commented_keys_of_the_template_are_valid_too():
-    text = scenario_template().replace("# curvature_fraction", "curvature_fraction")
-    text = text.replace("# cosmological_constant_fraction", "cosmological_constant_fraction")
+    text = scenario_template()
+    for key in NO_DEFAULT:
+        text = text.replace(f"# {key.name}: ", f"{key.name}: ")
     scenario = parse_scenario(text)
-    assert scenario.assumed == tuple(OPTIONAL_SECTIONS)
+    assert scenario.assumed == tuple(GAS_SECTIONS)
     assert scenario.cosmology.curvature_fraction == 0.01
-    for section in OPTIONAL_SECTIONS:
+    for section in GAS_SECTIONS:
         begin = text.index(f"# {section}:")
         end = text.index("\n\n", begin)
         inside = re.sub(r"^( *)# (\w+:( |$))", r"\1\2", text[begin:end], flags=re.MULTILINE)
         scenario = parse_scenario(text[:begin] + inside + text[end:])
-        assert set(OPTIONAL_SECTIONS) - set(scenario.assumed) == {section}
+        assert set(GAS_SECTIONS) - set(scenario.assumed) == {section}
+
+
+def test_the_commented_mixture_of_the_template_is_valid_too():
+    before, rest = scenario_template().split("  # mixture:\n")
+    inside, after = rest.split("\n# where the answer is wanted")
+    keys = r"^( *)# ((?:adiabatic|ratio|correlation|tilt|" + "|".join(INITIAL_MODES) + "):)"
+    text = before + "  mixture:\n" + re.sub(keys, r"\1\2", inside, flags=re.MULTILINE) + after
+    mixture = parse_scenario(text).primordial.mixture
+    assert mixture.shares == dict.fromkeys(INITIAL_MODES, Share(0.1, correlation=0.0, tilt=0.965))
+    assert mixture.adiabatic == 1.0
 
 
 @pytest.mark.parametrize("key", KEYS, ids=lambda key: key.path)
@@ -246,7 +281,8 @@ def test_the_minimal_scenario_has_only_required_keys():
     scenario = read_scenario(next(path for path in SHIPPED if "minimal" in path.name))
     made = tuple(f"products.{product}." for product in DEFAULT_PRODUCTS)
     optional = {
-        key.path for key in KEYS if not key.required and (key.path.startswith(made) or "products" not in key.path)
+        key.path for key in KEYS
+        if not key.required and (key.path.startswith(made) or not key.path.startswith(("products", MIXTURE)))
     }
-    optional = {path for path in optional if not path.startswith(tuple(OPTIONAL_SECTIONS))} | set(OPTIONAL_SECTIONS)
+    optional = {path for path in optional if not path.startswith(tuple(GAS_SECTIONS))} | set(GAS_SECTIONS)
     assert set(scenario.assumed) == optional

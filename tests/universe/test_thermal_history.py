@@ -195,7 +195,7 @@ def test_many_are_built_and_looked_up_as_one_by_one(make_cosmology, planck):
     time = together[0].conformal_time(np.array([[0.02], [0.2], [0.9]])) * np.ones(3)
     for column, owner in enumerate((2, 0, 1)):
         universe = together[owner]
-        assert stack.heated and bool(universe.heated) == (owner > 0)
+        assert stack.heated_from and bool(universe.heated_from) == (owner > 0)
         np.testing.assert_array_equal(stack.heating_rate(time)[:, column], universe.heating_rate(time[:, column]))
         for name, values in asdict(stack.conditions(time)).items():
             expected = getattr(universe.conditions(time[:, column]), name)

@@ -67,9 +67,15 @@ def evolution_comparison_figure(tables):
         _draw_amplitudes(right, evolution[evolution["redshift"] == lowest], "wavenumber")
         _wavenumber_axis(right, evolution)
         _say(right, f"${QUANTITIES['redshift'].symbol}$ = {lowest:g}")
-        left.set_ylabel(r"contrast $|\delta|$ per unit curvature")
+        left.set_ylabel(_contrast_label(evolution))
         share_legend(figure, left)
     return figure
+
+
+def _contrast_label(table):
+    """Say what the contrasts of stacked tables are relative to: P is the primordial power, with any mixture."""
+    mixed = any("mixture" in meta for meta in (table.meta, *table.meta.get("scenarios", {}).values()))
+    return r"contrast $|\delta|\,/\,\sqrt{\mathcal{P}}$" if mixed else r"contrast $|\delta|$ per unit curvature"
 
 
 def lag_comparison_figure(tables):

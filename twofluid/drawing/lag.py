@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 from matplotlib.figure import Figure
 
+from twofluid.drawing.axes import by_redshift, logarithmic_abscissa, with_room
 from twofluid.drawing.style import (
     PAGE_WIDTH,
     PANEL_HEIGHT,
@@ -16,11 +17,9 @@ from twofluid.drawing.style import (
     label_curves,
     redshift_axis,
 )
-from twofluid.quantities import QUANTITIES
 
 RATIO_VIEW = (-1.0, 2.0)  # ratios beyond are cut off: dark matter passing through zero makes them infinite
 GUTTER = 0.04  # between the panels, over what their labels need [fraction of the figure]
-ROOM = 0.05  # of the span of an axis left free beyond the data at either end
 
 
 def draw_ratio(table, axes=None):
@@ -40,17 +39,12 @@ def draw_ratio(table, axes=None):
     """
     with journal_style():
         axes = axes_or_new(axes)
-        symbol = QUANTITIES["redshift"].symbol
-        curves = [
-            (f"${symbol}$ = {redshift:g}", *_sorted(table[table["redshift"] == redshift], "ratio"))
-            for redshift in dict.fromkeys(table["redshift"].tolist())
-        ]
-        axes.set_xscale("log")
+        curves = by_redshift(table, "wavenumber", "ratio")
+        logarithmic_abscissa(axes, "wavenumber", table["wavenumber"])
         axes.axhline(1, color="0.75", linewidth=0.6, zorder=0)
         draw_curves(axes, curves)
-        _wavenumber_axis(axes, table)
         drawn = np.ma.concatenate([[0.0, 1.0], np.ma.asarray(table["ratio"])]).compressed()
-        axes.set_ylim(*_with_room(*np.clip([drawn.min(), drawn.max()], *RATIO_VIEW)))
+        axes.set_ylim(*with_room(*np.clip([drawn.min(), drawn.max()], *RATIO_VIEW)))
         axes.set_ylabel(axis_label("ratio"))
         label_curves(axes)
     return axes
@@ -78,10 +72,9 @@ def draw_catchup(table, axes=None):
         axes = axes_or_new(axes)
         curves = [(f"{100 * fraction:g} %", *_caught_up(table, name, fraction))
                   for name, fraction in table.meta["fractions"].items()]
-        axes.set_xscale("log")
+        logarithmic_abscissa(axes, "wavenumber", table["wavenumber"])
         _redshift_axis(axes, np.ma.concatenate([redshift for *_, redshift in curves]).compressed())
         draw_curves(axes, curves)
-        _wavenumber_axis(axes, table)
         label_curves(axes)
     return axes
 
@@ -123,20 +116,8 @@ def _caught_up(table, name, fraction):
     return wavenumber, np.ma.masked_where(~kept, np.ma.masked_invalid(redshift))
 
 
-def _wavenumber_axis(axes, table):
-    least, greatest = np.min(table["wavenumber"]), np.max(table["wavenumber"])
-    # A single mode stands in the middle of two decades.
-    axes.set_xlim((least, greatest) if greatest > least else (least / 10, greatest * 10))
-    axes.set_xlabel(axis_label("wavenumber"))
-
-
 def _redshift_axis(axes, redshifts):
     """Ticks at round redshifts on an axis spaced as ln(1 + z); the span of the data and some room."""
     drawn = redshifts if redshifts.size else np.array([0, REDSHIFT_TICKS[-1]])
-    low, high = _with_room(np.log1p(drawn.min()), np.log1p(drawn.max()))
+    low, high = with_room(np.log1p(drawn.min()), np.log1p(drawn.max()))
     redshift_axis(axes, "y", (np.expm1(max(low, 0)), np.expm1(high)), "redshift of catching up")
-
-
-def _with_room(low, high):
-    room = ROOM * (high - low) or ROOM
-    return low - room, high + room

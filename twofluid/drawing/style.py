@@ -120,7 +120,7 @@ def redshift_axis(axes, which, limits, words=None):
     axis.set_label_text(axis_label("redshift", words))
 
 
-def draw_curves(axes, curves, palette=JOINING):
+def draw_curves(axes, curves, palette=JOINING, colours=None):
     """Draw curves that belong to one sequence, each told apart by colour, dashes and a label in the margin.
 
     Parameters
@@ -132,8 +132,11 @@ def draw_curves(axes, curves, palette=JOINING):
         A point with a gap on both sides is drawn as a marker.
     palette : matplotlib.colors.Colormap
         Where the colours come from, in order.
+    colours : list of colour, optional
+        One a curve, instead of those.
     """
-    colours = palette(np.linspace(0, 1, len(curves))) if len(curves) > 1 else [DARK_MATTER]
+    if colours is None:
+        colours = palette(np.linspace(0, 1, len(curves))) if len(curves) > 1 else [DARK_MATTER]
     for number, ((label, x, ordinate), colour) in enumerate(zip(curves, colours, strict=True)):
         y = np.ma.filled(np.ma.masked_invalid(ordinate), np.nan)
         axes.plot(x, y, color=colour, linestyle=DASHES[number % len(DASHES)], label=label)
@@ -176,21 +179,25 @@ def safe_label(text):
     return text.replace("$", r"\$")
 
 
-def label_curves(axes):
+def label_curves(axes, margin=False):
     """Write each curve's label: on the curves where they lie far enough apart, else in the right margin.
 
     Parameters
     ----------
     axes : matplotlib.axes.Axes
         Axes whose lines carry labels; limits must be final.
+    margin : bool
+        Whether to leave the curves whole and write in the margin anyway.
     """
     lines = [line for line in axes.get_lines() if not line.get_label().startswith("_")]
     lines = [line for line in lines if np.isfinite(line.get_ydata()).any()]
     if len(lines) > MOST_LABELS:
         lines = [lines[i] for i in np.linspace(0, len(lines) - 1, MOST_LABELS).round().astype(int)]
-    pitch = LABEL_PITCH / (72 * axes.figure.get_figheight() * AXES_SHARE)
+    place = axes.get_subplotspec()
+    rows = place.get_gridspec().nrows if place else 1
+    pitch = LABEL_PITCH * rows / (72 * axes.figure.get_figheight() * AXES_SHARE)
     to_fraction = axes.transData + axes.transAxes.inverted()
-    place = _apart(lines, to_fraction, pitch)
+    place = None if margin else _apart(lines, to_fraction, pitch)
     if place is None:
         _label_in_margin(axes, lines, to_fraction, pitch)
         return
@@ -223,11 +230,11 @@ def _apart(lines, to_fraction, pitch):
 
 def _label_in_margin(axes, lines, to_fraction, pitch):
     """Write labels level with the last point of each curve, moved apart where they would touch."""
-    ends = [_end(line) for line in lines]
-    heights = np.array([to_fraction.transform(end)[1] for end in ends])
-    for line, end, height in zip(lines, ends, spread(heights, pitch), strict=True):
+    ends = np.array([to_fraction.transform(_end(line)) for line in lines]).reshape(-1, 2)
+    ends = ends.clip(0, 1)  # a curve that leaves the view is pointed at where it does
+    for line, end, height in zip(lines, ends, spread(ends[:, 1], pitch), strict=True):
         axes.annotate(
-            line.get_label(), xy=end, xycoords="data", xytext=(1.06, height), textcoords="axes fraction",
+            line.get_label(), xy=end, xycoords="axes fraction", xytext=(1.06, height), textcoords="axes fraction",
             color=line.get_color(), fontsize=LABEL_SIZE, va="center", annotation_clip=False,
             arrowprops=LEADER | {"color": line.get_color()},
         )

@@ -1,22 +1,27 @@
 """The linear physics: which quantity stands in which row, its rates, its start and its pace."""
 
-from .closures import CLOSURES
+from .closures import CLOSURES, MIXTURE_CLOSURES
 from .kinetic import ChainLengths, KineticSystem
+from .patch import PatchSystem
 from .resolution import ACCURACIES, Resolution, resolution_for
 from .sound_speed import SoundSpeedSystem
-from .start import adiabatic, start_time
-from .stepping import Stepping, clock
+from .start import adiabatic, mixed, start_time
+from .stepping import Stepping, check_dark_waves, clock
 
 __all__ = [
     "ACCURACIES",
     "CLOSURES",
+    "MIXTURE_CLOSURES",
     "ChainLengths",
     "KineticSystem",
+    "PatchSystem",
     "Resolution",
     "SoundSpeedSystem",
     "Stepping",
     "adiabatic",
+    "check_dark_waves",
     "clock",
+    "mixed",
     "resolution_for",
     "start_time",
 ]

@@ -7,7 +7,8 @@ matters. Once it no longer does it is left unresolved and the method damps it. I
 * diffusion has not yet damped it, (k / k_D)^2 < `Stepping.diffusion_exponent`, and
 * photons still push baryons, r kappa' > `Stepping.drag_ratio` times the expansion rate, and
 * its gravity is felt, k tau < `Stepping.felt_phase` / sqrt(dark-matter fraction), or diffusion
-  will not have damped it when the baryons are released. Without dark matter there is no such bound.
+  will not have damped it when the baryons are released, or at a later time that is asked for.
+  Without dark matter there is no such bound.
 
 Photons that push again once the gas is reionized start no such oscillation: they stream by then.
 
@@ -15,9 +16,13 @@ Where the gas is heated quickly, by a table or reionization, a fourth asks for s
 once sets the gas swinging about its new balance, with the share of the dark-matter contrast at most that
 the old pressure left it, (k_J/k)^2, which falls as a^(-3/2) as the wave spends itself and the dark matter grows.
 The wave is followed for as long as that share exceeds `Stepping.gas_swing`, the less finely the smaller it is.
+
+Dark matter with pressure oscillates too, below its own Jeans scale. Nothing damps that, and where the Jeans scale
+shrinks the wave that is left is what grows in the end: it is resolved to the last, and the finer the more radians
+there are for errors to add up over. Modes of too many radians are refused (`check_dark_waves`).
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -29,7 +34,11 @@ HEATED_QUICKLY = 1.0  # d ln T/d ln a beyond which the gas cannot follow its pre
 GAS_PHASE = 0.4  # of `Stepping.phase_step`, the phase of a gas wave in a step: nothing damps it (measured)
 ORDER = 5  # of the method: a wave that is smaller by s bears steps longer by s^(-1/5)
 ADIABATIC = 5.0 / 3.0  # sound speed squared over its isothermal value, at most
+MIXTURES_OUTSIDE = 3.0  # shorter steps far outside the horizon for mixtures of initial modes (measured)
 FAR_OUTSIDE = 0.3  # k tau up to which a mode counts as far outside the horizon
+DARK_PHASE_SHARE = 0.5  # longest k c_s dtau of waves of the dark matter, over `Stepping.phase_step` (measured)
+DARK_RADIANS = 100.0  # from so many on steps shorten as radians^(-1/5): the method is of order five
+MOST_DARK_RADIANS = 1000.0  # that are followed; some thousand steps
 
 
 @dataclass(frozen=True)
@@ -68,6 +77,13 @@ class Stepping:
     drag_ratio: float = 1e-3
     gas_swing: float = 1e-2
 
+    def for_mixtures(self) -> "Stepping":
+        """Shorten the steps outside the horizon, as modes without curvature at the beginning need it.
+
+        There their matter is moved by small differences, of neutrinos and photons say, whose own errors count.
+        """
+        return replace(self, outside_step=self.outside_step / MIXTURES_OUTSIDE)
+
 
 def clock(
     universe: Universe, wavenumber: np.ndarray, start: np.ndarray, marks: np.ndarray, stepping: Stepping
@@ -95,11 +111,13 @@ def clock(
     grid = last - np.arange(nodes)[::-1] / NODES_PER_UNIT  # hung up at its end: the same for every choice of modes
     time = np.exp(grid)
     time[-1] = marks[-1]
-    density = step_density(universe, wavenumber, time, stepping)
+    density = step_density(universe, wavenumber, time, stepping, marks)
     return lay_out(grid, density, np.log(start), np.log(marks))
 
 
-def step_density(universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping) -> np.ndarray:
+def step_density(
+    universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping, asked: np.ndarray
+) -> np.ndarray:
     """Give the steps wanted per unit of log conformal time.
 
     Parameters
@@ -110,6 +128,8 @@ def step_density(universe: Universe, wavenumber: np.ndarray, time: np.ndarray, s
     time : array, shape (node,)
         Increasing conformal times [Mpc].
     stepping : Stepping
+    asked : array, shape (mark,)
+        Conformal times asked for [Mpc].
 
     Returns
     -------
@@ -121,15 +141,18 @@ def step_density(universe: Universe, wavenumber: np.ndarray, time: np.ndarray, s
     change = np.abs(np.gradient(log_scattering, np.log(time)))
     quiet = np.where(_pushed(now, stepping), stepping.smooth_step, stepping.free_step)
     smooth = per_expansion / quiet + change / stepping.scattering_change
-    if universe.heated:
+    if universe.heated_from:
         a = np.minimum(now.scale_factor, 1.0)
         rise = np.maximum(universe.gas_temperature_slope(a), 0.0)
-        smooth = smooth + per_expansion * (rise / stepping.scattering_change + (a > universe.heated) / quiet)
+        smooth = smooth + per_expansion * (rise / stepping.scattering_change + (a > universe.heated_from) / quiet)
     phase = wavenumber[:, None] * time
-    matters = oscillation_matters(universe, wavenumber, time, stepping)
+    matters = oscillation_matters(universe, wavenumber, time, stepping, asked)
     inside = np.where(matters, np.hypot(smooth, phase / stepping.phase_step), smooth)
-    if universe.heated:
+    if universe.heated_from:
         inside = np.hypot(inside, _gas_waves(universe, now, wavenumber, time, stepping))
+    if universe.has_dark_pressure:
+        dark_phase = phase * universe.dark_sound_speed(now.scale_factor)
+        inside = np.hypot(inside, dark_phase / _longest_dark_phase(universe, wavenumber, stepping)[:, None])
     return np.where(phase < FAR_OUTSIDE, per_expansion / stepping.outside_step, inside)
 
 
@@ -138,7 +161,7 @@ def _gas_waves(
 ) -> np.ndarray:
     """Give the steps per unit of log conformal time for sound in gas that was heated quickly, shape (mode, node)."""
     a = np.minimum(now.scale_factor, 1.0)
-    quickly = (a > universe.heated) & (universe.gas_temperature_slope(a) > HEATED_QUICKLY)
+    quickly = (a > universe.heated_from) & (universe.gas_temperature_slope(a) > HEATED_QUICKLY)
     if not quickly.any():
         return np.zeros((len(wavenumber), len(time)))
     first, last = np.flatnonzero(quickly)[[0, -1]]
@@ -149,13 +172,45 @@ def _gas_waves(
     return np.where((np.arange(len(time)) >= first) & (swing > stepping.gas_swing), density, 0.0)
 
 
+
+def check_dark_waves(universe: Universe, wavenumber: np.ndarray) -> None:
+    """Refuse modes in which the dark matter oscillates more often than is followed.
+
+    Parameters
+    ----------
+    universe : Universe
+    wavenumber : array, shape (mode,)
+        Comoving wavenumbers [1/Mpc].
+
+    Raises
+    ------
+    ValueError
+        If one goes through more than `MOST_DARK_RADIANS` by today.
+    """
+    if not universe.has_dark_pressure:
+        return
+    way, largest = float(universe.dark_sound_horizon(1.0)), np.max(wavenumber)
+    if way * largest > MOST_DARK_RADIANS:
+        raise ValueError(
+            f"at k = {largest:.6g} 1/Mpc sound waves of the dark matter go through {way * largest:.3g} radians by "
+            f"today, and {MOST_DARK_RADIANS:g} are followed at most: ask for wavenumbers up to "
+            f"{MOST_DARK_RADIANS / way:.3g} 1/Mpc, or a lower cosmology.dark_matter.sound_speed"
+        )
+
+
+def _longest_dark_phase(universe: Universe, wavenumber: np.ndarray, stepping: Stepping) -> np.ndarray:
+    """Longest k c_s dtau of waves of the dark matter, shape (mode,)."""
+    radians = wavenumber * universe.dark_sound_horizon(1.0)
+    return DARK_PHASE_SHARE * stepping.phase_step * np.minimum(1.0, DARK_RADIANS / radians) ** 0.2
+
+
 def _pushed(now: Conditions, stepping: Stepping) -> np.ndarray:
     """Whether photons still push the baryons."""
     return now.photon_baryon_ratio * now.scattering_rate > stepping.drag_ratio * now.hubble_rate
 
 
 def oscillation_matters(
-    universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping
+    universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping, asked: np.ndarray
 ) -> np.ndarray:
     """Whether the acoustic oscillation of a mode still has to be resolved; see the module's text.
 
@@ -167,6 +222,8 @@ def oscillation_matters(
     time : array, shape (node,)
         Increasing conformal times [Mpc].
     stepping : Stepping
+    asked : array, shape (mark,)
+        Conformal times asked for [Mpc].
 
     Returns
     -------
@@ -175,10 +232,11 @@ def oscillation_matters(
     now = universe.conditions(time)
     pushed = _pushed(now, stepping)
     exponent = (wavenumber[:, None] / universe.diffusion_wavenumber(now.scale_factor)) ** 2
-    alive = exponent < stepping.diffusion_exponent
     pushed = np.logical_and.accumulate(pushed)  # until the first release
-    at_release = exponent[:, np.flatnonzero(pushed)[-1]] if pushed.any() else exponent[:, 0]
-    survives = at_release < stepping.diffusion_exponent
+    alive = pushed & (exponent < stepping.diffusion_exponent)
+    release = time[pushed][-1] if pushed.any() else time[0]
+    seen = alive[:, np.searchsorted(time, np.append(asked[asked < release], release)).clip(max=len(time) - 1)]
+    last_seen = np.max(np.where(seen, np.append(asked[asked < release], release), 0.0), axis=1)
     dark_fraction = now.gravity_dark[0] / (now.gravity_dark[0] + now.gravity_baryon[0])
     felt = wavenumber[:, None] * time * np.sqrt(dark_fraction) < stepping.felt_phase
-    return alive & pushed & (felt | survives[:, None])
+    return alive & (felt | (time <= last_seen[:, None]))

@@ -131,7 +131,7 @@ def _row_in_first(tables):
 
 def _keys(table):
     """Return what tells each row apart: where it stands, and how many before it stand there."""
-    axes = [np.asarray(table[name]).tolist() for name in AXES if name in table.colnames]
+    axes = [np.ma.asarray(table[name]).tolist() for name in AXES if name in table.colnames]
     seen, keys = Counter(), []
     for place in zip(*axes, strict=True) if axes else [()] * len(table):
         keys.append((place, seen[place]))

@@ -1,4 +1,4 @@
-"""Where piecewise cubic curves, or products of them, last rise through zero; many modes at once."""
+"""Where piecewise cubic curves, or products of them, rise through zero; many modes at once."""
 
 from __future__ import annotations
 
@@ -33,11 +33,35 @@ def last_rise(position, *factors, until=np.inf):
     upper = np.clip(upper, 0.0, 1.0)
     pieces = [(v[:, :-1], v[:, 1:], width * slope[:, :-1], width * slope[:, 1:]) for v, slope in factors]
     rises = _below(np.zeros_like(upper), pieces) & ~_below(upper, pieces)
-
     last = rises.shape[1] - 1 - np.argmax(rises[:, ::-1], axis=1)
-    modes = np.arange(len(last))
-    pieces = [tuple(array[modes, last] for array in piece) for piece in pieces]
-    root = position[modes, last] + width[modes, last] * _bisect(upper[modes, last], pieces)
+    return _root(position, width, pieces, upper, rises, last)
+
+
+def first_rise(position, *factors):
+    """Find where a product of curves first goes from below zero to zero or above.
+
+    Parameters
+    ----------
+    position, *factors
+        As for `last_rise`.
+
+    Returns
+    -------
+    array, shape (mode,)
+        Position of the first rise; NaN where there is none.
+    """
+    width = np.diff(position, axis=1)
+    pieces = [(v[:, :-1], v[:, 1:], width * slope[:, :-1], width * slope[:, 1:]) for v, slope in factors]
+    upper = np.ones_like(width)
+    rises = _below(np.zeros_like(upper), pieces) & ~_below(upper, pieces)
+    return _root(position, width, pieces, upper, rises, np.argmax(rises, axis=1))
+
+
+def _root(position, width, pieces, upper, rises, chosen):
+    """Return the position of the rise in the chosen piece of each mode; NaN where no piece holds a rise."""
+    modes = np.arange(len(chosen))
+    pieces = [tuple(array[modes, chosen] for array in piece) for piece in pieces]
+    root = position[modes, chosen] + width[modes, chosen] * _bisect(upper[modes, chosen], pieces)
     return np.where(rises.any(axis=1), root, np.nan)
 
 

@@ -60,6 +60,16 @@ class Entry:
         """Make an entry of this mapping that stands nowhere in the text."""
         return Entry(content, path_in(self.key, name), self.file, self.line)
 
+    def at(self, path):
+        """Find the entry at a dotted path below; one that stands nowhere, the last of them, if it was not written."""
+        entry = self
+        for name in path.split("."):
+            inner = entry.content.get(name) if isinstance(entry.content, dict) else None
+            if inner is None:
+                return entry.child(name, None)
+            entry = inner
+        return entry
+
 
 def text_of_file(path, name, asked=None, remedy=None):
     """Read the text of a scenario file, or of a table beside it.

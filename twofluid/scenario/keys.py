@@ -13,6 +13,8 @@ WAVENUMBER_UNIT = "1/Mpc"
 MOST_WAVENUMBERS = 100_000  # longest list of modes; keeps a slip of the pen from filling the memory
 MOST_REDSHIFTS = 1_000  # longest list of redshifts; the same reason
 MOST_FRACTIONS = 100  # longest list of fractions of one product; the same reason
+MOST_SPHERES = 100  # longest list of radii or masses of one product; the same reason
+MOST_VELOCITIES = 20  # longest list of streaming velocities; the same reason
 MOST_TABLE_ROWS = 5_000  # of a thermal history: smooth curves need a few dozen, and all of it goes into every header
 
 
@@ -120,28 +122,67 @@ class Key:
         return name_of(self.path)
 
 
+ADIABATIC = "adiabatic"  # the initial mode that is there if nothing is said
+INITIAL_MODES = {  # the others, and what is one at the beginning where the amplitude is one
+    "baryon": "baryon density isocurvature; unit delta_b - 3/4 delta_gamma",
+    "dark_matter": "dark-matter density isocurvature; unit delta_c - 3/4 delta_gamma",
+    "neutrino_density": "neutrinos denser where photons are thinner; unit 3/4 (delta_nu - delta_gamma)",
+    "neutrino_velocity": "neutrinos stream through the plasma; unit (theta_nu - theta_gamma)/k",
+    "compensated": "baryons denser where dark matter is thinner, matter uniform; unit delta_b - 3/4 delta_gamma",
+}
+MIXTURE = "primordial.mixture"
+
 SECTIONS = {
     "cosmology": "the smooth universe",
     "cosmology.neutrinos": "neutrinos",
+    "cosmology.dark_matter": "pressure of the dark matter: c_s(z) = sound_speed ((1 + z)/(1 + at_redshift))^scaling",
     "thermal": "gas temperature and electrons of a table in place of the computed ones, late in the history",
     "reionization": "a simple step from neutral to ionized gas: hydrogen and the first electron of helium",
     "primordial": "primordial curvature perturbations, a power law in wavenumber",
+    MIXTURE: "initial modes; without this section the adiabatic one alone",
+    **{f"{MIXTURE}.{mode}": meaning for mode, meaning in INITIAL_MODES.items()},
     "sampling": "where the answer is wanted",
     "method": "how the answer is computed",
     "products": "which products to make: {} for none, lag if the section is left out",
     "products.lag": "how far the baryons lag the dark matter",
     "products.scales": "horizon, sound, Jeans, filtering and diffusion scales, and what each mode is doing",
+    "products.growth": "growth of dark matter, baryons and matter since an epoch, and growth rates",
+    "products.spheres": "rms contrast in spheres",
+    "products.shortfall": "contrast at decoupling against what order unity by a target redshift takes",
+    "products.streaming": "velocity of baryons relative to dark matter, and what it does to growth on small scales",
 }
 
-# Sections that ask for something only by being there, and what is done without them.
-OPTIONAL_SECTIONS = {
+# Sections on the late gas that ask for something only by being there, and what is done without them.
+GAS_SECTIONS = {
     "thermal": "none, the gas is heated by Compton scattering alone",
     "reionization": "none, the gas stays neutral but for what recombination leaves",
 }
 
+#: Sections whose keys are not filled in where the file does not have them.
+OPTIONAL_SECTIONS = tuple(path for path in SECTIONS if path.startswith(("products.", MIXTURE)))
+
 DEFAULT_PRODUCTS = ("lag",)  # made when the file has no section `products`
 
 _WAVENUMBER_LIMITS = Allowed(1e-4, 1e5)  # beyond the horizon to far below the Jeans length of the gas
+_RADIUS_LIMITS = Allowed(1e-5, 1e4)  # [Mpc]; one over the wavenumbers
+_MASS_LIMITS = Allowed(1e-4, 1e23)  # [solMass]; what such spheres hold in a universe like ours
+_REDSHIFT_LIMITS = Allowed(0, 1e6)  # what a run tabulates
+_TOO_MANY_SPHERES = "more spheres are not tabulated in one run"
+
+
+def _mode_keys(mode):
+    """Return the rows of one initial mode beside the adiabatic one."""
+    return (
+        Key(f"{MIXTURE}.{mode}.ratio", Kind.NUMBER,
+            "rms amplitude at the pivot over the square root of primordial.amplitude; 0 leaves the mode out",
+            allowed=Allowed(0, 1e6), required=True, example="0.1"),
+        Key(f"{MIXTURE}.{mode}.correlation", Kind.NUMBER,
+            "with the random field of the adiabatic mode; positive where denser places have an excess",
+            allowed=Allowed(-1, 1), default=0.0, example="0"),
+        Key(f"{MIXTURE}.{mode}.tilt", Kind.NUMBER, "exponent n of its power",
+            allowed=Allowed(-3, 5), unsaid="that of primordial.tilt", example="0.965"),
+    )  # fmt: skip
+
 
 KEYS = (
     Key("title", Kind.TEXT, "name of the scenario, for tables and figures",
@@ -171,6 +212,14 @@ KEYS = (
     Key("cosmology.neutrinos.masses", Kind.QUANTITIES, "neutrino masses; for now only the empty list",
         unit="eV", default=(), example="[]", shortest=0, longest=0,
         longest_reason="this version follows massless neutrinos only"),
+    Key("cosmology.dark_matter.sound_speed", Kind.QUANTITY, "effective sound speed of the dark matter; 0 is cold",
+        unit="km/s", allowed=Allowed(0, 29979), default=0.0, example="0 km/s"),  # up to a tenth of c: still matter
+    Key("cosmology.dark_matter.at_redshift", Kind.NUMBER, "redshift at which that sound speed is given",
+        allowed=Allowed(0, 1e6), default=0.0, example="0"),
+    # Momenta of free particles fall as 1 + z; sound speeds at the photons' temperature as its root.
+    Key("cosmology.dark_matter.scaling", Kind.NUMBER,
+        "power of 1 + z with which it changes: 1 for free particles, 0.5 for those heated by photons",
+        allowed=Allowed(0, 1), default=1.0, example="1"),
     Key("thermal.table", Kind.TABLE,
         "ECSV file beside this one with the columns below, or these columns; from z = 0, no gap of 0.5 in ln(1 + z)",
         required=True, longest=MOST_TABLE_ROWS, example="heating.ecsv"),
@@ -202,6 +251,10 @@ KEYS = (
         allowed=Allowed(-3, 5), default=0.965, example="0.965"),
     Key("primordial.pivot", Kind.QUANTITY, "wavenumber at which the amplitude is given",
         unit=WAVENUMBER_UNIT, allowed=Allowed(1e-6, 1e6), default=0.05, example="0.05 1/Mpc"),
+    Key(f"{MIXTURE}.{ADIABATIC}", Kind.NUMBER,
+        "rms amplitude of the adiabatic mode over the square root of the primordial power; 0 leaves it out",
+        allowed=Allowed(0, 1e6), default=1.0, example="1"),
+    *(key for mode in INITIAL_MODES for key in _mode_keys(mode)),
     Key("sampling.wavenumbers", Kind.WAVENUMBERS, "comoving wavenumbers, as a range or one by one",
         unit=WAVENUMBER_UNIT, allowed=_WAVENUMBER_LIMITS, required=True, longest=MOST_WAVENUMBERS,
         longest_reason="more modes are not solved in one run", example="[0.1 1/Mpc, 1 1/Mpc]"),
@@ -220,7 +273,7 @@ KEYS = (
         "equations: photons and neutrinos by their full chains of moments, or a plasma with an effective sound speed",
         choices=("kinetic", "sound-speed"), default="kinetic", example="kinetic"),
     Key("method.accuracy", Kind.CHOICE,
-        "step and chain settings: numerical error of the contrasts below 2e-3, 2e-4 or 3e-5",
+        "step and chain settings: numerical error of the contrasts below 3e-3, 3e-4 or 5e-5",
         choices=("draft", "standard", "reference"), default="standard", example="standard"),
     Key("method.ionization_fluctuations", Kind.SWITCH,
         "recombination responds to density and temperature: electron fraction contrasts (kinetic closure)",
@@ -238,6 +291,29 @@ KEYS = (
         allowed=Allowed(0, 1, low_open=True, high_open=True), default=0.9, example="0.9"),
     Key("products.scales.map_from", Kind.NUMBER, "redshift at which the map of verdicts starts; it ends at 0",
         allowed=Allowed(1, 1e6), default=1e4, example="1e4"),
+    Key("products.growth.reference_redshift", Kind.NUMBER, "redshift at which the growth factors are 1",
+        allowed=_REDSHIFT_LIMITS, default=1000.0, example="1000"),
+    Key("products.spheres.radii", Kind.QUANTITIES, "comoving radii of the spheres",
+        unit="Mpc", allowed=_RADIUS_LIMITS, example="[1 Mpc, 8 Mpc]", longest=MOST_SPHERES,
+        longest_reason=_TOO_MANY_SPHERES,
+        unsaid="8 Mpc/h, none beside masses"),
+    Key("products.spheres.masses", Kind.QUANTITIES, "mean masses of matter in further spheres",
+        unit="solMass", allowed=_MASS_LIMITS, example="[1e6 solMass, 1e8 solMass]", longest=MOST_SPHERES,
+        longest_reason=_TOO_MANY_SPHERES, unsaid="none"),
+    Key("products.shortfall.target_redshift", Kind.NUMBER,
+        "redshift by which order unity is wanted, after the drag epoch",
+        allowed=_REDSHIFT_LIMITS, default=7.5, example="7.5"),
+    Key("products.shortfall.radii", Kind.QUANTITIES, "comoving radii of spheres to follow beside the waves",
+        unit="Mpc", allowed=_RADIUS_LIMITS, example="[1 Mpc, 8 Mpc]", longest=MOST_SPHERES,
+        longest_reason=_TOO_MANY_SPHERES, unsaid="none"),
+    Key("products.shortfall.masses", Kind.QUANTITIES, "mean masses of spheres to follow beside the waves",
+        unit="solMass", allowed=_MASS_LIMITS, example="[1e6 solMass, 1e8 solMass]", longest=MOST_SPHERES,
+        longest_reason=_TOO_MANY_SPHERES, unsaid="none"),
+    Key("products.streaming.from_redshift", Kind.NUMBER, "redshift at which patches of uniform streaming start",
+        allowed=Allowed(10, 2000), default=1000.0, example="1000"),
+    Key("products.streaming.velocities", Kind.NUMBERS, "streaming velocities of patches, in units of the rms",
+        allowed=Allowed(0, 5), default=(0.0, 1.0, 2.0), longest=MOST_VELOCITIES,
+        longest_reason="more velocities are not tabulated in one run", example="[0, 1, 2]"),
 )  # fmt: skip
 
 KEY_AT = {key.path: key for key in KEYS}

@@ -1,12 +1,12 @@
 """What the manual says about scenario files: the commented template and the table of keys."""
 
-from .keys import BASE, KEYS, OPTIONAL_SECTIONS, SECTIONS, Kind, keys_under, name_of, sections_under
+from .keys import BASE, GAS_SECTIONS, KEYS, MIXTURE, SECTIONS, Kind, keys_under, name_of, sections_under
 
 INDENT = "  "  # one level of the template
 TABLE_SECTION = "thermal.table"  # another one
 RANGE_SECTION = "sampling.wavenumbers"  # the key whose value may be a mapping; the template shows that form
 _REQUIRED_IN = {RANGE_SECTION: "required in a range", TABLE_SECTION: "required among columns"}
-_REQUIRED_IN |= dict.fromkeys(OPTIONAL_SECTIONS, "required if the section is there")
+_REQUIRED_IN |= dict.fromkeys(GAS_SECTIONS, "required if the section is there")
 
 _HEADING = """\
 # A scenario: the whole request in one file. Quantities carry units, in any notation astropy.units reads.
@@ -54,10 +54,10 @@ def _section_lines(section, depth):
     for key in keys_under(section):
         lines += _key_lines(key, depth)
     for inner in sections_under(section):
-        margin, optional = INDENT * depth, inner in OPTIONAL_SECTIONS
+        margin, optional, switch = INDENT * depth, inner in GAS_SECTIONS, _switch(inner)
         lines += ["", f"{margin}# {SECTIONS[inner]}"]
-        lines += [f"{margin}#   without this section: {OPTIONAL_SECTIONS[inner]}"] if optional else []
-        section = [f"{margin}{name_of(inner)}:", *_section_lines(inner, depth + 1)]
+        lines += [f"{margin}#   without this section: {GAS_SECTIONS[inner]}"] if optional else []
+        section = [f"{margin}{switch}{name_of(inner)}:", *_section_lines(inner, depth + 1)]
         lines += map(_commented, section) if optional else section
     return lines
 
@@ -82,8 +82,14 @@ def _key_lines(key, depth):
         alternative = f"{margin}#   as a file: {key.name}: {key.example}; as columns:"
         return [*comments, alternative, f"{margin}{key.name}:", *parts]
     # A key without a fixed default is shown commented out: any value would change the meaning.
-    switch = "# " if key.default is None and not key.required and key.kind is not Kind.TEXT else ""
+    open_default = key.default is None and not key.required and key.kind is not Kind.TEXT
+    switch = "# " if open_default else _switch(key.section)
     return [*comments, f"{margin}{switch}{key.name}: {key.example}"]
+
+
+def _switch(section):
+    """Return what comments out a section that changes the meaning by being there."""
+    return "# " if section.startswith(MIXTURE) else ""
 
 
 def _value_text(key):

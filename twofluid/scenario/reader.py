@@ -6,11 +6,31 @@ from pathlib import Path
 
 from .attached import with_tables
 from .document import entry_from_plain, entry_from_text
-from .errors import printable
+from .errors import ScenarioError, printable
 from .family import read_document, refuse_base
-from .keys import DEFAULT_PRODUCTS, OPTIONAL_SECTIONS, keys_under, name_of, sections_under
+from .keys import (
+    ADIABATIC,
+    DEFAULT_PRODUCTS,
+    GAS_SECTIONS,
+    MIXTURE,
+    OPTIONAL_SECTIONS,
+    keys_under,
+    name_of,
+    sections_under,
+)
+from .mixture import Mixture, Share, check_mixture
 from .names import checked_names
-from .request import Cosmology, Method, Neutrinos, Primordial, Reionization, Sampling, Scenario, ThermalTable
+from .request import (
+    Cosmology,
+    DarkMatter,
+    Method,
+    Neutrinos,
+    Primordial,
+    Reionization,
+    Sampling,
+    Scenario,
+    ThermalTable,
+)
 from .thermal import refuse_faults
 from .values import read_value
 
@@ -94,7 +114,7 @@ def _scenario(entry, title, source):
     scenario = Scenario(
         title=values["title"],
         cosmology=_cosmology(values),
-        primordial=Primordial(**_pick(values, "primordial")),
+        primordial=Primordial(**_pick(values, "primordial"), mixture=_mixture(values)),
         sampling=Sampling(**_pick(values, "sampling")),
         products={name: _pick(values, f"products.{name}") for name in entry.content["products"].content},
         assumed=tuple(assumed),
@@ -102,18 +122,36 @@ def _scenario(entry, title, source):
         method=Method(**_pick(values, "method")),
     )
     refuse_faults(entry, scenario)
+    try:
+        check_mixture(scenario)
+    except ScenarioError as problem:
+        raise entry.at(problem.key).error(problem.rule, problem.remedy) from None
     return scenario
 
 
 def _cosmology(values):
-    thermal = reionization = None
+    inner = {
+        "neutrinos": Neutrinos(**_pick(values, "cosmology.neutrinos")),
+        "dark_matter": DarkMatter(**_pick(values, "cosmology.dark_matter")),
+    }
     if "thermal.table" in values:
         options = _pick(values, "thermal")
-        thermal = ThermalTable(**options.pop("table"), **options)
+        inner["thermal"] = ThermalTable(**options.pop("table"), **options)
     if "reionization.redshift" in values:
-        reionization = Reionization(**_pick(values, "reionization"))
-    neutrinos = Neutrinos(**_pick(values, "cosmology.neutrinos"))
-    return Cosmology(**_pick(values, "cosmology"), neutrinos=neutrinos, thermal=thermal, reionization=reionization)
+        inner["reionization"] = Reionization(**_pick(values, "reionization"))
+    return Cosmology(**_pick(values, "cosmology"), **inner)
+
+
+def _mixture(values):
+    """Make the mixture of initial modes, None where the file has none."""
+    if f"{MIXTURE}.{ADIABATIC}" not in values:
+        return None
+    shares = {
+        name_of(section): Share(**_pick(values, section))
+        for section in sections_under(MIXTURE)
+        if all(key.path in values for key in keys_under(section))
+    }
+    return Mixture(**_pick(values, MIXTURE), **shares)
 
 
 def _with_products(entry):
@@ -144,11 +182,11 @@ def _read_section(section, entry, values, assumed):
             assumed.append(key.path)
     for inner in sections_under(section):
         name = name_of(inner)
-        if inner in OPTIONAL_SECTIONS and (name not in names or names[name].cleared):
+        if inner in GAS_SECTIONS and (name not in names or names[name].cleared):
             assumed.append(inner)
-        elif inner in OPTIONAL_SECTIONS and names[name].content == {}:
+        elif inner in GAS_SECTIONS and names[name].content == {}:
             continue  # none, as the file says
-        elif name in names or section != "products":
+        elif name in names or inner not in OPTIONAL_SECTIONS:
             _read_section(inner, names.get(name) or entry.child(name, {}), values, assumed)
 
 

@@ -2,14 +2,21 @@
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from operator import attrgetter
 
-from .keys import DEFAULT_PRODUCTS, KEY_AT, KEYS, OPTIONAL_SECTIONS, Kind, default_of, keys_under
+from .keys import DEFAULT_PRODUCTS, GAS_SECTIONS, KEY_AT, KEYS, MIXTURE, SECTIONS, Kind, default_of, keys_under
+from .mixture import Mixture
 from .spacing import range_of
 
-_FIELD_SECTIONS = (
-    "cosmology", "cosmology.neutrinos", *OPTIONAL_SECTIONS, "primordial", "sampling", "method",
-)  # read into dataclasses  # fmt: skip
+_FIELD_SECTIONS = (  # read into dataclasses
+    "cosmology",
+    "cosmology.neutrinos",
+    "cosmology.dark_matter",
+    *GAS_SECTIONS,
+    "primordial",
+    *(path for path in SECTIONS if path.startswith(MIXTURE)),
+    "sampling",
+    "method",
+)
 TABLE_COLUMNS = tuple(key.name for key in keys_under("thermal.table"))
 
 
@@ -34,6 +41,25 @@ class Neutrinos:
 
     def __post_init__(self):
         object.__setattr__(self, "masses", _floats(self.masses))
+
+
+@dataclass(frozen=True)
+class DarkMatter:
+    """Pressure of the dark matter, as an effective sound speed.
+
+    Parameters
+    ----------
+    sound_speed : float
+        Sound speed at `at_redshift`; 0 is cold [km/s].
+    at_redshift : float
+        Redshift at which it is given [unitless].
+    scaling : float
+        Power of 1 + z with which it changes [unitless].
+    """
+
+    sound_speed: float = default_of("cosmology.dark_matter.sound_speed")
+    at_redshift: float = default_of("cosmology.dark_matter.at_redshift")
+    scaling: float = default_of("cosmology.dark_matter.scaling")
 
 
 @dataclass(frozen=True)
@@ -107,7 +133,7 @@ class Cosmology:
     baryon_density : float
         Physical density of baryons today, Omega_b h^2 [unitless].
     dark_matter_density : float
-        Physical density of cold dark matter today, Omega_c h^2 [unitless].
+        Physical density of dark matter today, Omega_c h^2 [unitless].
     photon_temperature : float
         Temperature of the photon background today [K].
     helium_mass_fraction : float
@@ -118,6 +144,8 @@ class Cosmology:
         Omega_k today, positive for an open universe [unitless].
     cosmological_constant_fraction : float or None
         Omega_Lambda today [unitless].
+    dark_matter : DarkMatter
+        Pressure of the dark matter; cold if left out.
     thermal : ThermalTable or None
         Late history of the gas from a table.
     reionization : Reionization or None
@@ -132,6 +160,7 @@ class Cosmology:
     neutrinos: Neutrinos = Neutrinos()
     curvature_fraction: float | None = None
     cosmological_constant_fraction: float | None = None
+    dark_matter: DarkMatter = DarkMatter()
     thermal: ThermalTable | None = None
     reionization: Reionization | None = None
 
@@ -148,11 +177,30 @@ class Primordial:
         Exponent n; 1 is equal power on all scales [unitless].
     pivot : float
         Wavenumber at which the amplitude is given [1/Mpc].
+    mixture : Mixture or None
+        Initial modes; None is the adiabatic one alone. Every amplitude of a mixture is relative to the square root
+        of the power law.
     """
 
     amplitude: float = default_of("primordial.amplitude")
     tilt: float = default_of("primordial.tilt")
     pivot: float = default_of("primordial.pivot")
+    mixture: Mixture | None = None
+
+    def power(self, wavenumber):
+        """Power of the curvature perturbations per unit ln k, A (k/pivot)^(n - 1).
+
+        Parameters
+        ----------
+        wavenumber : float or array, any shape
+            Comoving wavenumbers [1/Mpc].
+
+        Returns
+        -------
+        float or array, same shape
+            [unitless]
+        """
+        return self.amplitude * (wavenumber / self.pivot) ** (self.tilt - 1.0)
 
 
 @dataclass(frozen=True)
@@ -261,16 +309,18 @@ class Scenario:
         for key in KEYS:
             if key.section not in _FIELD_SECTIONS:
                 continue
-            if key.section in OPTIONAL_SECTIONS and getattr(self, key.section) is None:
+            if key.section in GAS_SECTIONS and getattr(self, key.section) is None:
                 mapping[key.section] = {}
                 continue
-            value = attrgetter(key.path)(self)
+            value = _said(self, key.path)
             if value is not None:
                 _section_of(mapping, key)[key.name] = _plain(value, key)
         mapping["products"] = {}
         for product, options in self.products.items():
             known = {name: KEY_AT.get(f"products.{product}.{name}") for name in options}
-            mapping["products"][product] = {name: _plain(options[name], known[name]) for name in options}
+            mapping["products"][product] = {
+                name: _plain(value, known[name]) for name, value in options.items() if value is not None
+            }
         return mapping
 
     def assumptions(self):
@@ -283,6 +333,14 @@ class Scenario:
         """
         mapping = self.to_mapping()
         return tuple(f"{path} = {_assumed_text(mapping, path)}" for path in self.assumed)
+
+
+def _said(scenario, path):
+    """Return what a scenario says under a dotted key, None where it lacks the section."""
+    value = scenario
+    for name in path.split("."):
+        value = None if value is None else getattr(value, name)
+    return value
 
 
 def _plain(value, key):
@@ -321,8 +379,8 @@ def _section_of(mapping, key):
 
 
 def _assumed_text(mapping, path):
-    if path in OPTIONAL_SECTIONS:
-        return OPTIONAL_SECTIONS[path]
+    if path in GAS_SECTIONS:
+        return GAS_SECTIONS[path]
     value = mapping
     for name in path.split("."):
         value = value.get(name)

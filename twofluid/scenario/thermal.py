@@ -137,27 +137,17 @@ def refuse_faults(top, scenario):
     ScenarioError
     """
     if scenario.method.ionization_fluctuations and scenario.method.closure != "kinetic":
-        entry = _entry_at(top, "method.ionization_fluctuations")
+        entry = top.at("method.ionization_fluctuations")
         raise entry.error("needs the closure kinetic", "set method.closure to kinetic, or leave this out")
     fault = thermal_fault(scenario.cosmology)
     if fault is None:
         return
-    entry = _entry_at(top, fault.key)
+    entry = top.at(fault.key)
     if fault.row is not None:
-        redshifts = _entry_at(top, "thermal.table.redshift").content
+        redshifts = top.at("thermal.table.redshift").content
         falling = float(redshifts[0].content) > float(redshifts[-1].content)
         entry = entry.content[-1 - fault.row if falling else fault.row]
     raise entry.error(fault.rule, fault.remedy)
-
-
-def _entry_at(top, path):
-    """Find the entry at a dotted key, or the nearest above it that was written."""
-    for name in path.split("."):
-        inner = top.content.get(name)
-        if inner is None:
-            return top.child(name, None)
-        top = inner
-    return top
 
 
 def thermal_sentence(cosmology):

@@ -145,6 +145,7 @@ class _Adjugate:
         self._product, self._determinant = np.empty((STAGES, lanes)), np.empty(lanes)
 
     def invert(self, rate: np.ndarray, out: np.ndarray) -> None:
+        """Invert ``W - rate``, the rate diagonal or full."""
         core, product, determinant = self._core, self._product, self._determinant
         if rate.ndim == 3:
             np.subtract(INVERSE_WEIGHTS[:, :, None], rate, out=core)

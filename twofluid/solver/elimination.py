@@ -12,7 +12,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from .blocks import DIAGONAL, FULL, UNIFORM
+from .blocks import DIAGONAL, FULL, UNIFORM, Kind
 from .collocation import STAGES, STATE_LOAD
 from .program import Program, Symbol
 
@@ -73,6 +73,10 @@ class Elimination:
         self._groups = _groups(self.pivots, self._program)
         self._program.close(symbol for group in self._groups for symbol in group.symbols)
         self._factors: dict[tuple[int, int], Factors] = {}
+
+    def kind(self, symbol: Symbol) -> Kind:
+        """Give the kind of block a symbol of a pivot stands for."""
+        return self._program.kind(symbol)
 
     def _eliminate(self, index: int, work: dict[Entry, Symbol]) -> Pivot:
         """Take one unknown out of the remaining blocks, by symbol."""
@@ -230,43 +234,67 @@ class _Substitution:
 
     def __init__(self, group: _Group, values: Sequence[np.ndarray], steps: int, load: np.ndarray, stages: np.ndarray):
         size, modes = len(group.own), load.shape[-1]
-        own, self._rows, self._columns = map(_positions, (group.own, group.rows, group.columns))
+        own = _positions(group.own)
+        rows, columns = len(group.rows) // size, len(group.columns) // size
         self.needs_others = group.beyond is not None
         self._below_full, self._beyond_full = group.below_full, group.beyond_full
-        self._load, self._stages = load, stages
-        self._own_load, self._own = load[own], stages[own]
         self._inverse = _by_step(values[group.inverse], steps, (STAGES, STAGES))
-        rows, columns = len(group.rows) // size, len(group.columns) // size
+        self._own_load, self._own = load[own], stages[own]
+        self._own_alone = self._own[:, None]
         if group.below is not None:
             self._below = _by_step(values[group.below], steps, (rows, STAGES, STAGES)[: 2 + group.below_full])
         if group.beyond is not None:
             self._beyond = _by_step(values[group.beyond], steps, (columns, STAGES, STAGES)[: 2 + group.beyond_full])
         self._share = np.empty((size, rows, STAGES, modes))
-        self._given = (size, columns, STAGES, modes)
+        self._flat_share = self._share.reshape(-1, STAGES, modes)
+        self._target = _View(load, group.rows)
+        self._source, self._given = _View(stages, group.columns), (size, columns, STAGES, modes)
         self._received, self._change = np.empty((2, size, STAGES, modes))
 
     def forward(self, step: int) -> None:
         """Solve for these unknowns as if they needed no other; pass their share on to the rows below."""
         np.einsum("ijm,gjm->gim", self._inverse[step], self._own_load, out=self._own)
-        share = self._share
-        if not share.size:
+        if not self._share.size:
             return
         if self._below_full:
-            np.einsum("rijm,gjm->grim", self._below[step], self._own, out=share)
+            np.einsum("rijm,gjm->grim", self._below[step], self._own, out=self._share)
         else:
-            np.multiply(self._below[step], self._own[:, None], out=share)
-        self._load[self._rows] += share.reshape(-1, *share.shape[2:])
+            np.multiply(self._below[step], self._own_alone, out=self._share)
+        self._target.add(self._flat_share)
 
     def backward(self, step: int) -> None:
         """Add what these unknowns receive from those eliminated after them."""
         block, change = self._beyond[step], self._change
-        given = self._stages[self._columns].reshape(self._given)
+        given = self._source.read().reshape(self._given)
         if self._beyond_full:
             np.einsum("cijm,gcjm->gim", block, given, out=change)
         else:
-            received = np.einsum("cim,gcim->gim", block, given, out=self._received)
+            received = self._received
+            if len(block) == 1:
+                np.multiply(block, given[:, 0], out=received)
+            else:
+                np.einsum("cim,gcim->gim", block, given, out=received)
             np.einsum("ijm,gjm->gim", self._inverse[step], received, out=change)
         np.add(self._own, change, out=self._own)
+
+
+class _View:
+    """Some unknowns of an array of stages: seen in place where they follow one another, else copied."""
+
+    def __init__(self, array: np.ndarray, indices: list[int]):
+        self._array, self._indices = array, _positions(indices)
+        self._place = array[self._indices] if isinstance(self._indices, slice) else None
+
+    def read(self) -> np.ndarray:
+        """Give their values."""
+        return self._array[self._indices] if self._place is None else self._place
+
+    def add(self, change: np.ndarray) -> None:
+        """Add to their values; the unknowns differ from one another."""
+        if self._place is None:
+            self._array[self._indices] += change
+        else:
+            np.add(self._place, change, out=self._place)
 
 
 def _positions(indices: list[int]) -> slice | np.ndarray:

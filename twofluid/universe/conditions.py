@@ -1,13 +1,13 @@
 """Quick look-up of the smooth universe at many conformal times."""
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from math import prod
 
 import numpy as np
 
 from .expansion import ROUNDING
 from .interpolation import UniformCubic, evaluate_rows
-from .members import pick, side_by_side
+from .members import SideBySide
 
 EARLIEST_TABLE_SCALE_FACTOR = 1.0e-14  # start of the table
 TABLE_INTERVALS = 8192  # 0.0035 in ln a: the helium steps to 1e-6, see the tests
@@ -62,7 +62,6 @@ class _Frame:
     latest: float  # and of the last [Mpc]
     start: float  # ln(conformal time) of the first node
     per_step: float  # one over the spacing in ln(conformal time)
-    first_row: int  # of the table among those stacked
 
 
 class ConditionsTable:
@@ -80,6 +79,8 @@ class ConditionsTable:
         At the nodes of the table [unitless].
     """
 
+    PARTS = ("frame", "contents", "baryons")  # attributes that hold its numbers
+
     def __init__(self, expansion, ionization, baryons):
         self.contents, self.baryons = expansion.contents, baryons
         earliest = float(expansion.conformal_time(EARLIEST_TABLE_SCALE_FACTOR))
@@ -89,7 +90,7 @@ class ConditionsTable:
         electrons, lag = ionization.state(a)
         step = (log_time[-1] - log_time[0]) / TABLE_INTERVALS
         self.rows = UniformCubic(log_time[0], step, np.stack([np.log(a), np.log(electrons), lag])).rows
-        self.frame = _Frame(earliest, latest, log_time[0], 1.0 / step, 0)
+        self.frame = _Frame(earliest, latest, log_time[0], 1.0 / step)
 
     def __call__(self, conformal_time):
         """Conditions at `conformal_time`, an array of any shape.
@@ -99,7 +100,7 @@ class ConditionsTable:
         ValueError
             If a time lies outside the table.
         """
-        return _look_up(conformal_time, (), self.rows, self.frame, self.contents, self.baryons)
+        return _look_up(conformal_time, (), self.rows, 0, self.frame, self.contents, self.baryons)
 
 
 class ConditionsStack:
@@ -112,21 +113,15 @@ class ConditionsStack:
 
     def __init__(self, tables):
         self._rows = np.concatenate([table.rows for table in tables])
-        frames = [replace(table.frame, first_row=n * TABLE_INTERVALS) for n, table in enumerate(tables)]
-        self._each = [
-            side_by_side(parts)
-            for parts in (frames, [table.contents for table in tables], [table.baryons for table in tables])
-        ]
+        self._parts = SideBySide(*([getattr(table, part) for table in tables] for part in ConditionsTable.PARTS))
 
-    def __call__(self, conformal_time, owner):
-        """Conditions at `conformal_time`, shape (..., column), each column in the universe `owner` names.
+    def of(self, owner):
+        """Conditions as a function of conformal times, shape (..., column), each column in the universe that owns it.
 
-        Raises
-        ------
-        ValueError
-            If a time lies outside the table of its universe.
+        The function raises ValueError if a time lies outside the table of its universe.
         """
-        return _look_up(conformal_time, np.shape(owner), self._rows, *(pick(part, owner) for part in self._each))
+        first_row, parts = owner * TABLE_INTERVALS, self._parts.pick(owner)
+        return lambda conformal_time: _look_up(conformal_time, owner.shape, self._rows, first_row, *parts)
 
 
 class FurtherFields:
@@ -141,53 +136,55 @@ class FurtherFields:
 
     def __init__(self, tables, values):
         self._rows = np.concatenate([UniformCubic(0.0, 1.0, one).rows for one in values])
-        frames = [replace(table.frame, first_row=n * TABLE_INTERVALS) for n, table in enumerate(tables)]
-        self._frames = side_by_side(frames)
+        self._frames = SideBySide([table.frame for table in tables])
 
     def __call__(self, conformal_time, owner=0):
         """Values at `conformal_time`, any shape, its last axis one column for each `owner`: a list of arrays.
 
         Times have to lie in the table of their universe.
         """
-        frame = pick(self._frames, owner)
+        (frame,) = self._frames.pick(owner)
         place = (np.log(conformal_time) - frame.start) * frame.per_step
-        return evaluate_rows(self._rows, place, TABLE_INTERVALS, frame.first_row)
+        return evaluate_rows(self._rows, place, TABLE_INTERVALS, owner * TABLE_INTERVALS)
 
 
-def _look_up(conformal_time, columns, rows, frame, contents, baryons):
+def _look_up(conformal_time, columns, rows, first_row, frame, contents, baryons):
     """Conditions in one universe (`columns` is the empty shape) or in that of each column."""
     time = np.asarray(conformal_time, dtype=float)
-    if not np.all((time >= frame.earliest * (1.0 - ROUNDING)) & (time <= frame.latest * (1.0 + ROUNDING))):
-        _refuse(time, frame)
     lines = time.reshape(-1, *columns)
+    # least and greatest of each column; not a number fails both tests
+    first, last = lines.min(axis=0, initial=np.inf), lines.max(axis=0, initial=-np.inf)
+    if not np.all((first >= frame.earliest * (1.0 - ROUNDING)) & (last <= frame.latest * (1.0 + ROUNDING))):
+        _refuse(first, last, frame)
     out = np.empty((len(FIELDS), *lines.shape))
     block = max(1, _BLOCK // max(1, prod(columns)))
     for begin in range(0, len(lines), block):
-        _fill(lines[begin : begin + block], out[:, begin : begin + block], rows, frame, contents, baryons)
+        here = slice(begin, begin + block)
+        place = (np.log(lines[here]) - frame.start) * frame.per_step
+        _fill(evaluate_rows(rows, place, TABLE_INTERVALS, first_row), out[:, here], contents, baryons)
     return Conditions(**dict(zip(FIELDS, out.reshape((len(FIELDS), *time.shape)), strict=True)))
 
 
-def _refuse(time, frame):
-    """Say which times the first universe left has."""
-    earliest, latest = np.broadcast_arrays(frame.earliest, frame.latest, time)[:2]
-    outside = ~((time >= earliest * (1.0 - ROUNDING)) & (time <= latest * (1.0 + ROUNDING)))
-    place = np.unravel_index(np.argmax(outside), time.shape)
+def _refuse(first, last, frame):
+    """Say which times the universe of the first offending column has."""
+    outside = ~((first >= frame.earliest * (1.0 - ROUNDING)) & (last <= frame.latest * (1.0 + ROUNDING)))
+    column = int(np.argmax(outside))
+    earliest, latest = (np.ravel(end)[column] for end in (frame.earliest, frame.latest))
     raise ValueError(
-        f"conformal times must lie between {earliest[place]:.4g} Mpc (scale factor "
-        f"{EARLIEST_TABLE_SCALE_FACTOR:g}) and {latest[place]:.8g} Mpc (today)"
+        f"conformal times must lie between {earliest:.4g} Mpc (scale factor {EARLIEST_TABLE_SCALE_FACTOR:g}) "
+        f"and {latest:.8g} Mpc (today)"
     )
 
 
-def _fill(time, out, rows, frame, contents, baryons):
-    place = np.log(time)
-    place -= frame.start
-    place *= frame.per_step
-    looked_up = evaluate_rows(rows, place, TABLE_INTERVALS, frame.first_row)
-    a, electrons, ratio = (np.exp(value, out=value) for value in looked_up)
+def _fill(logarithms, out, contents, baryons):
+    """Fill in all fields from ln a, ln x_e and ln(T_gamma/T)."""
+    a, electrons, ratio = map(np.exp, logarithms)
     out[0] = a
-    out[1], out[2:6] = contents.gravities(a, "photon", "neutrino", "baryon", "dark")
+    out[1] = contents.conformal_hubble_rate(a)
+    for field, species in enumerate(("photon", "neutrino", "baryon", "dark"), start=2):
+        out[field] = contents.gravity(species, a)
     out[6] = baryons.scattering_rate(a, electrons)
-    out[7] = 4.0 / 3.0 * contents.photon / contents.baryon / a
+    out[7] = 4.0 / 3.0 * out[2] / out[4]
     out[8] = baryons.isothermal_sound_speed_squared(baryons.photon_temperature / (a * ratio), electrons)
     out[9] = baryons.compton_rate(a, electrons)
     out[10] = ratio

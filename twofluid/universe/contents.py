@@ -1,26 +1,20 @@
 """What a universe is made of, how each species thins out, and the expansion rate that follows."""
 
 from dataclasses import dataclass
-from functools import cached_property
 
 import numpy as np
 
-# How 8 pi G a^2 rho changes with the scale factor, relative to today
+# 8 pi G a^4 rho grows as this power of the scale factor
+_POWER = {"photon": 0, "neutrino": 0, "baryon": 1, "dark": 1, "curvature": 2, "constant": 4}
+SPECIES = tuple(_POWER)
+# 8 pi G a^2 rho relative to today, by the same power
 _DILUTION = {
-    "radiation": lambda a: 1.0 / (a * a),
-    "matter": lambda a: 1.0 / a,
-    "curvature": lambda a: a * 0.0 + 1.0,
-    "constant": lambda a: a * a,
+    0: lambda a: 1.0 / (a * a),
+    1: lambda a: 1.0 / a,
+    2: np.ones_like,
+    4: lambda a: a * a,
 }
-_KIND = {
-    "photon": "radiation",
-    "neutrino": "radiation",
-    "baryon": "matter",
-    "dark": "matter",
-    "curvature": "curvature",
-    "constant": "constant",
-}
-SPECIES = tuple(_KIND)
+_ALIKE = {power: [name for name in SPECIES if _POWER[name] == power] for power in _DILUTION}
 
 
 @dataclass(frozen=True)
@@ -38,25 +32,27 @@ class Contents:
     curvature: float
     constant: float
 
-    @cached_property
-    def _sums(self):
-        sums = dict.fromkeys(_DILUTION, 0.0)
-        for species, kind in _KIND.items():
-            sums[kind] = sums[kind] + getattr(self, species)
-        return sums
-
     def gravity(self, species, scale_factor):
         """8 pi G a^2 rho of one species [1/Mpc^2]."""
-        return getattr(self, species) * _DILUTION[_KIND[species]](scale_factor)
-
-    def gravities(self, scale_factor, *species):
-        """Conformal rate a'/a [1/Mpc], and 8 pi G a^2 rho of each species named [1/Mpc^2]."""
-        diluted = {kind: law(scale_factor) for kind, law in _DILUTION.items()}
-        return self._rate(diluted), [getattr(self, name) * diluted[_KIND[name]] for name in species]
+        return getattr(self, species) * _DILUTION[_POWER[species]](scale_factor)
 
     def conformal_hubble_rate(self, scale_factor):
-        """Conformal rate a'/a [1/Mpc]; Friedmann: 3 (a'/a)^2 is the sum of 8 pi G a^2 rho."""
-        return self._rate({kind: law(scale_factor) for kind, law in _DILUTION.items()})
+        """Conformal rate a'/a [1/Mpc]; Friedmann: 3 (a'/a)^2 is the sum of 8 pi G a^2 rho over the species.
 
-    def _rate(self, diluted):
-        return np.sqrt(sum(self._sums[kind] * share for kind, share in diluted.items()) / 3.0)
+        The sum times a^2 is a polynomial, evaluated in place: no function of the package is called more often.
+        """
+        highest, *powers = sorted(_ALIKE, reverse=True)
+        total = self._sum(highest) * scale_factor
+        for power in range(highest - 1, 0, -1):
+            if power in powers:
+                total += self._sum(power)
+            total *= scale_factor
+        total += self._sum(0)
+        total /= 3.0
+        total = np.sqrt(total)
+        total /= scale_factor
+        return total
+
+    def _sum(self, power):
+        first, *others = (getattr(self, name) for name in _ALIKE[power])
+        return sum(others, first)

@@ -22,7 +22,9 @@ LEAST_NET_DENSITY = 1.0e-3  # H^2 over the sum of its terms' sizes; below it the
 HOTTEST_PHOTONS = 1.0e3  # temperature today up to which recombination is over by now [K]
 ROUNDING = 1.0e-12  # relative slack at the ends of a range, which may arrive rounded
 _CHECK_NODES = 4001  # in ln a, where the expansion is seen to go on: a dip between two is shallower than 1e-4
-_INVERSION_STEPS = 2  # Newton steps for a(conformal time), quadratic: one is enough but where expansion all but stops
+_INVERSION_STEPS = 3  # Newton steps allowed for a(conformal time): one suffices unless the expansion all but stops
+_INVERTED = 1.0e-6  # last Newton change of ln a; the one it spares would be about its square
+
 
 class Expansion:
     """The expansion history a cosmology implies.
@@ -137,8 +139,10 @@ class Expansion:
         log_a = np.minimum(self._guess(np.log(time)), 0.0)
         for _ in range(_INVERSION_STEPS):
             now = self._time(log_a)
-            rate = self.conformal_hubble_rate(np.exp(log_a))
-            log_a = np.minimum(log_a + np.log(time / now) * rate * now, 0.0)
+            change = np.log(time / now) * self.conformal_hubble_rate(np.exp(log_a)) * now
+            log_a = np.minimum(log_a + change, 0.0)
+            if np.max(np.abs(change), initial=0.0) < _INVERTED:
+                break
         return np.exp(log_a)
 
 

@@ -27,7 +27,7 @@ from .constants import (
 from .errors import UniverseError
 from .expansion import log_scale_factor
 from .interpolation import UniformCubic, interpolate_smooth
-from .members import pick, side_by_side
+from .members import SideBySide
 
 FULLY_IONIZED_TEMPERATURE = 1.0e5  # 1e-12 of helium is not bare there (1e-6 if 1e7 times denser) [K]
 STEP = 5.0e-3  # of the table in ln a: good to 1e-7, at the end of helium recombination
@@ -165,9 +165,8 @@ def _solve(expansions, baryons, recombination_factor):
     """
     early = [_early_gas(*parts) for parts in zip(expansions, baryons, strict=True)]
     departure = np.array([gas.later[0] for gas in early])[:, None]
-    contents = side_by_side([expansion.contents for expansion in expansions])
-    column = np.arange(len(early))[:, None]
-    rates = _Rates(pick(contents, column), pick(side_by_side(baryons), column), recombination_factor)
+    together = SideBySide([expansion.contents for expansion in expansions], baryons)
+    rates = _Rates(*together.pick(np.arange(len(early))[:, None]), recombination_factor)
 
     def slopes(s, state):
         return rates.slopes(_graded(departure, s), state) * _graded_slope(departure, s)

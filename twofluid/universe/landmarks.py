@@ -98,7 +98,7 @@ def _unit_depth(universe, rate, name):
 
 def reionization_depth(universe, unheated):
     """Photon depth of the electrons that one universe has and the other has not [unitless]."""
-    start = -np.log(universe.heated)
+    start = -np.log(universe.heated_from)
 
     def integrand(log_redshift):
         a = np.exp(-log_redshift)

@@ -7,11 +7,11 @@ import numpy as np
 from .background import solve_backgrounds
 from .conditions import ConditionsStack, FurtherFields
 from .errors import UniverseError
-from .members import pick, side_by_side
+from .members import SideBySide
 from .response import Response
 from .universe import Universe
 
-_GROUP = 16  # universes solved together, so that the intermediate arrays stay in the cache
+_GROUP = 32  # universes solved together, so that the intermediate arrays stay in the cache
 
 
 def build_universes(cosmologies):
@@ -82,7 +82,8 @@ class UniverseStack:
         columns : index of `owner`, optional
             The columns that are meant; all if left out.
         """
-        return pick(self._contents, self._owner(columns)).gravity(species, scale_factor)
+        (contents,) = self._contents.pick(self._owner(columns))
+        return contents.gravity(species, scale_factor)
 
     def conditions(self, conformal_time, columns=None):
         """Conditions at conformal times [Mpc], as `Universe.conditions` finds them for each column.
@@ -98,23 +99,42 @@ class UniverseStack:
         ValueError
             If a time lies outside.
         """
-        return self._tables(conformal_time, self._owner(columns))
+        look_up = self._all_columns if columns is None else self._tables.of(self.owner[columns])
+        return look_up(conformal_time)
+
+    @property
+    def has_dark_pressure(self):
+        """Whether the dark matter of any of the universes is not cold."""
+        return any(universe.has_dark_pressure for universe in self.universes)
+
+    def dark_sound_speed(self, scale_factor, columns=None):
+        """Sound speed of the dark matter [c]; arguments as in `gravity`."""
+        (sound,) = self._dark_sounds.pick(self._owner(columns))
+        return sound.speed(scale_factor)
 
     @cached_property
     def _contents(self):
-        return side_by_side([universe.contents for universe in self.universes])
+        return SideBySide([universe.contents for universe in self.universes])
 
-    def _owner(self, columns):
-        return self.owner if columns is None else self.owner[columns]
+    @cached_property
+    def _all_columns(self):
+        return self._tables.of(self.owner)
+
+    @cached_property
+    def _dark_sounds(self):
+        return SideBySide([universe.dark_sound for universe in self.universes])
 
     @cached_property
     def _tables(self):
         return ConditionsStack([universe.conditions_table for universe in self.universes])
 
+    def _owner(self, columns):
+        return self.owner if columns is None else self.owner[columns]
+
     @property
-    def heated(self):
-        """Whether any of the universes is heated beside Compton scattering."""
-        return any(universe.heated for universe in self.universes) or None
+    def heated_from(self):
+        """Scale factor from which on any of the universes is heated as in `Universe.heated_from`; None: never."""
+        return min((universe.heated_from for universe in self.universes if universe.heated_from), default=None)
 
     def heating_rate(self, conformal_time, columns=None):
         """Rate of heating as `Universe.heating_rate`, times and columns as in `conditions` [1/Mpc]."""

@@ -1,16 +1,38 @@
-"""Several universes side by side: dataclasses of numbers turned into one of arrays, and back."""
-
-from dataclasses import fields
+"""Several universes side by side: dataclasses of numbers turned into dataclasses of arrays."""
 
 import numpy as np
 
 
-def side_by_side(items):
-    """Make one dataclass of arrays, shape (universe,), of dataclasses of numbers, one a universe."""
-    names = [field.name for field in fields(items[0])]
-    return type(items[0])(**{name: np.array([getattr(item, name) for item in items]) for name in names})
+class SideBySide:
+    """Numbers of several universes, to be picked as arrays.
 
+    Parameters
+    ----------
+    *parts : sequence of dataclass
+        Each a list of dataclasses of one kind that hold nothing but numbers, one a universe.
+    """
 
-def pick(arrays, index):
-    """Take `array[index]` of every array of a dataclass from `side_by_side`."""
-    return type(arrays)(**{field.name: getattr(arrays, field.name)[index] for field in fields(arrays)})
+    def __init__(self, *parts):
+        self._kinds = [(type(items[0]), tuple(vars(items[0]))) for items in parts]
+        self._values = np.array(
+            [[vars(item)[name] for item in items] for items in parts for name in vars(items[0])]
+        )
+
+    def pick(self, owner):
+        """Arrays of the universes named.
+
+        Parameters
+        ----------
+        owner : array of int, any shape
+
+        Returns
+        -------
+        list of dataclass
+            One for each of the parts; it holds arrays shaped as `owner`.
+        """
+        picked, values = [], iter(self._values.take(owner, axis=1))
+        for kind, names in self._kinds:
+            part = object.__new__(kind)
+            vars(part).update((name, next(values)) for name in names)  # what it worked out comes along
+            picked.append(part)
+        return picked

@@ -8,6 +8,7 @@ import numpy as np
 from . import gas
 from .background import Background, solve_backgrounds
 from .conditions import ConditionsTable, FurtherFields
+from .dark import dark_sound
 from .errors import UniverseError
 from .expansion import log_scale_factor
 from .landmarks import find_landmarks, reionization_depth
@@ -40,6 +41,7 @@ class Universe:
         background = background or solve_backgrounds([cosmology])[0]
         self._expansion = background.expansion
         self._baryons = background.baryons
+        self.dark_sound = dark_sound(cosmology)
         self._ionization = background.ionization
         self._computed = background.computed
 
@@ -126,21 +128,21 @@ class Universe:
         everywhere to a contrast that grows as a, and 2/3 at most.
         """
         slope = self.gas_temperature_slope(scale_factor)
-        if not self.heated:
+        if not self.heated_from:
             return -slope / 3.0
         compton = self.compton_rate(scale_factor) / self.conformal_hubble_rate(scale_factor)
         given = 2.0 / 3.0 / np.maximum(3.0 + slope + compton, 1.0)
-        return np.where(np.asarray(scale_factor) >= self.heated, given, -slope / 3.0)
+        return np.where(np.asarray(scale_factor) >= self.heated_from, given, -slope / 3.0)
 
     @property
-    def heated(self):
+    def heated_from(self):
         """Scale factor from which on a table or reionization shapes the gas; None: never [unitless]."""
         return getattr(self._ionization, "start", None)
 
     @cached_property
     def unheated(self):
         """The same universe without table and reionization: itself if it has neither."""
-        if self.heated is None:
+        if self.heated_from is None:
             return self
         background = Background(self._expansion, self._baryons, self._computed, self._computed)
         return Universe(replace(self.cosmology, thermal=None, reionization=None), background)
@@ -155,6 +157,23 @@ class Universe:
     def gas_sound_speed(self, scale_factor):
         """Sound speed of the gas, c_s^2 = (k T/(mu m_H)) (1 + stiffness), see `gas_stiffness` [c]."""
         return self.isothermal_sound_speed(scale_factor) * np.sqrt(1.0 + self.gas_stiffness(scale_factor))
+
+    # --- dark matter -------------------------------------------------------------------------------
+    @property
+    def has_dark_pressure(self):
+        """Whether there is dark matter, and it is not cold."""
+        return self.dark_sound.today > 0.0
+
+    def dark_sound_speed(self, scale_factor, columns=None):
+        """Sound speed of the dark matter, 0 if it is cold [c].
+
+        `columns` is there for a `UniverseStack`, as in `conditions`.
+        """
+        return self.dark_sound.speed(np.asarray(scale_factor, dtype=float))
+
+    def dark_sound_horizon(self, scale_factor):
+        """Comoving way of sound in the dark matter since the beginning [Mpc]."""
+        return self._dark_sound_way(log_scale_factor(scale_factor))
 
     # --- plasma ------------------------------------------------------------------------------------
     def plasma_sound_speed(self, scale_factor):
@@ -177,6 +196,12 @@ class Universe:
     def _sound_way(self):
         return self._expansion.running_integral(
             lambda a: self.plasma_sound_speed(a) / self.conformal_hubble_rate(a), power=1
+        )
+
+    @cached_property
+    def _dark_sound_way(self):
+        return self._expansion.running_integral(
+            lambda a: self.dark_sound_speed(a) / self.conformal_hubble_rate(a), power=1
         )
 
     @cached_property
@@ -207,7 +232,7 @@ class Universe:
     @cached_property
     def landmarks(self):
         """Landmark epochs and scales, those of the gas left unheated; UniverseError names one that is not there."""
-        if self.heated is None:
+        if self.heated_from is None:
             return find_landmarks(self)
         depth = reionization_depth(self, self.unheated)
         return replace(self.unheated.landmarks, reionization_optical_depth=depth)
