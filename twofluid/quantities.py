@@ -235,7 +235,9 @@ _LANDMARKS = (
              "photon optical depth of the electrons that a table or reionization adds; other landmarks are without"),
 )
 
-_GROUPS = (_AXES, _AMPLITUDES, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _STREAMING, _COMPARISON, _LANDMARKS)
+_GROUPS = (
+    _AXES, _AMPLITUDES, _MIXTURE, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _STREAMING, _COMPARISON, _LANDMARKS,
+)  # fmt: skip
 
 QUANTITIES = {quantity.name: quantity for group in _GROUPS for quantity in group}
 

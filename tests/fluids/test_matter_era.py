@@ -187,9 +187,11 @@ def released(law):
         gravity=lambda species, a: 12 / a if species == "dark" else 0.0,
     )
     return SimpleNamespace(
+        initial_modes="adiabatic",
         universe=smooth,
         wavenumber=K * kappa,
         has_dark_matter=True,
+        initial_modes="adiabatic",
         at=lambda name, redshift: splines[name](-np.log1p(redshift)).T,
     )
 

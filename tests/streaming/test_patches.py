@@ -9,6 +9,7 @@ from scipy.integrate import solve_ivp
 
 from twofluid import SolverFailure, evolve
 from twofluid.fluids import PatchSystem
+from twofluid.scenario import DarkMatter
 from twofluid.streaming import follow_patches
 from twofluid.streaming.patches import _Patch
 
@@ -29,6 +30,20 @@ def test_without_wind_the_patch_is_the_plain_run(start, rms, make_scenario):
     # Photons are smooth at all these k; what is left are the steps of both.
     assert dark.real == pytest.approx(plain.delta_dark, rel=3e-5)
     assert (baryon.real - plain.delta_baryon) / plain.delta_dark == pytest.approx(0.0, abs=3e-5)
+
+
+def test_without_wind_the_patch_is_the_plain_run_also_where_dark_matter_has_pressure(rms, make_scenario):
+    # From below its Jeans scale to above; the law in km/s, redshift, power of 1 + z.
+    scenario = make_scenario(dark_matter=DarkMatter(3.0, 0.0, 0.5))
+    k = np.array([2.0, 10.0, 60.0])
+    plain, begun = (evolve(scenario, wavenumbers=k, redshifts=z) for z in (LATER, [START]))
+    dark, baryon = amplitudes(begun, rms, 0.0, LATER)
+    size = np.abs(plain.delta_dark).max(axis=1, keepdims=True)
+    assert dark.real / size == pytest.approx(plain.delta_dark / size, abs=1e-4)  # waves followed in other steps
+    size = np.abs(plain.delta_baryon).max(axis=1, keepdims=True)
+    assert baryon.real / size == pytest.approx(plain.delta_baryon / size, abs=1e-3)  # photons, see the next test
+    cold = evolve(make_scenario(), wavenumbers=k, redshifts=LATER)
+    assert np.all(np.abs(plain.delta_dark / cold.delta_dark - 1)[1:] > 0.1)  # it does something
 
 
 def test_acoustic_waves_are_beyond_it(start, rms, make_scenario):

@@ -7,6 +7,7 @@ import pytest
 from scipy.special import dawsn
 
 from twofluid import evolve
+from twofluid.scenario import DarkMatter
 from twofluid.streaming import Wind, find_wind, wind_wavenumbers
 
 KILOMETRES = 299792.458  # per second, of the speed of light; exact
@@ -117,7 +118,8 @@ def test_the_error_covers_a_wider_and_denser_run(make_scenario, windy, wind):
 
 def replace_modes(run, chosen):
     """Return a run of some of its modes."""
-    trace = replace(run.trace, **{name: values[chosen] for name, values in vars(run.trace).items()})
+    carried = {name: values for name, values in vars(run.trace).items() if values is not None}
+    trace = replace(run.trace, **{name: values[chosen] for name, values in carried.items()})
     return replace(run, wavenumber=run.wavenumber[chosen], trace=trace)
 
 
@@ -125,6 +127,19 @@ def replace_modes(run, chosen):
 def test_a_run_that_is_no_grid_is_refused(windy, chosen):
     with pytest.raises(ValueError, match="must be an odd number, 5 or more, increasing by equal factors"):
         find_wind(replace_modes(windy, chosen), [100.0])
+
+
+def test_wind_is_relative_to_dark_matter_that_moves(make_scenario, windy, wind):
+    # The frame's velocity is not that of dark matter with pressure.
+    pressed = evolve(
+        make_scenario(dark_matter=DarkMatter(10.0, 0.0, 0.5)), wavenumbers=windy.wavenumber, redshifts=[100.0]
+    )
+    found = find_wind(pressed, [100.0])
+    power = found.spectrum[:, 0] * found.wavenumber**2 / (pressed.theta_baryon - pressed.theta_dark)[:, 0] ** 2
+    primordial = 2.1e-9 * (found.wavenumber / 0.05) ** (0.965 - 1)
+    assert power == pytest.approx(primordial, rel=1e-9)
+    against_frame = primordial * (pressed.theta_baryon[:, 0] / found.wavenumber) ** 2
+    assert np.abs(against_frame / found.spectrum[:, 0] - 1).max() > 0.5  # control: another velocity
 
 
 def test_wind_scales_with_the_primordial_amplitude(windy, wind):

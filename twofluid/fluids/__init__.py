@@ -2,6 +2,7 @@
 
 from .closures import CLOSURES, MIXTURE_CLOSURES
 from .kinetic import ChainLengths, KineticSystem
+from .modes import isocurvature
 from .patch import PatchSystem
 from .resolution import ACCURACIES, Resolution, resolution_for
 from .sound_speed import SoundSpeedSystem
@@ -21,6 +22,7 @@ __all__ = [
     "adiabatic",
     "check_dark_waves",
     "clock",
+    "isocurvature",
     "mixed",
     "resolution_for",
     "start_time",

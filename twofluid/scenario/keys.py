@@ -126,9 +126,9 @@ ADIABATIC = "adiabatic"  # the initial mode that is there if nothing is said
 INITIAL_MODES = {  # the others, and what is one at the beginning where the amplitude is one
     "baryon": "baryon density isocurvature; unit delta_b - 3/4 delta_gamma",
     "dark_matter": "dark-matter density isocurvature; unit delta_c - 3/4 delta_gamma",
+    "compensated": "baryons denser where dark matter is thinner, matter uniform; unit delta_b - 3/4 delta_gamma",
     "neutrino_density": "neutrinos denser where photons are thinner; unit 3/4 (delta_nu - delta_gamma)",
     "neutrino_velocity": "neutrinos stream through the plasma; unit (theta_nu - theta_gamma)/k",
-    "compensated": "baryons denser where dark matter is thinner, matter uniform; unit delta_b - 3/4 delta_gamma",
 }
 MIXTURE = "primordial.mixture"
 

@@ -50,16 +50,16 @@ class Mixture:
     ----------
     adiabatic : float
         Rms amplitude of the adiabatic mode over the square root of the primordial power; 0 leaves it out [unitless].
-    baryon, dark_matter, neutrino_density, neutrino_velocity, compensated : Share or None
+    baryon, dark_matter, compensated, neutrino_density, neutrino_velocity : Share or None
         The other modes; None leaves one out.
     """
 
     adiabatic: float = default_of(f"{MIXTURE}.{ADIABATIC}")
     baryon: Share | None = None
     dark_matter: Share | None = None
+    compensated: Share | None = None
     neutrino_density: Share | None = None
     neutrino_velocity: Share | None = None
-    compensated: Share | None = None
 
     @property
     def shares(self) -> dict[str, Share]:
