@@ -44,6 +44,7 @@ def make_history():
                 to_mapping=lambda: {"title": "Saltmarsh test"},
                 assumptions=lambda: ("primordial.tilt = 0.965",),
                 method=SimpleNamespace(closure="kinetic"),
+                cosmology=SimpleNamespace(thermal=None, reionization=None),
                 primordial=Primordial(),
             ),
             universe=SimpleNamespace(
