@@ -231,7 +231,7 @@ def test_same_solution_as_a_general_solver_on_the_published_equations(mode):
     first = int(np.searchsorted(run.x, 0.03))
     start = {name: v[0] for name, v in isocurvature(mode, universe, np.array([k]), run.tau[first : first + 1]).items()}
     neutrino = 5 + 2 * (PHOTON + 1)
-    y = np.zeros(neutrino + NEUTRINO + 1)
+    y = np.zeros(neutrino + NEUTRINO + 2)  # the last: cold dark matter stays at rest
     y[0], y[1], y[2] = start["curvature"], start["delta_dark"], start["delta_baryon"]
     y[3], y[4] = k * start["theta_baryon"], start["delta_gas_temperature"]
     y[5:7] = start["delta_photon"], 4 / 3 * start["theta_baryon"]

@@ -191,7 +191,6 @@ def released(law):
         universe=smooth,
         wavenumber=K * kappa,
         has_dark_matter=True,
-        initial_modes="adiabatic",
         at=lambda name, redshift: splines[name](-np.log1p(redshift)).T,
     )
 

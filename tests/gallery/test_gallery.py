@@ -46,6 +46,7 @@ def test_the_gallery_is_complete():
         "comparison-lag",
         "without-dark-matter/comparison-evolution",
         "warm-dark-matter/comparison-lag",
+        "mixture/comparison-lag",
     ):
         for form in ("pdf", "png"):
             assert (GALLERY / f"{name}.{form}").stat().st_size > 10_000  # bytes; an empty page has fewer
