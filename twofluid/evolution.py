@@ -173,10 +173,8 @@ def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, res
         scenario = replace(scenario, sampling=sampling, source=None)
     resolution = resolution or resolution_for(universe, scenario.method.accuracy)
     initial = parts(scenario.primordial, k)
-    closures, stepping = CLOSURES, resolution.stepping
-    if scenario.primordial.mixture is not None and scenario.primordial.mixture.shares:
-        closures, stepping = MIXTURE_CLOSURES, stepping.for_mixtures()
-    system = closures[scenario.method.closure](universe, np.tile(k, len(initial)), resolution.chains)
+    system = _system(scenario, universe, np.tile(k, len(initial)), resolution)
+    stepping = resolution.stepping.for_mixtures() if _is_mixture(scenario) else resolution.stepping
 
     scale_factors = np.unique(np.append(1.0 / (1.0 + z), 1.0))  # the marks: ascending, today included
     marks = universe.conformal_time(scale_factors)
@@ -185,6 +183,21 @@ def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, res
     start = start_time(universe, k)
     plan = clock(universe, k, start, stops, stepping)
     return _Request(scenario, universe, k, z, resolution, system, asked, initial, start, plan, named)
+
+
+def _is_mixture(scenario: Scenario) -> bool:
+    """Whether there is any initial mode beside the adiabatic one."""
+    return scenario.primordial.mixture is not None and bool(scenario.primordial.mixture.shares)
+
+
+def _system(scenario: Scenario, universe: Universe | UniverseStack, wavenumber: np.ndarray, resolution: Resolution):
+    """Set up the equations of a scenario."""
+    method = scenario.method
+    closures = MIXTURE_CLOSURES if _is_mixture(scenario) else CLOSURES
+    if method.ionization_fluctuations and method.closure != "kinetic":
+        raise ValueError(f"ionization_fluctuations needs the closure kinetic, got {method.closure}")
+    options = {"ionization_fluctuations": True} if method.ionization_fluctuations else {}
+    return closures[method.closure](universe, wavenumber, resolution.chains, **options)
 
 
 def _sweeps(requests: Sequence[_Request]) -> Iterator[list[int]]:
@@ -212,7 +225,7 @@ def _sweep(requests: Sequence[_Request], progress: Progress | None) -> list[Hist
     else:
         stack = UniverseStack([request.universe for request in requests], np.repeat(np.arange(len(sizes)), sizes))
         wavenumber = np.concatenate([request.system.wavenumber for request in requests])
-        system = type(requests[0].system)(stack, wavenumber, requests[0].resolution.chains)
+        system = _system(requests[0].scenario, stack, wavenumber, requests[0].resolution)
     times = np.exp(_side_by_side([request.boundaries() for request in requests]))
     first = np.concatenate([request.first_state() for request in requests], axis=1)
     ends = np.cumsum(sizes)

@@ -231,6 +231,8 @@ _LANDMARKS = (
     Quantity("thermal_decoupling_redshift", r"z_T", "", "Compton heating of the gas falls below expansion"),
     Quantity("age_today", r"t_0", "Gyr", "age of the universe today"),
     Quantity("conformal_age", r"\tau_0", "Mpc", "conformal time today"),
+    Quantity("reionization_optical_depth", r"\tau_\mathrm{re}", "",
+             "photon optical depth of the electrons that a table or reionization adds; other landmarks are without"),
 )
 
 _GROUPS = (

@@ -458,6 +458,24 @@ def test_an_unknown_closure_is_refused(scenario_file, out, capsys, nothing_solve
     check_refused(capsys, out, run("run", scenario_file, "--out", out), told)
 
 
+def test_a_bad_thermal_table_is_refused_with_its_line(tmp_path, capsys, nothing_solved):
+    heading = "# %ECSV 1.0\n# ---\n# datatype:\n# - {name: redshift, datatype: float64}\n"
+    heading += "# - {name: gas_temperature, unit: K, datatype: float64}\n"
+    heading += "# - {name: electron_fraction, datatype: float64}\n"
+    rows = "redshift gas_temperature electron_fraction\n0 1e4 1\n0.5 1e4 1\n1 -1e4 1\n1.5 1e4 1\n2 1e4 1\n"
+    (tmp_path / "heating.ecsv").write_text(heading + rows)
+    scenario = tmp_path / "heated.yaml"
+    scenario.write_text(
+        "cosmology: {hubble_constant: 70 km/(s Mpc), baryon_density: 0.02, dark_matter_density: 0.1}\n"
+        "sampling: {wavenumbers: 0.1 1/Mpc, redshifts: [20]}\nthermal: {table: heating.ecsv, below_redshift: 1.5}\n"
+    )
+    assert run("run", scenario, "--out", tmp_path / "out") == 2
+    told = capsys.readouterr().err
+    assert told.count("\n") == 1
+    assert f"{tmp_path / 'heating.ecsv'}:10: thermal.table.gas_temperature = -10000.0 K: is out of range" in told
+    assert not (tmp_path / "out").exists()
+
+
 def test_certificate_is_printed_and_stands_in_the_header(lean_file, out, capsys):
     assert run("run", lean_file, "--out", out, certificate=True) == 0
     assert "  numerical error of the lag ratio: " in capsys.readouterr().out

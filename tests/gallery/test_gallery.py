@@ -47,6 +47,8 @@ def test_the_gallery_is_complete():
         "without-dark-matter/comparison-evolution",
         "warm-dark-matter/comparison-lag",
         "mixture/comparison-lag",
+        "heated/comparison-lag",
+        "heated/comparison-evolution",
     ):
         for form in ("pdf", "png"):
             assert (GALLERY / f"{name}.{form}").stat().st_size > 10_000  # bytes; an empty page has fewer

@@ -1,6 +1,8 @@
 """Histories with known closed forms, shaped like a real one."""
 
-from dataclasses import make_dataclass, replace
+import sys
+from dataclasses import make_dataclass
+from pathlib import Path
 from types import SimpleNamespace
 
 import numpy as np
@@ -10,6 +12,10 @@ from scipy.interpolate import CubicHermiteSpline
 from twofluid import Universe, evolve
 from twofluid.history import EVOLVED, Trace
 from twofluid.scenario import Cosmology, Primordial, Sampling, Scenario
+
+sys.path.insert(0, str(Path(__file__).parent))  # the helpers beside the tests
+
+from standard_universe import standard_scenario
 
 RUN_REDSHIFTS = (10000.0, 3000.0, 1500.0, 1000.0, 500.0, 300.0, 200.0, 100.0, 50.0, 20.0, 10.0, 5.0, 0.0)
 
@@ -38,6 +44,7 @@ def make_history():
                 to_mapping=lambda: {"title": "Saltmarsh test"},
                 assumptions=lambda: ("primordial.tilt = 0.965",),
                 method=SimpleNamespace(closure="kinetic"),
+                cosmology=SimpleNamespace(thermal=None, reionization=None),
                 primordial=Primordial(),
             ),
             universe=SimpleNamespace(
@@ -86,12 +93,6 @@ def wave(middle, amplitude, rate, phase):
 def curves():
     """Return the curve makers."""
     return SimpleNamespace(power=power, wave=wave, age_today=AGE_TODAY)
-
-
-def standard_scenario(**changes):
-    """Saltmarsh's universe, parameters by name changed."""
-    cosmology = replace(Cosmology(67.5, baryon_density=0.0223, dark_matter_density=0.1195), **changes)
-    return Scenario("Saltmarsh test", cosmology, Primordial(), Sampling([0.1], [0.0]))
 
 
 @pytest.fixture(scope="session")

@@ -4,7 +4,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from conftest import standard_scenario
+from standard_universe import standard_scenario
 
 from twofluid import evolve
 from twofluid.products import (

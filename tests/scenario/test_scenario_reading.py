@@ -11,12 +11,15 @@ from twofluid.scenario import (
     Mixture,
     Neutrinos,
     Primordial,
+    Reionization,
     Sampling,
     Scenario,
     Share,
+    ThermalTable,
     parse_scenario,
     values,
 )
+from twofluid.scenario.keys import GAS_SECTIONS
 
 MINIMAL = """
 cosmology: {hubble_constant: 70 km/(s Mpc), baryon_density: 0.02, dark_matter_density: 0.1}
@@ -42,6 +45,14 @@ def test_every_key_reaches_its_field():
             neutrinos=Neutrinos(effective_number=3.0, masses=()),
             curvature_fraction=0.01,
             cosmological_constant_fraction=0.7,
+            thermal=ThermalTable(
+                redshift=(0.0, 0.6, 1.5, 3.0, 5.5, 9.0, 14.0, 21.0, 33.0),
+                gas_temperature=(8e3, 9e3, 1e4, 1e4, 9e3, 500.0, 60.0, 15.0, 22.0),
+                electron_fraction=(1.0, 1.0, 1.0, 1.0, 0.9, 0.1, 0.01, 5e-4, 2e-4),
+                below_redshift=30.0,
+                joining_width=0.2,
+            ),
+            reionization=Reionization(redshift=7.7, width=0.6, gas_temperature=12000.0),
             dark_matter=DarkMatter(sound_speed=0.002, at_redshift=100.0, scaling=0.5),
         ),
         primordial=Primordial(
@@ -66,7 +77,7 @@ def test_every_key_reaches_its_field():
             "shortfall": {"target_redshift": 7.0, "radii": (2.0,), "masses": (1e9,)},
             "streaming": {"from_redshift": 900.0, "velocities": (0.5, 1.0)},
         },
-        method=Method("sound-speed", "reference"),
+        method=Method("kinetic", "reference", True),
     )
     assert len(wavenumbers) == 21  # four decades, five points each, both ends
     assert scenario.assumed == ()
@@ -92,6 +103,7 @@ def test_defaults_fill_what_is_left_out_and_are_named():
     }
     not_made = set(NO_PRODUCTS) - {"products.lag.fractions"}
     leaves = {path for path, value in VALUES.items() if value} - required - not_made - set(NO_MIXTURE)
+    leaves = {path for path in leaves if not path.startswith(tuple(GAS_SECTIONS))} | set(GAS_SECTIONS)
     assert set(scenario.assumed) == {path for path in leaves if "wavenumbers" not in path}
     assert len(scenario.assumed) == len(set(scenario.assumed))
 

@@ -21,10 +21,21 @@ slip ``u = theta_baryon - theta_photon``. However fast Thomson scattering is, th
 since the slip has an equation of its own: there is no tight-coupling approximation. And however
 slow it is, the gas is not touched by the round-off of photons that stream through it.
 
+Two things a scenario can ask for change the equations of the gas. Heat that a table or reionization brings is
+given alike to every atom, so that it evens out the contrast of the temperature: ``-q delta_T`` with the heating q
+over thermal energy (cooling they may ask for goes with the temperature, and evens nothing out). And the electrons
+that recombination leaves may have a contrast delta_x of their own, which follows density, temperature and the
+local expansion as the recombination rate does (`twofluid.universe.Response`). It enters the Compton heating of
+the gas, by the share of the electrons among its particles, and its pressure, by their number. The drag
+``kappa' (theta_photon - theta_baryon)`` is of first order already since nothing moves in the smooth universe, so
+that a contrast of kappa' in it is of second order; the same holds for all scattering of photons. The temperature
+equation counts, as in the smooth universe, no energy that electrons take along when they are caught.
+
 References
 ----------
 Ma, C.-P. & Bertschinger, E. 1995, ApJ 455, 7: eqs 42, 49-58, 63, 64 (numbers from memory).
 Naoz, S. & Barkana, R. 2005, MNRAS 362, 1047: the gas-temperature contrast (from memory).
+Lewis, A. 2007, PRD 76, 063001: contrasts of the electron fraction (from memory).
 """
 
 from collections.abc import Mapping
@@ -33,7 +44,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..solver.collocation import STAGES
-from ..universe import Conditions, Universe
+from ..universe import Conditions, Response, Universe
 from .readout import Reading, constraint_drift, read_moving_dark_matter, read_quantities
 from .start import mixed
 
@@ -41,6 +52,7 @@ from .start import mixed
 # Chosen by measurement on several universes; weaker and broader for photons, whose chain ends in scattering at first.
 PHOTON_LAYER = (1.0, 5.0)
 NEUTRINO_LAYER = (2.0, 6.0)
+ELECTRONS = "delta_electron"  # the unknown that only a run with ionization fluctuations has
 FIRST_ABSORBED = 3  # the quadrupole and below stay as published
 CONSTRAINT_PULL = 3.0  # over the expansion rate; errors are the same at 10, a few times larger at 1 (measured)
 
@@ -72,6 +84,8 @@ class KineticSystem:
     wavenumber : array, shape (mode,)
         Comoving wavenumbers [1/Mpc].
     chains : ChainLengths
+    ionization_fluctuations : bool, optional
+        Whether the electrons have a contrast of their own, one more unknown.
     """
 
     observed = (
@@ -83,16 +97,23 @@ class KineticSystem:
     switches = ()  # one set of equations from first step to last
     cautions = ()
 
-    def __init__(self, universe: Universe, wavenumber: np.ndarray, chains: ChainLengths):
+    def __init__(
+        self, universe: Universe, wavenumber: np.ndarray, chains: ChainLengths, ionization_fluctuations: bool = False
+    ):
         self.universe = universe
         self.wavenumber = np.asarray(wavenumber, dtype=float)
         self.chains = chains
         curvature = -np.asarray(universe.gravity("curvature", 1.0)) / 3.0
         self._curvature = np.broadcast_to(curvature, self.wavenumber.shape)  # of space [1/Mpc^2]
+        self.ionization_fluctuations = ionization_fluctuations
         self.dark_pressure = universe.has_dark_pressure
         self.unknowns = _elimination_order(self.chains, self.dark_pressure)
         if self.dark_pressure:
             self.observed = (*type(self).observed, "theta_dark")
+        if ionization_fluctuations:
+            place = self.unknowns.index("delta_gas_temperature")
+            self.unknowns = (*self.unknowns[:place], ELECTRONS, *self.unknowns[place:])
+            self.observed = (*self.observed, ELECTRONS)
         self._row = {name: row for row, name in enumerate(self.unknowns)}
 
     def first_state(self, start: np.ndarray, weights: Mapping[str, np.ndarray] | None = None) -> np.ndarray:
@@ -132,6 +153,11 @@ class KineticSystem:
         now = self.universe.conditions(times)
         y = dict(zip(self.observed, observed, strict=True))
         quantities = read_quantities(now, self.wavenumber, y)
+        for added in self._gas_options(now, times, self.wavenumber, slice(None), 1.0):
+            for (row, column), rate in added.items():
+                if (name := f"{row}_slope") in quantities:
+                    scale = self.wavenumber if row == "theta_baryon" else 1.0
+                    quantities[name] = quantities[name] + scale * rate / now.hubble_rate * y[column]
         if self.dark_pressure:
             speed = self.universe.dark_sound_speed(now.scale_factor)
             quantities |= read_moving_dark_matter(now, self.wavenumber, y, speed)
@@ -150,12 +176,43 @@ class KineticSystem:
             **_polarization(surroundings),
             **_chains(surroundings, self.chains),
         }
+        for added in self._gas_options(now, time, self.wavenumber[modes], modes, step):
+            for entry, rate in added.items():
+                named[entry] = named.get(entry, 0.0) + rate.reshape(STAGES, -1)
         if self.dark_pressure:
             named |= _dark_pressure(surroundings, self.universe.dark_sound_speed(now.scale_factor, modes))
         if self.held_to_constraint:
             for entry, rate in _constraint(surroundings, self.wavenumber[modes] * time).items():
                 named[entry] = named.get(entry, 0.0) + rate
         return {(self._row[row], self._row[column]): rate for (row, column), rate in named.items()}
+
+    def _gas_options(self, now: Conditions, time: np.ndarray, wavenumber: np.ndarray, modes, step) -> list:
+        """Entries of what a scenario can ask of the gas, times step, shaped as `time`."""
+        added = []
+        if self.universe.heated_from:
+            heating = self.universe.heating_rate(time, modes) * step
+            added.append({("delta_gas_temperature", "delta_gas_temperature"): -heating})
+        if self.ionization_fluctuations:
+            added.append(_electrons(now, self.universe.response(time, modes), wavenumber, step))
+        return added
+
+
+def _electrons(now: Conditions, response: Response, wavenumber: np.ndarray, step) -> dict:
+    """Contrast of the electrons that recombination leaves, and what it does to temperature and pressure of the gas."""
+    relaxation = response.relaxation * step
+    expansion = relaxation * response.by_expansion * wavenumber / (3.0 * now.hubble_rate)  # of (theta_b + h'/2)/(3 a H)
+    compton = now.compton_rate * step * (now.photon_gas_temperature_ratio - 1.0)
+    pressure = now.isothermal_sound_speed_squared * wavenumber * step * response.particles
+    return {
+        (ELECTRONS, ELECTRONS): -relaxation,
+        (ELECTRONS, "delta_baryon"): relaxation * response.by_density,
+        (ELECTRONS, "delta_gas_temperature"): relaxation * response.by_temperature,
+        (ELECTRONS, "theta_baryon"): expansion,
+        (ELECTRONS, "metric_rate"): expansion / 2.0,
+        ("delta_gas_temperature", ELECTRONS): compton * response.compton,
+        ("theta_baryon", ELECTRONS): pressure,
+        ("slip", ELECTRONS): pressure,
+    }
 
 
 class ConstrainedKineticSystem(KineticSystem):

@@ -216,7 +216,7 @@ def _gas_stiffness(universe: Universe, scale_factor: np.ndarray, in_plasma: np.n
     """Stiffness delta_T / delta_b [unitless] and its derivative by ln a."""
 
     def stiffness(log_a: np.ndarray) -> np.ndarray:
-        return np.where(in_plasma, LOCKED_STIFFNESS, -universe.gas_temperature_slope(np.exp(log_a)) / 3.0)
+        return np.where(in_plasma, LOCKED_STIFFNESS, universe.gas_stiffness(np.exp(log_a)))
 
     log_a = np.minimum(np.log(scale_factor), 0.0)
     before, after = log_a - SLOPE_SPAN, np.minimum(log_a + SLOPE_SPAN, 0.0)

@@ -7,7 +7,7 @@ from dataclasses import asdict
 import numpy as np
 
 from twofluid.quantities import QUANTITIES
-from twofluid.scenario import mixture_lines
+from twofluid.scenario import mixture_lines, thermal_sentence
 
 FRAME = (
     "synchronous, at rest with the dark matter (without dark matter: carried by massless dust); "
@@ -141,7 +141,8 @@ def header(history):
     Returns
     -------
     dict
-        Program and version, scenario, what was assumed, closure, frame, landmarks, certificate, warnings.
+        Program and version, scenario, what was assumed, closure, frame, landmarks, certificate, warnings, and
+        where there is one the late history of the gas.
     """
     from twofluid import __version__
 
@@ -152,10 +153,12 @@ def header(history):
         "assumed": list(history.scenario.assumptions()),
         "closure": history.scenario.method.closure,
         "frame": FRAME if history.theta_dark is None else FRAME_OF_DUST,
-        "landmarks": {name: _rounded(name, value) for name, value in landmarks.items()},
+        "landmarks": {name: _rounded(name, value) for name, value in landmarks.items() if value is not None},
         "certificate": NO_CERTIFICATE if history.certificate is None else history.certificate.sentence(),
         "warnings": list(history.warnings),
     }
+    if sentence := thermal_sentence(history.scenario.cosmology):
+        provenance["gas"] = sentence
     if mixture := mixture_lines(history.scenario.primordial):
         independent = [INDEPENDENT] if len(history.parts) > 1 else []
         provenance["mixture"] = [MIXTURE, *independent, *mixture]

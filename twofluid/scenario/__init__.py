@@ -5,7 +5,18 @@ from .keys import ADIABATIC
 from .manual import key_table_markdown, scenario_template
 from .mixture import Mixture, Part, Share, check_mixture, mixture_lines, parts
 from .reader import parse_scenario, read_scenario, scenario_from_mapping
-from .request import Cosmology, DarkMatter, Method, Neutrinos, Primordial, Sampling, Scenario
+from .request import (
+    Cosmology,
+    DarkMatter,
+    Method,
+    Neutrinos,
+    Primordial,
+    Reionization,
+    Sampling,
+    Scenario,
+    ThermalTable,
+)
+from .thermal import thermal_sentence
 
 __all__ = [
     "ADIABATIC",
@@ -16,10 +27,12 @@ __all__ = [
     "Neutrinos",
     "Part",
     "Primordial",
+    "Reionization",
     "Sampling",
     "Scenario",
     "ScenarioError",
     "Share",
+    "ThermalTable",
     "check_mixture",
     "key_table_markdown",
     "mixture_lines",
@@ -28,4 +41,5 @@ __all__ = [
     "read_scenario",
     "scenario_from_mapping",
     "scenario_template",
+    "thermal_sentence",
 ]

@@ -4,13 +4,34 @@ from dataclasses import replace
 from os import fsdecode
 from pathlib import Path
 
+from .attached import with_tables
 from .document import entry_from_plain, entry_from_text
 from .errors import ScenarioError, printable
 from .family import read_document, refuse_base
-from .keys import ADIABATIC, DEFAULT_PRODUCTS, MIXTURE, OPTIONAL_SECTIONS, keys_under, name_of, sections_under
+from .keys import (
+    ADIABATIC,
+    DEFAULT_PRODUCTS,
+    GAS_SECTIONS,
+    MIXTURE,
+    OPTIONAL_SECTIONS,
+    keys_under,
+    name_of,
+    sections_under,
+)
 from .mixture import Mixture, Share, check_mixture
 from .names import checked_names
-from .request import Cosmology, DarkMatter, Method, Neutrinos, Primordial, Sampling, Scenario
+from .request import (
+    Cosmology,
+    DarkMatter,
+    Method,
+    Neutrinos,
+    Primordial,
+    Reionization,
+    Sampling,
+    Scenario,
+    ThermalTable,
+)
+from .thermal import refuse_faults
 from .values import read_value
 
 UNTITLED = "untitled"  # title of a scenario that has neither a title nor a file
@@ -36,7 +57,7 @@ def read_scenario(path):
     """
     name = fsdecode(path)
     return _scenario(
-        read_document(path, name), title=printable(Path(name).stem).strip() or UNTITLED, source=name
+        with_tables(read_document(path, name)), title=printable(Path(name).stem).strip() or UNTITLED, source=name
     )
 
 
@@ -90,13 +111,9 @@ def _scenario(entry, title, source):
     _read_section("", entry, values, assumed)
     if values["title"] is None:
         values["title"] = title
-    inner = {
-        "neutrinos": Neutrinos(**_pick(values, "cosmology.neutrinos")),
-        "dark_matter": DarkMatter(**_pick(values, "cosmology.dark_matter")),
-    }
     scenario = Scenario(
         title=values["title"],
-        cosmology=Cosmology(**_pick(values, "cosmology"), **inner),
+        cosmology=_cosmology(values),
         primordial=Primordial(**_pick(values, "primordial"), mixture=_mixture(values)),
         sampling=Sampling(**_pick(values, "sampling")),
         products={name: _pick(values, f"products.{name}") for name in entry.content["products"].content},
@@ -104,11 +121,25 @@ def _scenario(entry, title, source):
         source=source,
         method=Method(**_pick(values, "method")),
     )
+    refuse_faults(entry, scenario)
     try:
         check_mixture(scenario)
     except ScenarioError as problem:
-        raise _entry_at(entry, problem.key).error(problem.rule, problem.remedy) from None
+        raise entry.at(problem.key).error(problem.rule, problem.remedy) from None
     return scenario
+
+
+def _cosmology(values):
+    inner = {
+        "neutrinos": Neutrinos(**_pick(values, "cosmology.neutrinos")),
+        "dark_matter": DarkMatter(**_pick(values, "cosmology.dark_matter")),
+    }
+    if "thermal.table" in values:
+        options = _pick(values, "thermal")
+        inner["thermal"] = ThermalTable(**options.pop("table"), **options)
+    if "reionization.redshift" in values:
+        inner["reionization"] = Reionization(**_pick(values, "reionization"))
+    return Cosmology(**_pick(values, "cosmology"), **inner)
 
 
 def _mixture(values):
@@ -121,13 +152,6 @@ def _mixture(values):
         if all(key.path in values for key in keys_under(section))
     }
     return Mixture(**_pick(values, MIXTURE), **shares)
-
-
-def _entry_at(entry, path):
-    """Find the entry of a dotted key that the file has."""
-    for name in path.split("."):
-        entry = entry.content[name]
-    return entry
 
 
 def _with_products(entry):
@@ -158,7 +182,11 @@ def _read_section(section, entry, values, assumed):
             assumed.append(key.path)
     for inner in sections_under(section):
         name = name_of(inner)
-        if name in names or inner not in OPTIONAL_SECTIONS:
+        if inner in GAS_SECTIONS and (name not in names or names[name].cleared):
+            assumed.append(inner)
+        elif inner in GAS_SECTIONS and names[name].content == {}:
+            continue  # none, as the file says
+        elif name in names or inner not in OPTIONAL_SECTIONS:
             _read_section(inner, names.get(name) or entry.child(name, {}), values, assumed)
 
 

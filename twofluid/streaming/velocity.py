@@ -1,9 +1,9 @@
 """The streaming velocity: how fast baryons move through the dark matter, and over which distance together.
 
-In the frame of a run, at rest with the dark matter, the velocity of the baryons is the relative one (where the dark
-matter has pressure and moves too, its own is taken off):
-``|v| = |theta_baryon|/k`` per unit curvature, by conformal time, which is the proper peculiar velocity in units of c
-(comoving way by conformal time and proper way by cosmic time differ by the same factor a). Its variance is
+In the frame of a run, at rest with cold dark matter, the velocity of the baryons is the relative one (where dark
+matter has pressure and moves, its own is taken off): ``|v| = |theta_baryon|/k`` per unit curvature, by conformal time,
+which is the proper peculiar velocity in units of c (comoving way by conformal time and proper way by cosmic time
+differ by the same factor a). Its variance is
 
     sigma^2 = int dlnk P_R(k) |theta_baryon/k|^2,    P_R the power of the primordial curvature in ln k.
 
@@ -140,7 +140,7 @@ def find_wind(run: History, redshift) -> Wind:
 
 
 def _relative(run, redshift):
-    """Velocity divergence of the baryons relative to the dark matter, shape (mode, redshift) [1/Mpc]."""
+    """Velocity divergence of baryons relative to dark matter, shape (mode, redshift) [1/Mpc]."""
     theta = run.at("theta_baryon", redshift)
     return theta if run.theta_dark is None else theta - run.at("theta_dark", redshift)
 
