@@ -46,6 +46,7 @@ def test_the_gallery_is_complete():
         "comparison-lag",
         "without-dark-matter/comparison-evolution",
         "warm-dark-matter/comparison-lag",
+        "mixture/comparison-lag",
         "heated/comparison-lag",
         "heated/comparison-evolution",
     ):

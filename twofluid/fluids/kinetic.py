@@ -54,7 +54,7 @@ PHOTON_LAYER = (1.0, 5.0)
 NEUTRINO_LAYER = (2.0, 6.0)
 ELECTRONS = "delta_electron"  # the unknown that only a run with ionization fluctuations has
 FIRST_ABSORBED = 3  # the quadrupole and below stay as published
-CONSTRAINT_PULL = 3.0  # over the expansion rate; from 1 to 10 the errors are the same (measured)
+CONSTRAINT_PULL = 3.0  # over the expansion rate; errors are the same at 10, a few times larger at 1 (measured)
 
 
 @dataclass(frozen=True)
