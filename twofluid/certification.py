@@ -14,6 +14,7 @@ from .certificate import Certificate
 from .evolution import evolve
 from .fluids import ACCURACIES, resolution_for
 from .history import History
+from .scenario import ADIABATIC
 
 BUDGET = 0.25  # of the cost of a run that its certificate may take
 FIXED_COST = 350_000  # what a run costs beside its steps (universe, tables, figures), in steps of one mode (measured)
@@ -73,8 +74,9 @@ def _compare(history: History, modes: np.ndarray, finer: History, promise: float
     dark_size, baryon_size = np.abs(finer.delta_dark), np.abs(finer.delta_baryon)
     dark_size = np.maximum(dark_size, SMALL_CONTRAST * _largest_so_far(dark_size, history.redshift))
     dark_error = np.abs(dark - finer.delta_dark) / dark_size
-    if history.has_dark_matter:
-        ratio_error = np.abs(baryon - dark * finer.delta_baryon / finer.delta_dark) / dark_size
+    if history.has_dark_matter and history.theta_dark is None:
+        ratio_size = dark_size if history.initial_modes == ADIABATIC else np.maximum(dark_size, baryon_size)
+        ratio_error = np.abs(baryon - dark * finer.delta_baryon / finer.delta_dark) / ratio_size
     else:
         ratio_error = np.abs(baryon - finer.delta_baryon) / np.maximum(baryon_size, dark_size)
     warmth_size = np.maximum(np.abs(finer.delta_gas_temperature), baryon_size)

@@ -155,10 +155,10 @@ def _compare(options):
 def _prepare(file):
     """Read a scenario and build its universe, landmarks and all."""
     from twofluid import read_scenario
-    from twofluid.fluids import check_closure
+    from twofluid.fluids import check_closure, check_dark_waves
     from twofluid.products import check_products
     from twofluid.scenario import ScenarioError
-    from twofluid.universe import Universe, UniverseError
+    from twofluid.universe import Universe
 
     try:
         scenario = read_scenario(file)
@@ -167,7 +167,8 @@ def _prepare(file):
     try:
         universe = Universe(scenario.cosmology)
         _ = universe.landmarks  # a universe without them is refused now
-    except UniverseError as error:
+        check_dark_waves(universe, scenario.sampling.wavenumbers)
+    except ValueError as error:  # UniverseError is one
         raise RequestError(f"{file}: {error}") from error
     try:
         check_closure(scenario)

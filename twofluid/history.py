@@ -1,5 +1,6 @@
 """The result of a run: amplitudes on (mode, redshift) axes, interpolation, saving and loading."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field, fields
 from pathlib import Path
 
@@ -12,8 +13,8 @@ from .universe import Universe
 
 #: Quantities a history carries, in the order of their columns.
 EVOLVED = ("delta_dark", "delta_baryon", "theta_baryon", "delta_gas_temperature")
-#: And what it carries besides where neutrinos have mass.
-EVOLVED_WITH_MASS = ("delta_neutrino",)
+#: Quantities it carries in addition: where the dark matter has pressure, and where neutrinos have mass.
+ADDED = ("theta_dark", "delta_neutrino")
 #: Contrasts put together from others, weighted by rest mass: what is in each.
 TOGETHER = {"delta_cold": ("dark", "baryon"), "delta_matter": ("dark", "baryon", "neutrino")}
 
@@ -32,6 +33,8 @@ class Trace:
         As in `History`.
     delta_dark_slope, delta_baryon_slope, theta_baryon_slope, delta_gas_temperature_slope : array, shape (mode, step)
         Their derivatives by ln a, in the unit of the quantity.
+    theta_dark, theta_dark_slope : array, shape (mode, step), or None
+        The same, where the dark matter has pressure.
     delta_neutrino, delta_neutrino_slope : array, shape (mode, step), or None
         The same; None where no neutrino has mass.
     """
@@ -45,6 +48,8 @@ class Trace:
     delta_baryon_slope: np.ndarray
     theta_baryon_slope: np.ndarray
     delta_gas_temperature_slope: np.ndarray
+    theta_dark: np.ndarray | None = None
+    theta_dark_slope: np.ndarray | None = None
     delta_neutrino: np.ndarray | None = None
     delta_neutrino_slope: np.ndarray | None = None
 
@@ -53,8 +58,14 @@ class Trace:
 class History:
     """What became of each mode.
 
-    Synchronous frame at rest with the dark matter; unit primordial comoving curvature; signs such
-    that densities grow positive.
+    Synchronous frame at rest with the dark matter or, where that has pressure, with cold dust of no mass that
+    started with it; unit primordial comoving curvature, with a mixture of initial modes in units of the square
+    root of the primordial power; signs such that densities grow positive.
+
+    Where a mixture has independent parts, amplitudes say what two random fields have in common: the dark matter (with
+    none, the baryons) has its rms amplitude, and any other quantity X the amplitude <X delta_dark>/rms(delta_dark) of
+    what goes along with it. The ratio of the contrasts is then the cross-power over the power of the dark
+    matter. What an amplitude leaves out is in `parts`.
 
     Attributes
     ----------
@@ -70,7 +81,7 @@ class History:
         Density contrasts [unitless]. Without dark matter, `delta_dark` is that of the massless dust
         that carries the frame.
     theta_baryon : array, shape (mode, redshift)
-        Velocity divergence of the baryons, by conformal time [1/Mpc].
+        Velocity divergence of the baryons relative to the frame, by conformal time [1/Mpc].
     delta_gas_temperature : array, shape (mode, redshift)
         Relative contrast of the gas temperature [unitless].
     trace : Trace
@@ -78,15 +89,21 @@ class History:
     constraint : array, shape (mode,)
         Drift of the Einstein energy constraint, summed over the run, relative to its largest term [unitless];
         NaN where the closure has no such constraint.
-    delta_neutrino : array, shape (mode, redshift), or None
-        Contrast of the rest mass of all neutrinos that have mass: of their number, weighted by mass. Of the energy
-        density it is the contrast once they are slow, and 3/4 of that while they are fast [unitless].
     counts : dict of str to int
         What the run cost: "steps" over all modes, "lanes" with padding, "factorizations", "rate_evaluations".
     warnings : tuple of str
         What the user has to know about this run.
     certificate : Certificate or None
         Estimated numerical error, once `twofluid.certify` has worked it out.
+    theta_dark : array, shape (mode, redshift), or None
+        Velocity divergence of the dark matter relative to the frame, where it has pressure [1/Mpc].
+    delta_neutrino : array, shape (mode, redshift), or None
+        Contrast of the rest mass of all neutrinos that have mass: of their number, weighted by mass. Of the energy
+        density it is the contrast once they are slow, and 3/4 of that while they are fast [unitless].
+    initial_modes : str
+        The initial modes that follow one random field, joined by plus signs; of independent parts, by commas.
+    independent_parts : tuple of History
+        What became of each independent part of a mixture; empty if there is but one.
     """
 
     scenario: Scenario
@@ -102,7 +119,20 @@ class History:
     counts: dict[str, int]
     warnings: tuple[str, ...] = field(default=())
     certificate: Certificate | None = None
+    theta_dark: np.ndarray | None = None
     delta_neutrino: np.ndarray | None = None
+    initial_modes: str = "adiabatic"
+    independent_parts: tuple["History", ...] = ()
+
+    @property
+    def evolved(self) -> tuple[str, ...]:
+        """Names of the quantities this history carries."""
+        return (*EVOLVED, *(name for name in ADDED if getattr(self, name) is not None))
+
+    @property
+    def parts(self) -> tuple["History", ...]:
+        """Histories of definite amplitudes whose powers add up to that of this one; itself, if it is definite."""
+        return self.independent_parts or (self,)
 
     @property
     def has_dark_matter(self) -> bool:
@@ -113,11 +143,6 @@ class History:
     def has_massive_neutrinos(self) -> bool:
         """Whether a neutrino has mass."""
         return self.delta_neutrino is not None
-
-    @property
-    def evolved(self) -> tuple[str, ...]:
-        """Names of the quantities this history carries."""
-        return EVOLVED + (EVOLVED_WITH_MASS if self.has_massive_neutrinos else ())
 
     @property
     def delta_cold(self) -> np.ndarray:
@@ -218,9 +243,9 @@ class History:
         """
         import yaml
 
-        arrays = {name: getattr(self, name) for name in (*self.evolved, "wavenumber", "redshift", "constraint")}
-        arrays |= {f"trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
-        arrays = {name: array for name, array in arrays.items() if array is not None}
+        arrays = {name: getattr(self, name) for name in ("wavenumber", "redshift")}
+        for number, part in enumerate((self, *self.independent_parts)):
+            arrays |= part._own_arrays(_prefix(number))
         if self.certificate is not None:
             arrays |= {f"certificate_{part.name}": getattr(self.certificate, part.name) for part in fields(Certificate)}
         words = {
@@ -229,9 +254,16 @@ class History:
             "assumed": list(self.scenario.assumed),
             "counts": self.counts,
             "warnings": list(self.warnings),
+            "initial_modes": [part.initial_modes for part in (self, *self.independent_parts)],
         }
         with replace_atomically(path) as stream:
             np.savez_compressed(stream, words=np.array(yaml.safe_dump(words)), **arrays)
+
+    def _own_arrays(self, prefix: str) -> dict[str, np.ndarray]:
+        """Return what a history does not share with its parts, by the names in an archive."""
+        arrays = {f"{prefix}{name}": getattr(self, name) for name in (*self.evolved, "constraint")}
+        arrays |= {f"{prefix}trace_{part.name}": getattr(self.trace, part.name) for part in fields(Trace)}
+        return {name: array for name, array in arrays.items() if array is not None}
 
 
 def load_history(path) -> History:
@@ -263,19 +295,83 @@ def load_history(path) -> History:
     if words["format"] != _FORMAT:
         raise ValueError(f"{path} has layout {words['format']}, this version reads layout {_FORMAT}: run it again")
     scenario = replace(scenario_from_mapping(words["scenario"]), assumed=tuple(words["assumed"]))
-    trace = Trace(**{part.name: arrays.pop(f"trace_{part.name}", None) for part in fields(Trace)})
     certificate = None
     if "certificate_promise" in arrays:
         certificate = Certificate(**{part.name: arrays.pop(f"certificate_{part.name}") for part in fields(Certificate)})
-    return History(
-        scenario=scenario,
-        universe=Universe(scenario.cosmology),
-        trace=trace,
-        counts=words["counts"],
-        warnings=tuple(words["warnings"]),
-        certificate=certificate,
-        **arrays,
+    common = {
+        "scenario": scenario,
+        "universe": Universe(scenario.cosmology),
+        "wavenumber": arrays["wavenumber"],
+        "redshift": arrays["redshift"],
+        "counts": words["counts"],
+        "warnings": tuple(words["warnings"]),
+    }
+    whole, *parts = (
+        History(**common, **_own(arrays, _prefix(number)), initial_modes=modes)
+        for number, modes in enumerate(words.get("initial_modes", ["adiabatic"]))
     )
+    return replace(whole, certificate=certificate, independent_parts=tuple(parts))
+
+
+def history_of_parts(parts: Sequence[History]) -> History:
+    """Sum up the histories of independent random fields; see `History`.
+
+    Parameters
+    ----------
+    parts : sequence of History
+        Of definite amplitudes, at the same wavenumbers and redshifts and with the same steps.
+
+    Returns
+    -------
+    History
+        The only part itself, if there is but one.
+    """
+    from dataclasses import replace
+
+    if len(parts) == 1:
+        return parts[0]
+    lead = "delta_dark" if parts[0].has_dark_matter else "delta_baryon"
+    turning, turn = _directions(_gather(parts, lead), _gather(parts, lead, "_slope"))
+    fixed, _ = _directions(np.stack([getattr(part, lead) for part in parts]))
+    courses, amplitudes = {}, {}
+    for name in parts[0].evolved:
+        course, slope = _gather(parts, name), _gather(parts, name, "_slope")
+        courses[name] = (course * turning).sum(axis=0)
+        courses[name + "_slope"] = (slope * turning + course * turn).sum(axis=0)
+        amplitudes[name] = (np.stack([getattr(part, name) for part in parts]) * fixed).sum(axis=0)
+    return replace(
+        parts[0],
+        **amplitudes,
+        trace=replace(parts[0].trace, **courses),
+        constraint=np.max([part.constraint for part in parts], axis=0),
+        initial_modes=", ".join(part.initial_modes for part in parts),
+        independent_parts=tuple(parts),
+    )
+
+
+def _gather(parts: Sequence[History], name: str, suffix: str = "") -> np.ndarray:
+    """Courses of a quantity in every part, shape (part, mode, step)."""
+    return np.stack([getattr(part.trace, name + suffix) for part in parts])
+
+
+def _directions(lead: np.ndarray, slope: np.ndarray | None = None) -> tuple[np.ndarray, np.ndarray | None]:
+    """Return the unit vector along the leading quantity in the space of the parts, first axis, and its derivative."""
+    rms = np.sqrt((lead**2).sum(axis=0))
+    safe = np.where(rms > 0.0, rms, 1.0)
+    unit = lead / safe
+    return unit, None if slope is None else (slope - unit * (unit * slope).sum(axis=0)) / safe
+
+
+def _prefix(number: int) -> str:
+    """Return what the names of the arrays of a part begin with in an archive; number 0 is the whole."""
+    return f"part{number}_" if number else ""
+
+
+def _own(arrays: dict[str, np.ndarray], prefix: str) -> dict:
+    """Take from an archive what a history does not share with its parts; see `History._own_arrays`."""
+    trace = Trace(**{part.name: arrays.get(f"{prefix}trace_{part.name}") for part in fields(Trace)})
+    names = (name for name in (*EVOLVED, *ADDED, "constraint") if prefix + name in arrays)
+    return {"trace": trace, **{name: arrays[prefix + name] for name in names}}
 
 
 def _hermite(

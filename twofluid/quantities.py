@@ -50,13 +50,20 @@ _AMPLITUDES = (
              "divergence of the baryon velocity (conformal time) per unit comoving curvature"),
     Quantity("delta_gas_temperature", r"\delta_T", "",
              "relative contrast of the gas temperature per unit comoving curvature"),
-    Quantity("delta_matter", r"\delta_\mathrm{m}", "",
-             "contrast of all rest mass (dark matter, baryons, neutrinos with mass) per unit comoving curvature"),
+    Quantity("theta_dark", r"\theta_\mathrm{c}", "1/Mpc",
+             "divergence of the velocity of dark matter with pressure, relative to the frame as that of the baryons, "
+             "per unit comoving curvature"),
     Quantity("delta_neutrino", r"\delta_\nu", "",
              "contrast of the rest mass of all neutrinos that have mass (3/4 of that of their energy while they are "
              "as fast as light) per unit comoving curvature"),
+    Quantity("delta_matter", r"\delta_\mathrm{m}", "",
+             "contrast of all rest mass (dark matter, baryons, neutrinos with mass) per unit comoving curvature"),
     Quantity("delta_cold", r"\delta_\mathrm{cb}", "",
              "contrast of dark matter and baryons together per unit comoving curvature"),
+)
+
+_MIXTURE = (
+    Quantity("part", r"\mathrm{part}", "", "initial modes that follow one random field, joined by plus signs"),
 )
 
 _LAG = (
@@ -177,6 +184,9 @@ _SCALES = (
              "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber_two_fluids; " + _NO_FILTERING),
     Quantity("filtering_mass_measured", r"M_\mathrm{Fm}", "solMass",
              "as jeans_mass, of the wavelength 2 pi over filtering_wavenumber_measured; " + _NO_FILTERING),
+    Quantity("dark_sound_speed", r"c_\mathrm{c}", "km/s", "effective sound speed of dark matter with pressure"),
+    Quantity("dark_jeans_wavenumber", r"k_\mathrm{Jc}", "1/Mpc",
+             "comoving Jeans wavenumber (a/c) sqrt(4 pi G rho) of dark matter with pressure, rho of it and baryons"),
     Quantity("verdict", r"\mathrm{verdict}", "",
              "what the mode is doing: larger than the horizon, oscillates with the plasma, damped, held up by "
              "pressure, falls in, grows; empty: the steps of the run are too long to follow the wave"),
@@ -228,9 +238,13 @@ _LANDMARKS = (
     Quantity("thermal_decoupling_redshift", r"z_T", "", "Compton heating of the gas falls below expansion"),
     Quantity("age_today", r"t_0", "Gyr", "age of the universe today"),
     Quantity("conformal_age", r"\tau_0", "Mpc", "conformal time today"),
+    Quantity("reionization_optical_depth", r"\tau_\mathrm{re}", "",
+             "photon optical depth of the electrons that a table or reionization adds; other landmarks are without"),
 )
 
-_GROUPS = (_AXES, _AMPLITUDES, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _STREAMING, _COMPARISON, _LANDMARKS)
+_GROUPS = (
+    _AXES, _AMPLITUDES, _MIXTURE, _LAG, _GROWTH, _SPHERES, _SHORTFALL, _SCALES, _STREAMING, _COMPARISON, _LANDMARKS,
+)  # fmt: skip
 
 QUANTITIES = {quantity.name: quantity for group in _GROUPS for quantity in group}
 

@@ -29,6 +29,7 @@ from twofluid.products import (
     joined_table,
     lag_table,
     map_redshifts,
+    parts_table,
     scales_table,
     shortfall_table,
     spheres_table,
@@ -47,10 +48,11 @@ from twofluid.report import (
     spheres_lines,
     streaming_lines,
 )
+from twofluid.scenario import parts
 from twofluid.streaming import stream
 
 EVOLUTION = "evolution"  # the amplitudes, written whatever products are asked for
-
+PARTS = "parts"  # those of every independent part of a mixture, where there are several
 
 COMPARISON = "comparison-{}"  # what the file names of a comparison look like
 
@@ -171,7 +173,13 @@ def output_names(scenario):
     ValueError
         If a product of that name does not exist.
     """
-    names = [f"{EVOLUTION}.ecsv"]
+    independent = parts(scenario.primordial, scenario.sampling.wavenumbers)
+    names = [f"{EVOLUTION}.ecsv", *([f"{PARTS}.ecsv"] if len(independent) > 1 else [])]
+    return names + _product_names(scenario)
+
+
+def _product_names(scenario):
+    names = []
     for name in scenario.products:
         if name not in PRODUCTS:
             raise ValueError(f"products: there is no product {name!r}; there is {', '.join(PRODUCTS)}")
@@ -197,6 +205,8 @@ def make_outputs(history):
     """
     scenario = history.scenario
     outputs = {f"{EVOLUTION}.ecsv": table_bytes(evolution_table(history))}
+    if len(history.parts) > 1:
+        outputs[f"{PARTS}.ecsv"] = table_bytes(parts_table(history))
     summary = []
     for name, options in scenario.products.items():
         product = PRODUCTS[name]
@@ -230,7 +240,8 @@ def comparison_names(alignment):
         If a product of that name does not exist.
     """
     figures = (EVOLUTION, "differences", *(name for name in alignment.scenarios[0].products))
-    names = dict.fromkeys([*output_names(alignment.scenarios[0]), "courses.ecsv", "differences.ecsv"])
+    tables = (f"{EVOLUTION}.ecsv", *_product_names(alignment.scenarios[0]), "courses.ecsv", "differences.ecsv")
+    names = dict.fromkeys(tables)
     names |= dict.fromkeys(f"{name}.{form}" for name in figures for form in FIGURE_FORMATS)
     return [COMPARISON.format(name) for name in names]
 

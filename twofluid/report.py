@@ -7,6 +7,7 @@ from dataclasses import asdict
 import numpy as np
 
 from twofluid.quantities import QUANTITIES
+from twofluid.scenario import mixture_lines, thermal_sentence
 
 SCALES_SHOWN = 5  # wavenumbers in a summary
 COLUMNS_SHOWN = 6  # redshifts or fractions in a summary
@@ -59,7 +60,8 @@ def landmark_lines(landmarks):
         One line a landmark.
     """
     rows = []
-    for name, value in asdict(landmarks).items():
+    present = {name: value for name, value in asdict(landmarks).items() if value is not None}
+    for name, value in present.items():
         quantity = QUANTITIES[name]
         rows.append((name, quantity.plain_symbol, f"{value:.6g}", quantity.unit, quantity.meaning))
     return aligned(rows)
@@ -84,6 +86,7 @@ def check_lines(scenario, universe):
     return [
         scenario.title,
         f"  asks for  {_request(scenario)}; {', '.join(scenario.products) or 'no products'}",
+        *_mixture_lines(scenario.primordial),
         *(f"  {'assumes' if number == 0 else '':7}   {text}" for number, text in enumerate(assumed)),
         "",
         *(f"  {line}" for line in landmark_lines(universe.landmarks)),
@@ -109,9 +112,18 @@ def run_lines(history):
         for name in LANDMARKS_IN_SUMMARY
     ]
     lines = [history.scenario.title, f"  {_request(history.scenario)}", f"  {', '.join(marks)}"]
+    if sentence := thermal_sentence(history.scenario.cosmology):
+        lines.append(f"  {sentence}")
+    lines += _mixture_lines(history.scenario.primordial)
     if history.certificate is not None:
         lines += [f"  {part}" for part in history.certificate.sentence().split("; ", maxsplit=2)]
     return lines
+
+
+def _mixture_lines(primordial):
+    """Return a line for each initial mode of a mixture."""
+    lines = mixture_lines(primordial)
+    return [f"  {'starts' if number == 0 else '':7}   {text}" for number, text in enumerate(lines)]
 
 
 def lag_lines(tables):
@@ -397,7 +409,16 @@ def _input_rows(histories):
             given = [getattr(h.scenario.cosmology, key.rpartition(".")[2]) for h in histories]
             said[key] = [f"{share:.4g}{' (fills)' if value is None else ''}"
                          for share, value in zip(shares, given, strict=True)]  # fmt: skip
-    return [(f"    {key}", *("-" if value is None else str(value) for value in values)) for key, values in said.items()]
+    return [(f"    {key}", *map(_short, values)) for key, values in said.items()]
+
+
+def _short(value):
+    """Return an input for a terminal: a dash if there is none, a long list by its ends."""
+    if value is None:
+        return "-"
+    if isinstance(value, list) and len(value) > COLUMNS_SHOWN:
+        return f"{len(value)} values, {value[0]} to {value[-1]}"
+    return str(value)
 
 
 def _compared_lines(table, name, heading):

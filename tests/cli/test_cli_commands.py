@@ -174,6 +174,16 @@ def test_a_universe_that_cannot_be_is_refused(tmp_path, out, capsys, nothing_sol
     check_refused(capsys, out, run("run", path, "--out", out), "odd.yaml")
 
 
+@pytest.mark.parametrize("command", ["run", "check"])
+def test_too_many_waves_of_the_dark_matter_are_refused(tmp_path, out, capsys, nothing_solved, command):
+    path = tmp_path / "warm.yaml"
+    warm = "  dark_matter: {sound_speed: 100 km/s, scaling: 0.5}\n"
+    path.write_text(TINY.replace("sampling:", f"{warm}sampling:").replace("20 1/Mpc", "2000 1/Mpc"))
+    arguments = (command, path) if command == "check" else (command, path, "--out", out)
+    told = ("warm.yaml", "at k = 2000 1/Mpc", "sound waves of the dark matter", "cosmology.dark_matter.sound_speed")
+    check_refused(capsys, out, run(*arguments), *told)
+
+
 def test_missing_file_is_refused(tmp_path, out, capsys):
     check_refused(capsys, out, run("check", tmp_path / "none.yaml"), "none.yaml")
 
@@ -446,6 +456,24 @@ def test_an_unknown_closure_is_refused(scenario_file, out, capsys, nothing_solve
     scenario_file.write_text(TINY + "method: {closure: sound speed}\n")
     told = "tiny.yaml:11: method.closure = sound speed: must be kinetic or sound-speed; did you mean sound-speed?"
     check_refused(capsys, out, run("run", scenario_file, "--out", out), told)
+
+
+def test_a_bad_thermal_table_is_refused_with_its_line(tmp_path, capsys, nothing_solved):
+    heading = "# %ECSV 1.0\n# ---\n# datatype:\n# - {name: redshift, datatype: float64}\n"
+    heading += "# - {name: gas_temperature, unit: K, datatype: float64}\n"
+    heading += "# - {name: electron_fraction, datatype: float64}\n"
+    rows = "redshift gas_temperature electron_fraction\n0 1e4 1\n0.5 1e4 1\n1 -1e4 1\n1.5 1e4 1\n2 1e4 1\n"
+    (tmp_path / "heating.ecsv").write_text(heading + rows)
+    scenario = tmp_path / "heated.yaml"
+    scenario.write_text(
+        "cosmology: {hubble_constant: 70 km/(s Mpc), baryon_density: 0.02, dark_matter_density: 0.1}\n"
+        "sampling: {wavenumbers: 0.1 1/Mpc, redshifts: [20]}\nthermal: {table: heating.ecsv, below_redshift: 1.5}\n"
+    )
+    assert run("run", scenario, "--out", tmp_path / "out") == 2
+    told = capsys.readouterr().err
+    assert told.count("\n") == 1
+    assert f"{tmp_path / 'heating.ecsv'}:10: thermal.table.gas_temperature = -10000.0 K: is out of range" in told
+    assert not (tmp_path / "out").exists()
 
 
 def test_certificate_is_printed_and_stands_in_the_header(lean_file, out, capsys):

@@ -7,6 +7,7 @@ from scipy.integrate import solve_ivp
 
 from twofluid.fluids import ChainLengths, KineticSystem, Resolution, clock, resolution_for, start_time
 from twofluid.fluids.stepping import oscillation_matters
+from twofluid.scenario import DarkMatter
 from twofluid.universe import Universe
 
 PHOTON, NEUTRINO = 6, 7  # highest moments of the comparison
@@ -16,7 +17,8 @@ def published_rates(universe, k):
     """Write the equations as published: theta_baryon and theta_photon, and h' from the energy constraint.
 
     Ma & Bertschinger 1995, eqs 21 a, 21 b, 42, 49, 63, 64, 66 (numbers from memory), with the same absorbing layer.
-    Rows: eta, delta_c, delta_b, theta_b, delta_T, photon F_0..., polarization G_0..., neutrinos N_0...
+    Rows: eta, delta_c, delta_b, theta_b, delta_T, photon F_0..., polarization G_0..., neutrinos N_0..., theta_c of
+    dark matter with pressure.
     """
     from twofluid.fluids.kinetic import NEUTRINO_LAYER, PHOTON_LAYER
 
@@ -35,11 +37,13 @@ def published_rates(universe, k):
         sound, gamma = now.isothermal_sound_speed_squared[0], now.compton_rate[0]
         warmth = now.photon_gas_temperature_ratio[0]
         eta, dark, baryon, theta, warm = y[:5]
-        F, G, N = np.split(y[5:], [PHOTON + 1, 2 * PHOTON + 2])
+        F, G, N = np.split(y[5:-1], [PHOTON + 1, 2 * PHOTON + 2])
+        theta_dark, speed = y[-1], universe.dark_sound_speed(now.scale_factor[0])
         theta_photon, theta_neutrino = 0.75 * k * F[1], 0.75 * k * N[1]
         energy = g["dark"] * dark + g["baryon"] * baryon + g["photon"] * F[0] + g["neutrino"] * N[0]
         metric = (2 * k**2 * eta + energy) / H
-        momentum = g["baryon"] * theta + 4 / 3 * (g["photon"] * theta_photon + g["neutrino"] * theta_neutrino)
+        momentum = g["baryon"] * theta + g["dark"] * theta_dark
+        momentum += 4 / 3 * (g["photon"] * theta_photon + g["neutrino"] * theta_neutrino)
         eta_rate = momentum / (2 * k**2)
         baryon_rate = -theta - metric / 2
         theta_rate = -H * theta + k**2 * sound * (baryon + warm) + r * kappa * (theta_photon - theta)
@@ -54,20 +58,21 @@ def published_rates(universe, k):
         dG[2] += kappa * source / 10
         dN[0] -= 2 / 3 * metric
         dN[2] += 4 / 15 * metric + 8 / 5 * eta_rate
-        return np.concatenate([[eta_rate, -metric / 2, baryon_rate, theta_rate, warm_rate], dF, dG, dN])
+        dark_rate, push = -theta_dark - metric / 2, -H * theta_dark + (k * speed) ** 2 * dark
+        return np.concatenate([[eta_rate, dark_rate, baryon_rate, theta_rate, warm_rate], dF, dG, dN, [push]])
 
     return rates
 
 
-@pytest.mark.parametrize("k", [0.03, 0.4])
-def test_same_solution_as_a_general_solver_on_the_published_equations(k):
+@pytest.mark.parametrize(("k", "law"), [(0.03, DarkMatter()), (0.4, DarkMatter()), (0.4, DarkMatter(50.0, 0.0, 0.5))])
+def test_same_solution_as_a_general_solver_on_the_published_equations(k, law):
     # General library: scipy.integrate.solve_ivp (Radau, tight tolerance) on equations written independently.
     resolution = Resolution(FINE.stepping, ChainLengths(PHOTON, PHOTON, NEUTRINO))
     end = 1 / 401.0
-    run = course(cosmology(), k, end=end, resolution=resolution)
+    run = course(cosmology(dark_matter=law), k, end=end, resolution=resolution)
     universe = run.universe
     neutrino = 5 + 2 * (PHOTON + 1)
-    y = np.zeros(neutrino + NEUTRINO + 1)
+    y = np.zeros(neutrino + NEUTRINO + 2)
     # h' from k^2 eta loses digits as (k tau)^2 far outside the horizon: the general solver takes over at k tau = 0.3.
     first = int(np.searchsorted(run.x, 0.3))
     for place, name in ((0, "curvature"), (1, "delta_dark"), (2, "delta_baryon"), (4, "delta_gas_temperature")):
@@ -77,7 +82,8 @@ def test_same_solution_as_a_general_solver_on_the_published_equations(k):
     y[7 : 5 + PHOTON + 1] = [getattr(run, f"photon_{m}")[first] for m in range(2, PHOTON + 1)]
     y[5 + PHOTON + 1 : neutrino] = [getattr(run, f"polarization_{m}")[first] for m in range(PHOTON + 1)]
     y[neutrino : neutrino + 2] = run.delta_neutrino[first], 4 / 3 * run.theta_neutrino[first]
-    y[neutrino + 2 :] = [getattr(run, f"neutrino_{m}")[first] for m in range(2, NEUTRINO + 1)]
+    y[neutrino + 2 : -1] = [getattr(run, f"neutrino_{m}")[first] for m in range(2, NEUTRINO + 1)]
+    y[-1] = k * run.theta_dark[first] if universe.has_dark_pressure else 0.0
     rates = published_rates(universe, k)
     general = solve_ivp(rates, run.tau[[first, -1]], y, method="Radau", rtol=1e-7, atol=1e-9)
     assert general.success
@@ -86,6 +92,9 @@ def test_same_solution_as_a_general_solver_on_the_published_equations(k):
     assert run.delta_dark[-1] == pytest.approx(expected[1], rel=5e-5)
     assert run.delta_baryon[-1] == pytest.approx(expected[2], rel=2e-4)
     assert run.delta_gas_temperature[-1] == pytest.approx(expected[4], abs=2e-4 * abs(expected[2]))
+    if universe.has_dark_pressure:
+        assert k * run.theta_dark[-1] == pytest.approx(expected[-1], rel=2e-4)
+        assert abs(expected[-1]) > 0.1 * run.now.hubble_rate[-1] * abs(expected[1])  # it does something
 
 
 def test_constraint_notices_a_wrong_coefficient():

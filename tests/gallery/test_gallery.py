@@ -7,7 +7,7 @@ import numpy as np
 import pytest
 from astropy.table import Table
 
-from twofluid import compare, read_scenario
+from twofluid import compare, evolve, read_scenario
 from twofluid.scenario import Sampling, scenario_from_mapping
 
 ROOT = Path(__file__).parents[2]
@@ -41,7 +41,15 @@ def course(table, label, name):
 
 
 def test_the_gallery_is_complete():
-    for name in ("comparison-evolution", "comparison-lag", "without-dark-matter/comparison-evolution"):
+    for name in (
+        "comparison-evolution",
+        "comparison-lag",
+        "without-dark-matter/comparison-evolution",
+        "warm-dark-matter/comparison-lag",
+        "mixture/comparison-lag",
+        "heated/comparison-lag",
+        "heated/comparison-evolution",
+    ):
         for form in ("pdf", "png"):
             assert (GALLERY / f"{name}.{form}").stat().st_size > 10_000  # bytes; an empty page has fewer
 
@@ -73,3 +81,13 @@ def test_the_scenario_in_the_gallery_is_the_shipped_one(shipped):
     for label, own in shipped.meta["scenarios"].items():
         path = ROOT / "scenarios" / f"saltmarsh-{label.replace(' ', '-')}.yaml"
         assert scenario_from_mapping(own["scenario"]) == read_scenario(path)
+
+
+def test_gas_is_ahead_of_dark_matter_with_pressure_as_the_figure_shows():
+    scenario = read_scenario(ROOT / "scenarios" / "saltmarsh-warm-dark-matter.yaml")
+    history = evolve(scenario, wavenumbers=[0.1, 10.0], redshifts=[100.0, 30.0, 0.0])
+    ratio = history.delta_baryon / history.delta_dark
+    # Two digits, as they are read off the figure.
+    assert ratio[1] == pytest.approx([1.02, 1.40, 1.62], abs=0.01)
+    assert ratio[0].max() < 1
+    assert history.warnings == ()

@@ -1,6 +1,8 @@
 """Histories with known closed forms, shaped like a real one."""
 
-from dataclasses import make_dataclass, replace
+import sys
+from dataclasses import make_dataclass
+from pathlib import Path
 from types import SimpleNamespace
 
 import numpy as np
@@ -8,8 +10,12 @@ import pytest
 from scipy.interpolate import CubicHermiteSpline
 
 from twofluid import Universe, evolve
-from twofluid.history import Trace
+from twofluid.history import EVOLVED, Trace
 from twofluid.scenario import Cosmology, Primordial, Sampling, Scenario
+
+sys.path.insert(0, str(Path(__file__).parent))  # the helpers beside the tests
+
+from standard_universe import standard_scenario
 
 RUN_REDSHIFTS = (10000.0, 3000.0, 1500.0, 1000.0, 500.0, 300.0, 200.0, 100.0, 50.0, 20.0, 10.0, 5.0, 0.0)
 
@@ -33,11 +39,13 @@ def make_history():
             return np.array([curve[part](where) for curve in curves], dtype=float)
 
         at_redshift = [sampled(dark, 0, log_a), sampled(baryon, 0, log_a)]
-        return SimpleNamespace(
+        history = SimpleNamespace(
             scenario=SimpleNamespace(
                 to_mapping=lambda: {"title": "Saltmarsh test"},
                 assumptions=lambda: ("primordial.tilt = 0.965",),
                 method=SimpleNamespace(closure="kinetic"),
+                cosmology=SimpleNamespace(thermal=None, reionization=None),
+                primordial=Primordial(),
             ),
             universe=SimpleNamespace(
                 age=lambda a: AGE_TODAY * a**1.5,  # Einstein-de Sitter
@@ -50,6 +58,8 @@ def make_history():
             theta_baryon=-at_redshift[1],
             delta_gas_temperature=at_redshift[1] / 2,
             delta_matter=(at_redshift[0] + at_redshift[1]) / 2,
+            theta_dark=None,
+            evolved=EVOLVED,
             has_dark_matter=has_dark_matter,
             has_massive_neutrinos=False,
             warnings=("a sentence of warning",),
@@ -62,6 +72,8 @@ def make_history():
                 delta_baryon_slope=sampled(baryon, 1, knots),
             ),
         )
+        history.parts = (history,)
+        return history
 
     return make
 
@@ -83,12 +95,6 @@ def wave(middle, amplitude, rate, phase):
 def curves():
     """Return the curve makers."""
     return SimpleNamespace(power=power, wave=wave, age_today=AGE_TODAY)
-
-
-def standard_scenario(**changes):
-    """Saltmarsh's universe, parameters by name changed."""
-    cosmology = replace(Cosmology(67.5, baryon_density=0.0223, dark_matter_density=0.1195), **changes)
-    return Scenario("Saltmarsh test", cosmology, Primordial(), Sampling([0.1], [0.0]))
 
 
 @pytest.fixture(scope="session")
@@ -160,7 +166,9 @@ def make_up_run():
             delta_gas_temperature=nothing, delta_gas_temperature_slope=nothing,
         )  # fmt: skip
         log_a = -np.log1p(np.asarray(redshift, dtype=float))
-        return SimpleNamespace(
+        history = SimpleNamespace(
+            theta_dark=None,
+            evolved=EVOLVED,
             scenario=scenario,
             universe=Universe(scenario.cosmology),
             wavenumber=np.arange(1.0, len(dark) + 1) if wavenumber is None else np.asarray(wavenumber),
@@ -176,6 +184,8 @@ def make_up_run():
             at=lambda name, z: between(trace, name, z)[0],
             slope_at=lambda name, z: between(trace, name, z)[1],
         )
+        history.parts = (history,)
+        return history
 
     def between(trace, name, redshift):
         """Value and slope by an interpolation that is not ours."""

@@ -101,6 +101,7 @@ def test_evolution_holds_the_amplitudes(history):
     table = evolution_table(history)
     assert table.colnames == [
         "wavenumber", "redshift", "delta_dark", "delta_baryon", "theta_baryon", "delta_gas_temperature",
+        "delta_matter",
     ]  # fmt: skip
     assert str(table["theta_baryon"].unit) == "1 / Mpc"
     row = table[(table["wavenumber"] == 2) & (table["redshift"] == 9)]

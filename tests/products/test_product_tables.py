@@ -62,5 +62,5 @@ def test_rows_of_the_shortfall_on_disk(small):
     assert "# - {target_redshift: 7.5}" in header
     assert "# - {name: unity_age, unit: Gyr, datatype: float64, description: age of the universe when the rms " \
         "first reaches 1}" in header  # fmt: skip
-    assert "# - {name: fluid, datatype: string, description: 'dark matter, baryons, or matter, both weighted by " \
-        "density'}" in header  # fmt: skip
+    assert "# - {name: fluid, datatype: string, description: 'dark matter, baryons, or matter: all that has mass, " \
+        "weighted by it'}" in header  # fmt: skip

@@ -121,7 +121,7 @@ def gaussian_history(scale, wavenumbers):
         isothermal_sound_speed=lambda a: speed / np.sqrt(a),
         gravity=lambda species, a: 1.0 / a,
     )
-    return SimpleNamespace(universe=universe, wavenumber=k, at=at, has_dark_matter=True)
+    return SimpleNamespace(universe=universe, wavenumber=k, at=at, has_dark_matter=True, initial_modes="adiabatic")
 
 
 @pytest.mark.parametrize("wavenumbers", [[100, 1, 10, 1000], np.geomspace(0.01, 1e4, 300)])

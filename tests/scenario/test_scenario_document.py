@@ -1,7 +1,7 @@
 """Files and texts that are no scenario at all, or a hostile one."""
 
 import pytest
-from scenario_texts import VALUES, full_text, refusal
+from scenario_texts import VALUES, full_text, line_of, refusal
 
 from twofluid.scenario import ScenarioError, parse_scenario, read_scenario
 from twofluid.scenario.document import LARGEST_SIZE
@@ -146,7 +146,7 @@ def test_other_encodings_are_refused(tmp_path, encoding):
     path.write_bytes(full_text({"primordial.tilt": "0.96 # ± 0.01"}).encode(encoding))
     error = file_refusal(path)
     assert (error.rule, error.remedy) == ("is not UTF-8 text", "save it as UTF-8")
-    assert error.line == (15 if encoding == "latin-1" else 1)
+    assert error.line == (line_of("primordial.tilt") if encoding == "latin-1" else 1)
 
 
 @pytest.mark.parametrize("start", [b"", b"\xef\xbb\xbf"])
@@ -156,7 +156,7 @@ def test_byte_order_mark_and_line_ends_do_not_matter(tmp_path, start, end):
     path.write_bytes(start + full_text().replace("\n", end).encode())
     assert read_scenario(path) == parse_scenario(full_text())
     path.write_bytes(start + full_text({"primordial.tilt": "7"}).replace("\n", end).encode())
-    assert file_refusal(path).line == 15
+    assert file_refusal(path).line == line_of("primordial.tilt")
 
 
 def test_the_title_of_a_file_is_its_stem(tmp_path):

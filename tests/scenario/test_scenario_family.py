@@ -6,7 +6,7 @@ from pathlib import Path
 
 import pytest
 import yaml
-from scenario_texts import full_text, line_of, refusal, wavenumber_text
+from scenario_texts import VALUES, full_text, line_of, refusal, wavenumber_text
 
 from twofluid.scenario import ScenarioError, parse_scenario, read_scenario, scenario_from_mapping
 from twofluid.scenario.document import LARGEST_SIZE
@@ -104,7 +104,7 @@ def test_a_required_key_can_be_taken_back_but_is_missed(refused):
 
 
 def test_null_and_braces_for_a_section(child):
-    paths = ("primordial", "primordial.amplitude", "primordial.tilt", "primordial.pivot")
+    paths = [path for path in VALUES if path.startswith("primordial")]
     default = parse_scenario(full_text(dict.fromkeys(paths)))
     for nothing in ("null", "{}"):
         assert child(f"primordial: {nothing}\n").primordial == default.primordial

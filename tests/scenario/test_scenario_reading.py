@@ -2,9 +2,24 @@
 
 import pytest
 from astropy import units
-from scenario_texts import NO_PRODUCTS, VALUES, full_text, wavenumber_text
+from scenario_texts import NO_MIXTURE, NO_PRODUCTS, VALUES, full_text, wavenumber_text
 
-from twofluid.scenario import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario, parse_scenario, values
+from twofluid.scenario import (
+    Cosmology,
+    DarkMatter,
+    Method,
+    Mixture,
+    Neutrinos,
+    Primordial,
+    Reionization,
+    Sampling,
+    Scenario,
+    Share,
+    ThermalTable,
+    parse_scenario,
+    values,
+)
+from twofluid.scenario.keys import GAS_SECTIONS
 
 MINIMAL = """
 cosmology: {hubble_constant: 70 km/(s Mpc), baryon_density: 0.02, dark_matter_density: 0.1}
@@ -30,8 +45,29 @@ def test_every_key_reaches_its_field():
             neutrinos=Neutrinos(effective_number=3.0, masses=()),
             curvature_fraction=0.01,
             cosmological_constant_fraction=0.7,
+            thermal=ThermalTable(
+                redshift=(0.0, 0.6, 1.5, 3.0, 5.5, 9.0, 14.0, 21.0, 33.0),
+                gas_temperature=(8e3, 9e3, 1e4, 1e4, 9e3, 500.0, 60.0, 15.0, 22.0),
+                electron_fraction=(1.0, 1.0, 1.0, 1.0, 0.9, 0.1, 0.01, 5e-4, 2e-4),
+                below_redshift=30.0,
+                joining_width=0.2,
+            ),
+            reionization=Reionization(redshift=7.7, width=0.6, gas_temperature=12000.0),
+            dark_matter=DarkMatter(sound_speed=0.002, at_redshift=100.0, scaling=0.5),
         ),
-        primordial=Primordial(amplitude=2e-9, tilt=0.96, pivot=0.002),
+        primordial=Primordial(
+            amplitude=2e-9,
+            tilt=0.96,
+            pivot=0.002,
+            mixture=Mixture(
+                adiabatic=0.5,
+                baryon=Share(0.0, correlation=-0.5, tilt=0.9),
+                dark_matter=Share(0.0, correlation=-0.25, tilt=1.0),
+                neutrino_density=Share(0.0, correlation=0.0, tilt=1.1),
+                neutrino_velocity=Share(0.0, correlation=0.25, tilt=1.2),
+                compensated=Share(0.0, correlation=0.5, tilt=1.3),
+            ),
+        ),
         sampling=Sampling(wavenumbers=wavenumbers, redshifts=(1000.0, 100.0, 10.0)),
         products={
             "lag": {"fractions": (0.5, 0.9)},
@@ -41,7 +77,7 @@ def test_every_key_reaches_its_field():
             "shortfall": {"target_redshift": 7.0, "radii": (2.0,), "masses": (1e9,)},
             "streaming": {"from_redshift": 900.0, "velocities": (0.5, 1.0)},
         },
-        method=Method("sound-speed", "reference"),
+        method=Method("kinetic", "reference", True),
     )
     assert len(wavenumbers) == 21  # four decades, five points each, both ends
     assert scenario.assumed == ()
@@ -54,6 +90,7 @@ def test_defaults_fill_what_is_left_out_and_are_named():
     assert scenario.title == "untitled"
     assert (cosmology.photon_temperature, cosmology.helium_mass_fraction) == (2.7255, 0.2454)
     assert cosmology.neutrinos == Neutrinos(3.046, ())
+    assert cosmology.dark_matter == DarkMatter(0.0, 0.0, 1.0)
     assert cosmology.curvature_fraction is None
     assert cosmology.cosmological_constant_fraction is None
     assert scenario.primordial == Primordial(2.1e-9, 0.965, 0.05)
@@ -65,7 +102,8 @@ def test_defaults_fill_what_is_left_out_and_are_named():
         "sampling.redshifts",
     }
     not_made = set(NO_PRODUCTS) - {"products.lag.fractions"}
-    leaves = {path for path, value in VALUES.items() if value} - required - not_made
+    leaves = {path for path, value in VALUES.items() if value} - required - not_made - set(NO_MIXTURE)
+    leaves = {path for path in leaves if not path.startswith(tuple(GAS_SECTIONS))} | set(GAS_SECTIONS)
     assert set(scenario.assumed) == {path for path in leaves if "wavenumbers" not in path}
     assert len(scenario.assumed) == len(set(scenario.assumed))
 
@@ -99,8 +137,9 @@ def test_dataclass_defaults_are_those_of_the_reader():
 def test_an_empty_section_stands_at_its_defaults(section, empty):
     inner = dict.fromkeys(path for path in VALUES if path.startswith(section + "."))
     scenario = reread({section: empty, **inner})
-    assert set(scenario.assumed) == set(inner)
-    assert scenario.primordial == (Primordial() if section == "primordial" else Primordial(2e-9, 0.96, 0.002))
+    assert set(scenario.assumed) == set(inner) - set(NO_MIXTURE)
+    written = parse_scenario(full_text()).primordial
+    assert scenario.primordial == (Primordial() if section == "primordial" else written)
 
 
 def test_products_may_be_none_at_all():

@@ -78,12 +78,26 @@ def test_shared_chains_give_what_separate_ones_give():
     np.testing.assert_allclose(results[0], results[1], rtol=1e-10)
 
 
-def test_shared_chains_are_substituted_together():
-    groups = {}
-    for shared in (True, False):
-        rates = twin_chains(shared)
-        groups[shared] = Elimination(7, rates).factor(rates, STEPS).groups
-    assert groups == {True: 5, False: 7}  # the last pair feeds one row, so it goes one by one
+def different_chains():
+    """Two chains like those of `twin_chains`, every rate of one of them another."""
+    rates = twin_chains(shared=False)
+    return {entry: rate * (1.0 + 0.1 * (1 in [index % 2 for index in entry])) for entry, rate in rates.items()}
+
+
+def test_different_chains_are_substituted_together():
+    state = np.random.default_rng(6).normal(size=(7, MODES))
+    rates = different_chains()
+    factors = Elimination(7, rates).factor(rates, STEPS)
+    for step in range(STEPS):
+        np.testing.assert_allclose(factors.advance(state, step), dense_stages(rates, 7, state, step), rtol=1e-9)
+
+
+def test_chains_made_of_the_same_kinds_of_block_are_substituted_together():
+    unlike = different_chains()
+    unlike[1, 1] = unlike[1, 1][0]  # the same at all stages, while its twin's is not: the first pair falls apart
+    systems = (twin_chains(True), different_chains(), unlike)
+    groups = [Elimination(7, rates).factor(rates, STEPS).groups for rates in systems]
+    assert groups == [5, 5, 6]  # the last pair feeds one row, so it goes one by one
 
 
 def test_fill_in_is_symbolic():

@@ -1,25 +1,18 @@
 """A universe like ours, its wind, and patches that feel it."""
 
-from dataclasses import replace
+import sys
+from pathlib import Path
 from types import SimpleNamespace
 
 import numpy as np
 import pytest
 
 from twofluid import evolve
-from twofluid.scenario import Cosmology, Primordial, Sampling, Scenario
 from twofluid.streaming import follow_patches, rms_velocity, wind_wavenumbers
 
-WIND_REDSHIFTS = (3000.0, 1020.0, 1000.0, 600.0, 300.0, 100.0, 30.0, 10.0, 0.0)
-START = 1000.0
-WAVENUMBERS = (1.0, 2.0, 4.0, 10.0, 30.0, *np.geomspace(40.0, 1000.0, 15).tolist(), 2e4)
-REDSHIFTS = (1020.0, 1000.0, 500.0, 100.0, 40.0, 10.0)
-VELOCITIES = (0.0, 1.0, 2.0)
+sys.path.insert(0, str(Path(__file__).parent))  # the helpers beside the tests
 
-
-def scenario(**changes):
-    cosmology = Cosmology(67.5, baryon_density=0.0223, dark_matter_density=0.1195)
-    return Scenario("Saltmarsh test", replace(cosmology, **changes), Primordial(), Sampling([1.0], [0.0]))
+from wind_cases import REDSHIFTS, START, VELOCITIES, WAVENUMBERS, WIND_REDSHIFTS, scenario
 
 
 @pytest.fixture(scope="session")

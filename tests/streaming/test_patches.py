@@ -4,11 +4,12 @@ import re
 
 import numpy as np
 import pytest
-from conftest import REDSHIFTS, START, VELOCITIES, WAVENUMBERS
 from scipy.integrate import solve_ivp
+from wind_cases import REDSHIFTS, START, VELOCITIES, WAVENUMBERS
 
 from twofluid import SolverFailure, evolve
 from twofluid.fluids import PatchSystem
+from twofluid.scenario import DarkMatter
 from twofluid.streaming import follow_patches
 from twofluid.streaming.patches import _Patch
 
@@ -29,6 +30,24 @@ def test_without_wind_the_patch_is_the_plain_run(start, rms, make_scenario):
     # Photons are smooth at all these k; what is left are the steps of both.
     assert dark.real == pytest.approx(plain.delta_dark, rel=3e-5)
     assert (baryon.real - plain.delta_baryon) / plain.delta_dark == pytest.approx(0.0, abs=3e-5)
+
+
+WARM = DarkMatter(sound_speed=0.02, at_redshift=0.0, scaling=1.0)  # km/s; waves beyond some 50/Mpc are held up
+
+
+def test_with_pressure_in_the_dark_matter_too(make_scenario, rms):
+    # Sound speed of 20 km/s at z = 1000. Whatever the plain run does with it, the patch does.
+    scenario = make_scenario(dark_matter=WARM)
+    wavenumbers = [1.0, 30.0, 100.0]
+    plain = evolve(scenario, wavenumbers=wavenumbers, redshifts=LATER)
+    own = evolve(scenario, wavenumbers=wavenumbers, redshifts=[START])
+    dark, baryon = amplitudes(own, rms, 0.0, LATER)
+    scale = np.abs(plain.delta_dark).max(axis=1, keepdims=True)  # for those that pass through zero
+    assert (dark.real - plain.delta_dark) / scale == pytest.approx(0.0, abs=2e-4)
+    assert (baryon.real - plain.delta_baryon) / scale == pytest.approx(0.0, abs=2e-4)
+    # Negative control: cold dark matter would be elsewhere.
+    cold = evolve(make_scenario(), wavenumbers=wavenumbers, redshifts=LATER)
+    assert np.all(np.abs(cold.delta_dark[1:] - plain.delta_dark[1:]) > 0.01 * scale[1:])
 
 
 def test_acoustic_waves_are_beyond_it(start, rms, make_scenario):

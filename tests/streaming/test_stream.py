@@ -173,3 +173,11 @@ def test_impossible_files_are_refused(tmp_path, capsys, wrong, told):
     assert told in message
     assert message.count("\n") == 1
     assert not (tmp_path / "out").exists()
+
+
+def test_a_wind_with_too_many_waves_of_the_dark_matter_is_refused(tmp_path, capsys):
+    text = FILE.replace("sampling:", "  dark_matter: {sound_speed: 100 km/s, scaling: 1}\nsampling:")
+    assert run(tmp_path, text.replace("20 1/Mpc, 100 1/Mpc, 300", "0.1")) == 2  # the scales of the wind go further
+    message = capsys.readouterr().err
+    assert "products.streaming.wind: at k = 10 1/Mpc sound waves of the dark matter" in message
+    assert message.count("\n") == 1

@@ -120,7 +120,8 @@ def test_universe_is_finite_and_runs_one_way(universe):
 
 def test_landmarks_are_ordered(universe):
     landmarks = universe.landmarks
-    assert all(np.isfinite(value) and value > 0.0 for value in dataclasses.astuple(landmarks))
+    values = [value for value in dataclasses.astuple(landmarks) if value is not None]
+    assert all(np.isfinite(value) and value > 0.0 for value in values)
     assert landmarks.thermal_decoupling_redshift < landmarks.last_scattering_redshift
     assert 500.0 < landmarks.last_scattering_redshift < 2000.0
     assert landmarks.drag_sound_horizon < landmarks.conformal_age / 3.0**0.5

@@ -34,6 +34,8 @@ ROW_HEIGHT = 1.7  # one row of panels in a figure of several [inch]
 LEGEND_HEIGHT = 0.3  # what a legend above the panels adds [inch]
 MOST_REDSHIFTS = 6  # curves in a panel of differences
 LOW_SHARE = 2.0  # per cent of the points that may lie below the view, for waves that pass through zero
+CORNERS = ((1, 1), (0, 0), (1, 0), (0, 1))  # right and top, for words that give way to curves
+CORNER = (0.25, 0.15)  # of a panel, what words in its corner take
 DARK_DASHES = (0, (2, 1.5))  # dark matter beside baryons
 
 
@@ -67,9 +69,15 @@ def evolution_comparison_figure(tables):
         _draw_amplitudes(right, evolution[evolution["redshift"] == lowest], "wavenumber")
         _wavenumber_axis(right, evolution)
         _say(right, f"${QUANTITIES['redshift'].symbol}$ = {lowest:g}")
-        left.set_ylabel(r"contrast $|\delta|$ per unit curvature")
+        left.set_ylabel(_contrast_label(evolution))
         share_legend(figure, left)
     return figure
+
+
+def _contrast_label(table):
+    """Say what the contrasts of stacked tables are relative to: P is the primordial power, with any mixture."""
+    mixed = any("mixture" in meta for meta in (table.meta, *table.meta.get("scenarios", {}).values()))
+    return r"contrast $|\delta|\,/\,\sqrt{\mathcal{P}}$" if mixed else r"contrast $|\delta|$ per unit curvature"
 
 
 def lag_comparison_figure(tables):
@@ -99,7 +107,7 @@ def lag_comparison_figure(tables):
         _wavenumber_axis(left, lag)
         left.set_ylim(*_view([y for *_, y in ratios], RATIO_VIEW))
         left.set_ylabel(axis_label("ratio"))
-        _say(left, f"${QUANTITIES['redshift'].symbol}$ = {redshift:g}", at_right=True)
+        _say(left, f"${QUANTITIES['redshift'].symbol}$ = {redshift:g}", corners=CORNERS)
         caught = _by_scenario(catchup, "wavenumber", name)
         draw_curves(right, caught, SCENARIOS)
         _wavenumber_axis(right, catchup)
@@ -232,7 +240,16 @@ def _redshift_axis(axis, set_scale):
     axis.set_label_text(axis_label("redshift"))
 
 
-def _say(axes, text, *, at_right=False):
-    """Write in an upper corner of a panel which slice it shows."""
-    axes.text(0.97 if at_right else 0.03, 0.95, text, transform=axes.transAxes, fontsize=LABEL_SIZE, va="top",
-              ha="right" if at_right else "left")  # fmt: skip
+def _say(axes, text, *, corners=((0, 1),)):
+    """Write in a corner of a panel which slice it shows: of those allowed, the first that fewest curves run through."""
+    right, top = min(corners, key=lambda corner: _points_in_corner(axes, *corner))
+    axes.text(0.97 if right else 0.03, 0.95 if top else 0.05, text, transform=axes.transAxes, fontsize=LABEL_SIZE,
+              ha="right" if right else "left", va="top" if top else "bottom")  # fmt: skip
+
+
+def _points_in_corner(axes, right, top):
+    """Count the points of all curves in one corner; limits have to be set."""
+    to_panel = axes.transData - axes.transAxes
+    points = np.concatenate([to_panel.transform_path(line.get_path()).vertices for line in axes.lines])
+    across, up = CORNER
+    return np.count_nonzero((np.abs(points[:, 0] - right) < across) & (np.abs(points[:, 1] - top) < up))

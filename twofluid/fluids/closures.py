@@ -1,7 +1,7 @@
 """The closures a scenario can ask for. A new one is a module with a system class, and a row here."""
 
 from ..scenario import Scenario
-from .kinetic import KineticSystem
+from .kinetic import ConstrainedKineticSystem, KineticSystem
 from .sound_speed import SoundSpeedSystem
 
 #: System class of each value of the scenario key ``method.closure``. Beyond what the solver asks of a linear
@@ -9,6 +9,9 @@ from .sound_speed import SoundSpeedSystem
 #: universes, see `twofluid.universe.UniverseStack`), `neutrinos_may_have_mass`, `switches` (conformal times at
 #: which its equations change, to be met by every clock [Mpc]) and `cautions` (sentences its user has to know).
 CLOSURES = {"kinetic": KineticSystem, "sound-speed": SoundSpeedSystem}
+
+#: The same for mixtures of initial modes; closures that are not here know the adiabatic mode alone.
+MIXTURE_CLOSURES = {"kinetic": ConstrainedKineticSystem}
 
 
 def check_closure(scenario: Scenario) -> None:

@@ -109,7 +109,7 @@ class MassiveNeutrinos:
                 state[chain.unknown(moment)] = massless.get(f"neutrino_{moment}", 0.0)
         return state
 
-    def step_rates(self, scale_factor, modes, phase, inertia, curvature) -> dict:
+    def step_rates(self, scale_factor: np.ndarray, modes: np.ndarray, surroundings) -> dict:
         """Step times rate of everything these neutrinos do and suffer.
 
         Parameters
@@ -118,33 +118,42 @@ class MassiveNeutrinos:
             At the stage times [unitless].
         modes : array of int, shape (mode,)
             Which modes are asked for.
-        phase, inertia : array, shape (step, mode)
-            k dtau [unitless] and dtau/k [Mpc^2].
-        curvature : array, shape (lane,)
-            Of space, times dtau/k [unitless].
+        surroundings : object
+            What `KineticSystem` has at hand: `x`, k dtau [unitless], `inertia`, dtau/k [Mpc^2], and `curvature`, of
+            space times the latter [unitless], each an array of shape (lane,).
 
         Returns
         -------
         dict of (row, column) to array, shape (lane,) or (stage, lane)
         """
         rates = {}
-        source, growth = 4 / 15 * phase.ravel() - SHIFT / 2 * curvature, -2 / 3 * phase.ravel()
-        for chain in self._chains:
-            energy = chain.energy(scale_factor, modes)
-            flow = (chain.momentum * phase / energy).reshape(STAGES, -1)
-            gravity = chain.weight * chain.density[modes] * inertia / scale_factor**2
-            pull = (gravity * (energy + chain.momentum**2 / energy)).reshape(STAGES, -1)
-            momentum = (chain.momentum * gravity).reshape(STAGES, -1)
-            rates |= self._streaming(chain, flow)
+        x = surroundings.x
+        source, growth = 4 / 15 * x - SHIFT / 2 * surroundings.curvature, -2 / 3 * x
+        for chain, energy, gravity in self._at_stages(scale_factor, modes, surroundings):
+            rates |= self._streaming(chain, chain.momentum * x / energy)
             rates |= {
                 (chain.unknown(0), "metric_rate"): growth,
                 (chain.unknown(2), "metric_rate"): source,
-                ("metric_rate", chain.unknown(0)): -pull,
-                ("curvature", chain.unknown(1)): momentum / 2,
+                ("metric_rate", chain.unknown(0)): -gravity * (energy + chain.momentum**2 / energy),
+                ("curvature", chain.unknown(1)): chain.momentum / 2 * gravity,
             }
-            shear = SHIFT / 2 * momentum
+            shear = SHIFT / 2 * chain.momentum * gravity
             rates |= {(row, chain.unknown(1)): shear for row in ("photon_2", "neutrino_2")}
         return rates
+
+    def energies(self, scale_factor: np.ndarray, modes: np.ndarray, surroundings) -> dict[str, np.ndarray]:
+        """8 pi G a^2 times energy density, times dtau/k, by the unknown that is its contrast, shape (stage, lane)."""
+        return {
+            chain.unknown(0): gravity * energy
+            for chain, energy, gravity in self._at_stages(scale_factor, modes, surroundings)
+        }
+
+    def _at_stages(self, scale_factor, modes, surroundings):
+        """Yield every chain, its energy and what a unit of energy weighs in the metric, shape (stage, lane)."""
+        for chain in self._chains:
+            energy = chain.energy(scale_factor, modes).reshape(STAGES, -1)
+            weight = (chain.weight * chain.density[modes] / scale_factor**2).reshape(STAGES, -1)
+            yield chain, energy, weight * surroundings.inertia
 
     def _streaming(self, chain: _Chain, flow: np.ndarray) -> dict:
         """Free streaming of one chain, absorbed at its far end; the curvature is there for the shifted quadrupole.

@@ -6,14 +6,15 @@ smoothed the photons: baryons and dark matter pull, radiation takes part in the 
 of the dark matter, with the wind ``w`` along the wavevector (by conformal time, in units of c: no further
 factor of the scale factor), ``D = d/dtau + i k w``, ``g = 8 pi G a^2 rho``::
 
-    delta_c' = -theta_c                     theta_c' = -H theta_c - (g_c delta_c + g_b delta_b)/2
+    delta_c' = -theta_c                     theta_c' = -H theta_c - (g_c delta_c + g_b delta_b)/2 + k^2 c_c^2 delta_c
     D delta_b = -theta_b                    D theta_b = -H theta_b - (g_c delta_c + g_b delta_b)/2
                                                         + k^2 c_T^2 (delta_b + delta_T) - r kappa' theta_b
     D delta_T = -(2/3) theta_b - a Gamma (T_gamma/T) delta_T
 
-Velocities here are relative to the mean motion of their fluid; the photons' is the baryons' on these scales, so
-that Thomson drag acts on theta_b whole. Only ``w`` enters, the product of speed and direction cosine: whatever
-is averaged over directions or patches is an average over ``w``.
+with the sound speed ``c_c`` of the dark matter, 0 if it is cold. Velocities here are relative to the mean motion of
+their fluid; the photons' is the baryons' on these scales, so that Thomson drag acts on theta_b whole. Only ``w``
+enters, the product of speed and direction cosine: whatever is averaged over directions or patches is an average
+over ``w``.
 
 Amplitudes are complex. Every unknown is a pair of rows, its real and its imaginary part; velocities are
 divided by the expansion rate at the start of the patch, so that the rates stay near one.
@@ -125,12 +126,13 @@ class PatchSystem:
         """Write the equations of the module's text, the wind left out, as rates [1/Mpc]."""
         unit = np.full_like(now.hubble_rate, self._rate)
         pressure = wavenumber**2 * now.isothermal_sound_speed_squared / self._rate
+        dark_pressure = (wavenumber * self.universe.dark_sound_speed(now.scale_factor)) ** 2 / self._rate
         dark, baryon = now.gravity_dark / (2.0 * self._rate), now.gravity_baryon / (2.0 * self._rate)
         drag = now.photon_baryon_ratio * now.scattering_rate
         return {
             ("delta_dark", "velocity_dark"): -unit,
             ("velocity_dark", "velocity_dark"): -now.hubble_rate,
-            ("velocity_dark", "delta_dark"): -dark,
+            ("velocity_dark", "delta_dark"): dark_pressure - dark,
             ("velocity_dark", "delta_baryon"): -baryon,
             ("delta_baryon", "velocity_baryon"): -unit,
             ("velocity_baryon", "velocity_baryon"): -now.hubble_rate - drag,
@@ -151,7 +153,7 @@ class PatchSystem:
         smooth_step : float
             Longest step in ln a [unitless].
         phase_step : float
-            Longest way in a step of the wind, and of sound, times the wavenumber [unitless].
+            Longest way in a step of the wind and of sound, in gas and dark matter, times the wavenumber [unitless].
 
         Returns
         -------
@@ -165,6 +167,7 @@ class PatchSystem:
         drift = k * self.component[:, None] * self.rms_velocity(now.scale_factor)
         sound = k * np.sqrt(now.isothermal_sound_speed_squared)
         phase = np.minimum(drift + sound, DRIFT_FOLLOWED * expansion)
+        phase = phase + k * self.universe.dark_sound_speed(now.scale_factor)
         density = np.hypot(expansion / smooth_step, phase / phase_step)
         starts = np.full(len(self.wavenumber), first)
         return lay_out(grid, density, starts, np.log(marks))

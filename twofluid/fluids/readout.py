@@ -18,8 +18,8 @@ class Reading:
     ----------
     quantities : dict of str to array, shape (boundary, mode)
         "log_scale_factor", and for each of delta_dark, delta_baryon, theta_baryon [1/Mpc] and
-        delta_gas_temperature its value and, as "NAME_slope", its derivative by ln a; where neutrinos have mass,
-        delta_neutrino too.
+        delta_gas_temperature its value and, as "NAME_slope", its derivative by ln a; where the dark
+        matter is not cold also for theta_dark [1/Mpc], where neutrinos have mass for delta_neutrino.
     constraint_drift : array, shape (step, mode)
         Change of the Einstein energy constraint in each step, relative to its largest term [unitless];
         NaN where the closure has no such constraint.
@@ -67,6 +67,33 @@ def read_quantities(now: Conditions, k: np.ndarray, y: Mapping[str, np.ndarray])
         "delta_baryon_slope": baryon_rate / hubble,
         "theta_baryon_slope": theta_rate / hubble,
         "delta_gas_temperature_slope": temperature_rate / hubble,
+    }
+
+
+def read_moving_dark_matter(
+    now: Conditions, k: np.ndarray, y: Mapping[str, np.ndarray], speed: np.ndarray
+) -> dict[str, np.ndarray]:
+    """Turn unknowns into what differs where the dark matter is not cold.
+
+    Parameters
+    ----------
+    now, k, y
+        As in `read_quantities`, with the unknown "theta_dark" divided by k.
+    speed : array, shape (boundary, mode)
+        Sound speed of the dark matter [c].
+
+    Returns
+    -------
+    dict of str to array, shape (boundary, mode)
+        "theta_dark" [1/Mpc], and the slopes of it and of delta_dark by ln a.
+    """
+    theta = k * y["theta_dark"]
+    dark_rate = -theta - 0.5 * k * y["metric_rate"]
+    theta_rate = -now.hubble_rate * theta + (k * speed) ** 2 * y["delta_dark"]
+    return {
+        "delta_dark_slope": dark_rate / now.hubble_rate,
+        "theta_dark": theta,
+        "theta_dark_slope": theta_rate / now.hubble_rate,
     }
 
 

@@ -2,7 +2,8 @@
 
 Where dark matter rules, its smooth gravity forgives much. Where it does not, the damped acoustic
 oscillation and the free streaming of the radiation are all there is, so both have to be followed
-more finely for the same accuracy.
+more finely for the same accuracy. Dark matter with pressure does not rule: below its Jeans scale it
+is as smooth as they are.
 """
 
 from dataclasses import dataclass, fields, replace
@@ -40,6 +41,7 @@ class Resolution:
             "diffusion_exponent": 1.5 * stepping.diffusion_exponent,
             "felt_phase": 1.5 * stepping.felt_phase,
             "drag_ratio": stepping.drag_ratio / 2.0,
+            "gas_swing": stepping.gas_swing / 3.0,
         }
         chains = {part.name: ceil(LONGER_CHAINS * getattr(self.chains, part.name)) for part in fields(ChainLengths)}
         return Resolution(replace(stepping, **halved, **longer), ChainLengths(**chains))
@@ -55,7 +57,7 @@ class Accuracy:
         Numerical error that is not exceeded: of the dark-matter contrast, relative, and of the ratio of
         baryon to dark-matter contrast, absolute [unitless]. Measured; see the guide for developers.
     dark_ruled, baryon_ruled : Resolution
-        Settings where dark matter is more, or less, than a quarter of the matter.
+        Settings where dark matter is cold and more than a quarter of the matter, and where it is not.
     """
 
     promise: float
@@ -63,7 +65,7 @@ class Accuracy:
     baryon_ruled: Resolution
 
 
-def _resolution(steps: tuple, exponent: float, felt_phase: float, chains: tuple) -> Resolution:
+def _resolution(steps: tuple, exponent: float, felt_phase: float, chains: tuple, swing: float) -> Resolution:
     outside, smooth, free, change, phase = steps
     return Resolution(
         Stepping(
@@ -74,29 +76,31 @@ def _resolution(steps: tuple, exponent: float, felt_phase: float, chains: tuple)
             phase_step=phase,
             diffusion_exponent=exponent,
             felt_phase=felt_phase,
+            gas_swing=swing,
         ),
         ChainLengths(*chains),
     )
 
 
 #: Settings by accuracy. Steps are, in ln a: far outside the horizon, inside it, inside it in free gas; then the
-#: change of the scattering rate and the phase of an oscillation. Chains: photon, polarization, neutrino, neutrino
-#: with mass, and momenta of the last.
+#: change of the scattering rate and the phase of an oscillation. Chains: photon, polarization, neutrino,
+#: neutrino with mass, and momenta of the last. Swing: of quickly heated gas, over the dark matter's contrast, that
+#: may go unresolved.
 ACCURACIES = {
     "draft": Accuracy(
         promise=3e-3,
-        dark_ruled=_resolution((0.8, 0.3, 0.4, 0.8, 2.0), 15.0, 80.0, (7, 7, 9, 8, 4)),
-        baryon_ruled=_resolution((0.4, 0.15, 0.2, 0.8, 1.0), 25.0, 200.0, (16, 16, 18, 14, 4)),
+        dark_ruled=_resolution((0.8, 0.3, 0.4, 0.8, 2.0), 15.0, 80.0, (7, 7, 9, 8, 4), swing=1e-2),
+        baryon_ruled=_resolution((0.4, 0.15, 0.2, 0.8, 1.0), 25.0, 200.0, (16, 16, 18, 14, 4), swing=1e-2),
     ),
     "standard": Accuracy(
         promise=3e-4,
-        dark_ruled=_resolution((0.6, 0.2, 0.3, 0.4, 1.3), 20.0, 120.0, (10, 10, 12, 12, 5)),
-        baryon_ruled=_resolution((0.2, 0.05, 0.1, 0.5, 0.6), 30.0, 300.0, (22, 22, 24, 18, 5)),
+        dark_ruled=_resolution((0.6, 0.2, 0.3, 0.4, 1.3), 20.0, 120.0, (10, 10, 12, 12, 5), swing=2e-3),
+        baryon_ruled=_resolution((0.2, 0.05, 0.1, 0.5, 0.6), 30.0, 300.0, (22, 22, 24, 18, 5), swing=2e-3),
     ),
     "reference": Accuracy(
         promise=5e-5,
-        dark_ruled=_resolution((0.2, 0.08, 0.1, 0.2, 0.6), 30.0, 300.0, (16, 16, 28, 16, 7)),
-        baryon_ruled=_resolution((0.1, 0.03, 0.05, 0.25, 0.35), 40.0, 500.0, (28, 28, 36, 26, 7)),
+        dark_ruled=_resolution((0.2, 0.08, 0.1, 0.2, 0.6), 30.0, 300.0, (16, 16, 28, 16, 7), swing=7e-4),
+        baryon_ruled=_resolution((0.1, 0.03, 0.05, 0.25, 0.35), 40.0, 500.0, (28, 28, 36, 26, 7), swing=7e-4),
     ),
 }
 
@@ -116,4 +120,5 @@ def resolution_for(universe: Universe, accuracy: str = "standard") -> Resolution
     """
     dark, baryon = universe.gravity("dark", 1.0), universe.gravity("baryon", 1.0)
     settings = ACCURACIES[accuracy]
-    return settings.dark_ruled if dark >= RULING_FRACTION * (dark + baryon) else settings.baryon_ruled
+    rules = dark >= RULING_FRACTION * (dark + baryon) and not universe.has_dark_pressure
+    return settings.dark_ruled if rules else settings.baryon_ruled

@@ -30,6 +30,10 @@ Streaming radiation
     where shear has built up since the beginning, sigma = (2/15) tau S, and makes the contrast smooth
     inside, with the rate ``n k``. Photons do not remember their waves in the plasma.
 
+Dark matter
+    With pressure it moves against the frame: ``-theta_c`` is added to delta_c', the velocity follows
+    ``theta_c' = -H theta_c + k^2 c_s^2 delta_c`` and adds to eta', as in the kinetic closure.
+
 The energy constraint of Einstein's equations is no check on this closure: photons change over from one
 fluid to the other, and the shear of what streams is prescribed.
 
@@ -40,6 +44,8 @@ numbers from memory). Kaiser, N. 1983, MNRAS 202, 1169 and Hu, W. & White, M. 19
 (from memory).
 """
 
+from collections.abc import Mapping
+
 import numpy as np
 
 from ..solver.collocation import STAGES
@@ -47,7 +53,7 @@ from ..universe import Universe
 from ..universe.gas import plasma_sound_speed
 from .kinetic import ChainLengths
 from .readout import Reading
-from .start import adiabatic
+from .start import mixed
 
 STREAMING_LIMIT = 0.5  # n: rate at which streaming smooths well inside the horizon, over k; dark matter within 4 %
 LOCKED_STIFFNESS = 1 / 3  # delta_T over delta_b in the plasma
@@ -86,6 +92,9 @@ class SoundSpeedSystem:
         self.wavenumber = np.asarray(wavenumber, dtype=float)
         self.release = float(universe.conformal_time(1.0 / (1.0 + universe.landmarks.drag_redshift)))
         self.switches = (self.release,)
+        self.dark_pressure = universe.has_dark_pressure
+        if self.dark_pressure:
+            self.unknowns = self.observed = ("theta_dark", *type(self).unknowns)
         self._row = {name: row for row, name in enumerate(self.unknowns)}
 
     @property
@@ -95,21 +104,24 @@ class SoundSpeedSystem:
         measured = MEASURED_WITH_DARK_MATTER if has_dark_matter else MEASURED_WITHOUT
         return (f"closure sound-speed is a small model; against the kinetic closure {measured}",)
 
-    def first_state(self, start: np.ndarray) -> np.ndarray:
+    def first_state(self, start: np.ndarray, weights: Mapping[str, np.ndarray] | None = None) -> np.ndarray:
         """State of every mode at its start.
 
         Parameters
         ----------
         start : array, shape (mode,)
             Conformal time of each start [Mpc].
+        weights : mapping of str to array, shape (mode,), optional
+            How much of each initial mode; only the adiabatic one keeps photons to baryons as this closure has
+            them [unitless].
 
         Returns
         -------
         array, shape (unknown, mode)
         """
-        first = adiabatic(self.universe, self.wavenumber, start)
+        first = mixed(self.universe, self.wavenumber, start, weights)
         first |= {"delta_stream": first["delta_neutrino"], "theta_stream": first["theta_neutrino"]}
-        return np.stack([first[name] for name in self.unknowns])
+        return np.stack([first.get(name, np.zeros(len(start))) for name in self.unknowns])
 
     def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict:
         """Evaluate step times rate; see `twofluid.solver.LinearSystem`."""
@@ -149,6 +161,13 @@ class SoundSpeedSystem:
             "theta_baryon": 1.5 * (now.gravity_baryon + 4 / 3 * held) / k**2,
             "theta_stream": 2.0 * streaming / k**2,
         }
+        if self.dark_pressure:
+            rates |= {
+                ("delta_dark", "theta_dark"): -k,
+                ("theta_dark", "theta_dark"): -hubble,
+                ("theta_dark", "delta_dark"): k * self.universe.dark_sound_speed(now.scale_factor) ** 2,
+            }
+            expansion["theta_dark"] = 1.5 * now.gravity_dark / k**2
         resistance = {"theta_baryon": np.where(in_plasma, 2.0 * k**2 * diffusion, 0.0), "theta_stream": viscosity}
         for fluid, rate in resistance.items():
             for name, share in expansion.items():
@@ -188,6 +207,9 @@ class SoundSpeedSystem:
             "theta_baryon_slope": self.wavenumber * slope["theta_baryon"],
             "delta_gas_temperature_slope": stiffness * slope["delta_baryon"] + change * y["delta_baryon"],
         }
+        if self.dark_pressure:
+            velocity = {"theta_dark": y["theta_dark"], "theta_dark_slope": slope["theta_dark"]}
+            quantities |= {name: self.wavenumber * value for name, value in velocity.items()}
         return Reading(quantities, np.full((len(times) - 1, times.shape[1]), np.nan))
 
 
@@ -195,7 +217,7 @@ def _gas_stiffness(universe: Universe, scale_factor: np.ndarray, in_plasma: np.n
     """Stiffness delta_T / delta_b [unitless] and its derivative by ln a."""
 
     def stiffness(log_a: np.ndarray) -> np.ndarray:
-        return np.where(in_plasma, LOCKED_STIFFNESS, -universe.gas_temperature_slope(np.exp(log_a)) / 3.0)
+        return np.where(in_plasma, LOCKED_STIFFNESS, universe.gas_stiffness(np.exp(log_a)))
 
     log_a = np.minimum(np.log(scale_factor), 0.0)
     before, after = log_a - SLOPE_SPAN, np.minimum(log_a + SLOPE_SPAN, 0.0)

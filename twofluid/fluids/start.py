@@ -1,4 +1,4 @@
-"""How a mode starts: the adiabatic growing solution outside the horizon, deep in the radiation era.
+"""How a mode starts outside the horizon, deep in the radiation era: the adiabatic growing solution, or a mixture.
 
 References
 ----------
@@ -6,9 +6,14 @@ Ma, C.-P. & Bertschinger, E. 1995, ApJ 455, 7, eq. 96 (number from memory) with 
 curvature, densities growing positive.
 """
 
+from collections.abc import Mapping
+
 import numpy as np
 
 from ..universe import Universe
+from .modes import isocurvature, neutrino_gravity
+
+ADIABATIC = "adiabatic"  # the one mode that has curvature at the beginning
 
 START_PHASE = 0.01  # k tau at the start: the terms left out are smaller by (k tau)^2 / 30
 START_MATTER = 4e-6  # or matter over radiation there, if that is earlier: the series has no matter in it
@@ -50,7 +55,7 @@ def adiabatic(universe: Universe, wavenumber: np.ndarray, time: np.ndarray) -> d
     """
     now = universe.conditions(time)
     x = wavenumber * time
-    neutrino = now.gravity_neutrino + universe.gravity("massive_neutrino", now.scale_factor)  # all as fast as light
+    neutrino = neutrino_gravity(universe, now)
     fraction = neutrino / (neutrino + now.gravity_photon)  # R_nu
     theta = x**3 / 36.0
     radiation = x**2 / 3.0
@@ -66,3 +71,37 @@ def adiabatic(universe: Universe, wavenumber: np.ndarray, time: np.ndarray) -> d
         "theta_neutrino": theta * (23.0 + 4.0 * fraction) / (15.0 + 4.0 * fraction),
         "neutrino_2": -4.0 / 3.0 * x**2 / (15.0 + 4.0 * fraction),
     }
+
+
+def mixed(
+    universe: Universe, wavenumber: np.ndarray, time: np.ndarray, weights: Mapping[str, np.ndarray] | None = None
+) -> dict[str, np.ndarray]:
+    """Add up initial modes; unknowns that do not appear start at zero.
+
+    Parameters
+    ----------
+    universe : Universe
+    wavenumber : array, shape (mode,)
+        Comoving wavenumbers [1/Mpc].
+    time : array, shape (mode,)
+        Conformal time of the start [Mpc].
+    weights : mapping of str to array, shape (mode,), optional
+        How much of each initial mode, "adiabatic" or one of `twofluid.fluids.modes.BEGINNINGS`, every wavenumber
+        has [unitless]; the adiabatic mode alone if left out.
+
+    Returns
+    -------
+    dict of str to array, shape (mode,)
+        Unknowns of the kinetic closure [unitless].
+    """
+    if weights is None:
+        return adiabatic(universe, wavenumber, time)
+    state: dict[str, np.ndarray] = {}
+    for mode, weight in weights.items():
+        if mode == ADIABATIC:
+            alone = adiabatic(universe, wavenumber, time)
+        else:
+            alone = isocurvature(mode, universe, wavenumber, time)
+        for name, values in alone.items():
+            state[name] = state.get(name, 0.0) + weight * values
+    return state

@@ -9,9 +9,20 @@ matters. Once it no longer does it is left unresolved and the method damps it. I
 * its gravity is felt, k tau < `Stepping.felt_phase` / sqrt(dark-matter fraction), or diffusion
   will not have damped it when the baryons are released, or at a later time that is asked for.
   Without dark matter there is no such bound.
+
+Photons that push again once the gas is reionized start no such oscillation: they stream by then.
+
+Where the gas is heated quickly, by a table or reionization, a fourth asks for steps. Pressure that rises at
+once sets the gas swinging about its new balance, with the share of the dark-matter contrast at most that
+the old pressure left it, (k_J/k)^2, which falls as a^(-3/2) as the wave spends itself and the dark matter grows.
+The wave is followed for as long as that share exceeds `Stepping.gas_swing`, the less finely the smaller it is.
+
+Dark matter with pressure oscillates too, below its own Jeans scale. Nothing damps that, and where the Jeans scale
+shrinks the wave that is left is what grows in the end: it is resolved to the last, and the finer the more radians
+there are for errors to add up over. Modes of too many radians are refused (`check_dark_waves`).
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -19,7 +30,15 @@ from ..solver import Clock, lay_out
 from ..universe import Conditions, Universe
 
 NODES_PER_UNIT = 60  # nodes of the density per unit of log conformal time
+HEATED_QUICKLY = 1.0  # d ln T/d ln a beyond which the gas cannot follow its pressure in balance
+GAS_PHASE = 0.4  # of `Stepping.phase_step`, the phase of a gas wave in a step: nothing damps it (measured)
+ORDER = 5  # of the method: a wave that is smaller by s bears steps longer by s^(-1/5)
+ADIABATIC = 5.0 / 3.0  # sound speed squared over its isothermal value, at most
+MIXTURES_OUTSIDE = 3.0  # shorter steps far outside the horizon for mixtures of initial modes (measured)
 FAR_OUTSIDE = 0.3  # k tau up to which a mode counts as far outside the horizon
+DARK_PHASE_SHARE = 0.5  # longest k c_s dtau of waves of the dark matter, over `Stepping.phase_step` (measured)
+DARK_RADIANS = 100.0  # from so many on steps shorten as radians^(-1/5): the method is of order five
+MOST_DARK_RADIANS = 1000.0  # that are followed; some thousand steps
 
 
 @dataclass(frozen=True)
@@ -30,9 +49,11 @@ class Stepping:
     ----------
     outside_step, smooth_step, free_step : float
         Longest steps in ln a where nothing else asks for steps: far outside the horizon, inside it, and
-        inside it once the gas is free of the photons [unitless].
+        inside it once the gas is free of the photons; half of them where the gas is heated, which the rows of a
+        table do with kinks [unitless].
     scattering_change : float
-        Largest change of the logarithm of the scattering rate, beyond the a^-2 of dilution, in a step [unitless].
+        Largest change of the logarithm of the scattering rate, beyond the a^-2 of dilution, in a step, and largest
+        rise of that of the gas temperature where a table or reionization heats it [unitless].
     phase_step : float
         Largest k dtau while the oscillation matters [unitless].
     diffusion_exponent : float
@@ -42,6 +63,8 @@ class Stepping:
         matter alone [unitless].
     drag_ratio : float
         Photon drag on baryons over expansion rate below which the gas counts as free [unitless].
+    gas_swing : float
+        Swing of heated gas over the dark-matter contrast below which it is left unresolved [unitless].
     """
 
     outside_step: float
@@ -52,6 +75,14 @@ class Stepping:
     diffusion_exponent: float
     felt_phase: float
     drag_ratio: float = 1e-3
+    gas_swing: float = 1e-2
+
+    def for_mixtures(self) -> "Stepping":
+        """Shorten the steps outside the horizon, as modes without curvature at the beginning need it.
+
+        There their matter is moved by small differences, of neutrinos and photons say, whose own errors count.
+        """
+        return replace(self, outside_step=self.outside_step / MIXTURES_OUTSIDE)
 
 
 def clock(
@@ -110,10 +141,67 @@ def step_density(
     change = np.abs(np.gradient(log_scattering, np.log(time)))
     quiet = np.where(_pushed(now, stepping), stepping.smooth_step, stepping.free_step)
     smooth = per_expansion / quiet + change / stepping.scattering_change
+    if universe.heated_from:
+        a = np.minimum(now.scale_factor, 1.0)
+        rise = np.maximum(universe.gas_temperature_slope(a), 0.0)
+        smooth = smooth + per_expansion * (rise / stepping.scattering_change + (a > universe.heated_from) / quiet)
     phase = wavenumber[:, None] * time
     matters = oscillation_matters(universe, wavenumber, time, stepping, asked)
     inside = np.where(matters, np.hypot(smooth, phase / stepping.phase_step), smooth)
+    if universe.heated_from:
+        inside = np.hypot(inside, _gas_waves(universe, now, wavenumber, time, stepping))
+    if universe.has_dark_pressure:
+        dark_phase = phase * universe.dark_sound_speed(now.scale_factor)
+        inside = np.hypot(inside, dark_phase / _longest_dark_phase(universe, wavenumber, stepping)[:, None])
     return np.where(phase < FAR_OUTSIDE, per_expansion / stepping.outside_step, inside)
+
+
+def _gas_waves(
+    universe: Universe, now: Conditions, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping
+) -> np.ndarray:
+    """Give the steps per unit of log conformal time for sound in gas that was heated quickly, shape (mode, node)."""
+    a = np.minimum(now.scale_factor, 1.0)
+    quickly = (a > universe.heated_from) & (universe.gas_temperature_slope(a) > HEATED_QUICKLY)
+    if not quickly.any():
+        return np.zeros((len(wavenumber), len(time)))
+    first, last = np.flatnonzero(quickly)[[0, -1]]
+    balance = np.sqrt(0.5 * (now.gravity_dark + now.gravity_baryon)[first]) / universe.gas_sound_speed(a[first])
+    swing = np.minimum(1.0, (balance / wavenumber[:, None]) ** 2) * np.minimum(1.0, a[last] / a) ** 1.5
+    phase = wavenumber[:, None] * time * np.sqrt(ADIABATIC * now.isothermal_sound_speed_squared)
+    density = phase / (GAS_PHASE * stepping.phase_step * swing ** (-1.0 / ORDER))
+    return np.where((np.arange(len(time)) >= first) & (swing > stepping.gas_swing), density, 0.0)
+
+
+
+def check_dark_waves(universe: Universe, wavenumber: np.ndarray) -> None:
+    """Refuse modes in which the dark matter oscillates more often than is followed.
+
+    Parameters
+    ----------
+    universe : Universe
+    wavenumber : array, shape (mode,)
+        Comoving wavenumbers [1/Mpc].
+
+    Raises
+    ------
+    ValueError
+        If one goes through more than `MOST_DARK_RADIANS` by today.
+    """
+    if not universe.has_dark_pressure:
+        return
+    way, largest = float(universe.dark_sound_horizon(1.0)), np.max(wavenumber)
+    if way * largest > MOST_DARK_RADIANS:
+        raise ValueError(
+            f"at k = {largest:.6g} 1/Mpc sound waves of the dark matter go through {way * largest:.3g} radians by "
+            f"today, and {MOST_DARK_RADIANS:g} are followed at most: ask for wavenumbers up to "
+            f"{MOST_DARK_RADIANS / way:.3g} 1/Mpc, or a lower cosmology.dark_matter.sound_speed"
+        )
+
+
+def _longest_dark_phase(universe: Universe, wavenumber: np.ndarray, stepping: Stepping) -> np.ndarray:
+    """Longest k c_s dtau of waves of the dark matter, shape (mode,)."""
+    radians = wavenumber * universe.dark_sound_horizon(1.0)
+    return DARK_PHASE_SHARE * stepping.phase_step * np.minimum(1.0, DARK_RADIANS / radians) ** 0.2
 
 
 def _pushed(now: Conditions, stepping: Stepping) -> np.ndarray:
@@ -144,6 +232,7 @@ def oscillation_matters(
     now = universe.conditions(time)
     pushed = _pushed(now, stepping)
     exponent = (wavenumber[:, None] / universe.diffusion_wavenumber(now.scale_factor)) ** 2
+    pushed = np.logical_and.accumulate(pushed)  # until the first release
     alive = pushed & (exponent < stepping.diffusion_exponent)
     release = time[pushed][-1] if pushed.any() else time[0]
     seen = alive[:, np.searchsorted(time, np.append(asked[asked < release], release)).clip(max=len(time) - 1)]

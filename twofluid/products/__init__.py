@@ -1,7 +1,7 @@
 """What users take away: functions from a History to tables."""
 
 from twofluid.products.comparison import course_table, difference_table, joined_table
-from twofluid.products.evolution import evolution_table
+from twofluid.products.evolution import evolution_table, parts_table
 from twofluid.products.growth import growth_table
 from twofluid.products.lag import catchup_table, lag_table
 from twofluid.products.requirements import check_products
@@ -22,6 +22,7 @@ __all__ = [
     "joined_table",
     "lag_table",
     "map_redshifts",
+    "parts_table",
     "scales_table",
     "shortfall_table",
     "sigma_8",

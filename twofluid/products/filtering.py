@@ -27,6 +27,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from twofluid.scenario import ADIABATIC
+
 NODES = 801  # of the integrals, in ln a: trapezoids to 1e-4
 ACOUSTIC_END = 5.0  # k over k_D at the drag epoch from where on waves, exp(-25) of what they were, leave no trace
 PLATEAU_END = 0.1  # k over k_F up to where the plateau holds: pressure takes a per cent of the ratio there
@@ -129,6 +131,8 @@ def _reference(history):
     """Return the number of the mode at the lower end of the plateau, or None and the reason."""
     if not history.has_dark_matter:
         return None, "without dark matter there is no growth free of pressure to compare with"
+    if history.initial_modes != ADIABATIC:
+        return None, "with initial modes beside the adiabatic one the ratio has no plateau even without pressure"
     drag = 1.0 / (1.0 + history.universe.landmarks.drag_redshift)
     least = ACOUSTIC_END * float(history.universe.diffusion_wavenumber(drag))
     candidates = np.where(history.wavenumber >= least, history.wavenumber, np.inf)

@@ -41,6 +41,26 @@ def jeans_wavenumber(universe, redshift):
     return np.sqrt(0.5 * (matter + np.where(plasma, radiation, 0.0))) / speed
 
 
+def dark_jeans_wavenumber(universe, redshift):
+    """Comoving Jeans wavenumber (a/c_s) sqrt(4 pi G rho) of dark matter with pressure, rho of it and the baryons.
+
+    Parameters
+    ----------
+    universe : Universe
+        The smooth universe.
+    redshift : array, shape (redshift,)
+        Redshifts [unitless].
+
+    Returns
+    -------
+    array, shape (redshift,)
+        [1/Mpc]
+    """
+    a = 1.0 / (1.0 + np.asarray(redshift, dtype=float))
+    matter = universe.gravity("baryon", a) + universe.gravity("dark", a)
+    return np.sqrt(0.5 * matter) / universe.dark_sound_speed(a)
+
+
 def matter_mass(universe, wavenumber, radius=HALF_WAVELENGTH):
     """Mass of baryons and dark matter, at their mean density, in a sphere that belongs to a wavenumber.
 

@@ -3,6 +3,9 @@
 The ratio is b = delta_baryon/delta_dark. Both densities are read between the steps of the run as cubic
 Hermite pieces in ln a. Where baryons dominate, their waves can carry delta_dark through zero; only signs
 relative to it matter below.
+
+Dark matter with pressure can be the one that lags: then b is above 1 and the delay is empty. Its own waves, too, can
+carry delta_dark through zero.
 """
 
 from __future__ import annotations
@@ -54,6 +57,7 @@ def catchup_table(history, fractions=FRACTIONS):
     which `ratio_today` shows); empty, never, where b fell below the fraction and has not come back by
     today; and inf, where b has not been below the fraction since the start of the run. A pole of b, where
     delta_dark passes through zero, counts like any other way to come from below the fraction to above.
+    (With initial modes beside the adiabatic one b can begin anywhere; the outcomes mean the same.)
 
     Parameters
     ----------

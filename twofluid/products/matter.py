@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import numpy as np
+
 FLUIDS = ("dark", "baryon", "matter")
 FLUID_NAMES = {"dark": "dark matter", "baryon": "baryons", "matter": "matter"}  # for people
 
@@ -38,9 +40,10 @@ def contrasts_of(history):
     Returns
     -------
     dict of str to array, shape (mode, redshift)
-        Density contrasts [unitless].
+        Signed, or of a mixture with independent parts the rms of all of them [unitless].
     """
-    return contrasts(history.universe, *_parts(history, lambda name: getattr(history, name)))
+    parts = [contrasts(part.universe, *(getattr(part, name) for name in _made_of(part))) for part in history.parts]
+    return _in_quadrature(parts, parts)[0]
 
 
 def contrasts_at(history, redshift):
@@ -56,12 +59,13 @@ def contrasts_at(history, redshift):
     Returns
     -------
     contrast, slope : dict of str to array, shape (mode, redshift)
-        Density contrasts and their derivatives by ln a [unitless].
+        Density contrasts, as `contrasts_of` has them, and their derivatives by ln a [unitless].
     """
-    return tuple(
-        contrasts(history.universe, *_parts(history, lambda name, read=read: read(name, redshift)))
-        for read in (history.at, history.slope_at)
-    )
+    return _in_quadrature(*(
+        [contrasts(part.universe, *(getattr(part, read)(name, redshift) for name in _made_of(part)))
+         for part in history.parts]
+        for read in ("at", "slope_at")
+    ))  # fmt: skip
 
 
 def contrast_courses(history):
@@ -75,18 +79,30 @@ def contrast_courses(history):
     Returns
     -------
     contrast, slope : dict of str to array, shape (mode, step)
-        Density contrasts and their derivatives by ln a [unitless].
+        Density contrasts, as `contrasts_of` has them, and their derivatives by ln a [unitless].
     """
-    return tuple(
-        contrasts(history.universe, *_parts(history, lambda name, end=end: getattr(history.trace, name + end)))
-        for end in ("", "_slope")
-    )
+    return _in_quadrature(*(
+        [contrasts(part.universe, *(getattr(part.trace, name + suffix) for name in _made_of(part)))
+         for part in history.parts]
+        for suffix in ("", "_slope")
+    ))  # fmt: skip
 
 
-def _parts(history, values):
-    """Return what `contrasts` takes of a run, given the function that finds each."""
-    names = ("delta_dark", "delta_baryon", *(("delta_neutrino",) if history.has_massive_neutrinos else ()))
-    return [values(name) for name in names]
+def _in_quadrature(values, slopes):
+    """Add up independent parts: rms and its slope; a single part stays as it is, sign and all."""
+    if len(values) == 1:
+        return values[0], slopes[0]
+    rms, slope = {}, {}
+    for fluid in FLUIDS:
+        value, change = (np.stack([part[fluid] for part in parts]) for parts in (values, slopes))
+        rms[fluid] = np.sqrt((value**2).sum(axis=0))
+        slope[fluid] = (value * change).sum(axis=0) / np.where(rms[fluid] > 0.0, rms[fluid], 1.0)
+    return rms, slope
+
+
+def _made_of(part):
+    """Return the names of the contrasts that `contrasts` takes of a run."""
+    return ("delta_dark", "delta_baryon", *(("delta_neutrino",) if part.has_massive_neutrinos else ()))
 
 
 def exists(history, fluid):

@@ -48,4 +48,14 @@ def _check_growth(scenario, universe, options):
         )
 
 
-_CHECKS = {"growth": _check_growth, "shortfall": _check_shortfall}
+def _check_streaming(scenario, universe, options):
+    from twofluid.fluids import check_dark_waves
+    from twofluid.streaming import wind_wavenumbers
+
+    try:
+        check_dark_waves(universe, wind_wavenumbers())
+    except ValueError as problem:
+        raise ValueError(f"wind: {problem}") from None
+
+
+_CHECKS = {"growth": _check_growth, "shortfall": _check_shortfall, "streaming": _check_streaming}

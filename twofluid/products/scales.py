@@ -5,13 +5,17 @@ from __future__ import annotations
 import numpy as np
 
 from twofluid.products.filtering import filtering
-from twofluid.products.jeans import HALF_WAVELENGTH, in_plasma, jeans_wavenumber, matter_mass
+from twofluid.products.jeans import HALF_WAVELENGTH, dark_jeans_wavenumber, in_plasma, jeans_wavenumber, matter_mass
 from twofluid.products.table import column, make_table
 from twofluid.universe.constants import SPEED_OF_LIGHT
 
 MAP_START = 1e4  # highest redshift of the map of verdicts, if the caller says nothing
 MAP_ROWS_PER_DECADE = 50  # of the map, in 1 + z: a row is thinner than a line of the figure
 
+DARK_PRESSURE = (
+    "has pressure: where it is smoother than the gas the ratio read off the run says nothing about the gas, and the "
+    "integrals hold where the smallest wavenumber on the plateau is well below dark_jeans_wavenumber"
+)
 KILOMETRES_PER_SECOND = SPEED_OF_LIGHT / 1e3  # of the speed of light
 
 
@@ -55,7 +59,8 @@ def scales_table(history, redshift=None, mass_radius=HALF_WAVELENGTH):
         plasma_sound_speed, gas_sound_speed [km/s]; gas_temperature [K]; silk_wavenumber, jeans_wavenumber [1/Mpc],
         jeans_length [Mpc], jeans_mass [solMass]; filtering_wavenumber, filtering_wavenumber_two_fluids,
         filtering_wavenumber_measured, smoothed_wavenumber [1/Mpc], and filtering_mass,
-        filtering_mass_two_fluids, filtering_mass_measured [solMass].
+        filtering_mass_two_fluids, filtering_mass_measured [solMass]. Where the dark matter has pressure also
+        dark_sound_speed [km/s] and dark_jeans_wavenumber [1/Mpc], and a caution in the header.
     """
     redshift = history.redshift if redshift is None else np.asarray(redshift, dtype=float)
     filtered = filtering(history, redshift)
@@ -65,6 +70,9 @@ def scales_table(history, redshift=None, mass_radius=HALF_WAVELENGTH):
         *_filtering_columns(history.universe, filtered, mass_radius),
     ]
     reason = {"filtering": f"empty: {filtered.reason}"} if filtered.reason else {}
+    if history.theta_dark is not None:
+        columns += _dark_columns(history.universe, redshift)
+        reason["dark_matter"] = DARK_PRESSURE
     return make_table(history, columns, mass_radius=mass_radius, **reason)
 
 
@@ -84,6 +92,14 @@ def _smooth_columns(universe, redshift, mass_radius):
         column("jeans_wavenumber", jeans),
         column("jeans_length", 2.0 * np.pi / jeans),
         column("jeans_mass", matter_mass(universe, jeans, mass_radius)),
+    ]
+
+
+def _dark_columns(universe, redshift):
+    speed = universe.dark_sound_speed(1.0 / (1.0 + redshift))
+    return [
+        column("dark_sound_speed", speed * KILOMETRES_PER_SECOND),
+        column("dark_jeans_wavenumber", dark_jeans_wavenumber(universe, redshift)),
     ]
 
 

@@ -16,7 +16,7 @@ from twofluid.universe.constants import SPEED_OF_LIGHT
 KILOMETRES_PER_SECOND = SPEED_OF_LIGHT / 1e3  # of the speed of light
 HALF, MOST = 0.5, 0.9  # of the variance of the velocity
 VELOCITY_FRAME = (
-    "proper velocity of baryons relative to dark matter, |theta_baryon|/k in the frame at rest with the dark matter, "
+    "proper velocity of baryons relative to dark matter, |theta_baryon|/k in the frame at rest with dark matter, "
     f"from wavenumbers of {SMALLEST:g} to {LARGEST:g} 1/Mpc"
 )
 AVERAGE = "an empty velocity: average over all patches, Maxwellian; every power is an average over directions"

@@ -7,12 +7,26 @@ from dataclasses import asdict
 import numpy as np
 
 from twofluid.quantities import QUANTITIES
+from twofluid.scenario import mixture_lines, thermal_sentence
 
 FRAME = (
     "synchronous, at rest with the dark matter (without dark matter: carried by massless dust); "
     "amplitudes per unit comoving curvature, signed so that densities grow positive"
 )
+FRAME_OF_DUST = (
+    "synchronous, carried by cold dust without mass: the dark matter, since it has pressure, moves against it as the "
+    "baryons do; amplitudes per unit comoving curvature, signed so that densities grow positive"
+)
 NO_DARK_MATTER = "this universe has no dark matter; whatever is measured against it is empty"
+MIXTURE = (
+    "initial modes other than the adiabatic one alone: amplitudes are not per unit comoving curvature but per square "
+    "root of the primordial power amplitude (k/pivot)^(tilt - 1)"
+)
+INDEPENDENT = (
+    "its parts follow independent random fields: delta_dark is the rms of them all and any other amplitude X is "
+    "<X delta_dark>/rms(delta_dark), so that delta_baryon/delta_dark is cross-power over power of the dark matter "
+    "(without dark matter the baryons take its place); growth, spheres and shortfall take the rms of each fluid"
+)
 NO_CERTIFICATE = "none: the numerical error of this run was not estimated"
 _BLANKS = {"b": False, "U": ""}  # under the mask of a column of true and false, or of words; NaN for numbers
 LANDMARK_DIGITS = 6  # significant, of a landmark in a header; the physics behind is good to four or five
@@ -127,7 +141,8 @@ def header(history):
     Returns
     -------
     dict
-        Program and version, scenario, what was assumed, closure, frame, landmarks, certificate, warnings.
+        Program and version, scenario, what was assumed, closure, frame, landmarks, certificate, warnings, and
+        where there is one the late history of the gas.
     """
     from twofluid import __version__
 
@@ -137,11 +152,16 @@ def header(history):
         "scenario": history.scenario.to_mapping(),
         "assumed": list(history.scenario.assumptions()),
         "closure": history.scenario.method.closure,
-        "frame": FRAME,
-        "landmarks": {name: _rounded(name, value) for name, value in landmarks.items()},
+        "frame": FRAME if history.theta_dark is None else FRAME_OF_DUST,
+        "landmarks": {name: _rounded(name, value) for name, value in landmarks.items() if value is not None},
         "certificate": NO_CERTIFICATE if history.certificate is None else history.certificate.sentence(),
         "warnings": list(history.warnings),
     }
+    if sentence := thermal_sentence(history.scenario.cosmology):
+        provenance["gas"] = sentence
+    if mixture := mixture_lines(history.scenario.primordial):
+        independent = [INDEPENDENT] if len(history.parts) > 1 else []
+        provenance["mixture"] = [MIXTURE, *independent, *mixture]
     if not history.has_dark_matter:
         provenance["no_dark_matter"] = NO_DARK_MATTER
     return provenance

@@ -60,9 +60,19 @@ class Entry:
         """Make an entry of this mapping that stands nowhere in the text."""
         return Entry(content, path_in(self.key, name), self.file, self.line)
 
+    def at(self, path):
+        """Find the entry at a dotted path below; one that stands nowhere, the last of them, if it was not written."""
+        entry = self
+        for name in path.split("."):
+            inner = entry.content.get(name) if isinstance(entry.content, dict) else None
+            if inner is None:
+                return entry.child(name, None)
+            entry = inner
+        return entry
 
-def text_of_file(path, name, asked=None):
-    """Read the text of a scenario file.
+
+def text_of_file(path, name, asked=None, remedy=None):
+    """Read the text of a scenario file, or of a table beside it.
 
     Parameters
     ----------
@@ -72,6 +82,8 @@ def text_of_file(path, name, asked=None):
         What messages call it.
     asked : Entry, optional
         The entry that names the file; it is to blame if there is none to read.
+    remedy : str, optional
+        What to do about a file that is too large, if it is no scenario.
 
     Returns
     -------
@@ -94,7 +106,7 @@ def text_of_file(path, name, asked=None):
         reason = getattr(error, "strerror", None) or str(error)
         raise _unreadable(name, asked, f"cannot be read ({reason})", "check name and permissions") from None
     if len(data) > LARGEST_SIZE:
-        raise too_large(name)
+        raise too_large(name, remedy)
     try:
         return data.decode("utf-8-sig")
     except UnicodeDecodeError as error:
@@ -155,13 +167,15 @@ def entry_from_plain(value, key=""):
         return Entry({name: entry_from_plain(item, path_in(key, name)) for name, item in names.items()}, key)
     if isinstance(value, list | tuple):
         return Entry(tuple(entry_from_plain(item, key) for item in value), key)
+    if isinstance(value, bool):
+        return Entry(str(value).lower(), key)
     return Entry(None if value is None else str(value), key)
 
 
-def too_large(file):
+def too_large(file, remedy=None):
     """Make the error for a file over the limit."""
     rule = f"is larger than {LARGEST_SIZE} bytes"
-    return ScenarioError(rule, "is it a scenario? Give long lists of wavenumbers as a range", file)
+    return ScenarioError(rule, remedy or "is it a scenario? Give long lists of wavenumbers as a range", file)
 
 
 class _Builder:

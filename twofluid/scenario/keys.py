@@ -15,6 +15,7 @@ MOST_REDSHIFTS = 1_000  # longest list of redshifts; the same reason
 MOST_FRACTIONS = 100  # longest list of fractions of one product; the same reason
 MOST_SPHERES = 100  # longest list of radii or masses of one product; the same reason
 MOST_VELOCITIES = 20  # longest list of streaming velocities; the same reason
+MOST_TABLE_ROWS = 5_000  # of a thermal history: smooth curves need a few dozen, and all of it goes into every header
 
 
 def section_of(path):
@@ -42,6 +43,8 @@ class Kind(Enum):
     QUANTITIES = "list of numbers with unit"
     WAVENUMBERS = "range, or list of numbers with unit"
     CHOICE = "one word of a few"
+    SWITCH = "true or false"
+    TABLE = "file name, or columns"
 
 
 @dataclass(frozen=True)
@@ -122,10 +125,25 @@ class Key:
         return name_of(self.path)
 
 
+ADIABATIC = "adiabatic"  # the initial mode that is there if nothing is said
+INITIAL_MODES = {  # the others, and what is one at the beginning where the amplitude is one
+    "baryon": "baryon density isocurvature; unit delta_b - 3/4 delta_gamma",
+    "dark_matter": "dark-matter density isocurvature; unit delta_c - 3/4 delta_gamma",
+    "compensated": "baryons denser where dark matter is thinner, matter uniform; unit delta_b - 3/4 delta_gamma",
+    "neutrino_density": "neutrinos denser where photons are thinner; unit 3/4 (delta_nu - delta_gamma)",
+    "neutrino_velocity": "neutrinos stream through the plasma; unit (theta_nu - theta_gamma)/k",
+}
+MIXTURE = "primordial.mixture"
+
 SECTIONS = {
     "cosmology": "the smooth universe",
     "cosmology.neutrinos": "neutrinos",
+    "cosmology.dark_matter": "pressure of the dark matter: c_s(z) = sound_speed ((1 + z)/(1 + at_redshift))^scaling",
+    "thermal": "gas temperature and electrons of a table in place of the computed ones, late in the history",
+    "reionization": "a simple step from neutral to ionized gas: hydrogen and the first electron of helium",
     "primordial": "primordial curvature perturbations, a power law in wavenumber",
+    MIXTURE: "initial modes; without this section the adiabatic one alone",
+    **{f"{MIXTURE}.{mode}": meaning for mode, meaning in INITIAL_MODES.items()},
     "sampling": "where the answer is wanted",
     "method": "how the answer is computed",
     "products": "which products to make: {} for none, lag if the section is left out",
@@ -137,6 +155,15 @@ SECTIONS = {
     "products.streaming": "velocity of baryons relative to dark matter, and what it does to growth on small scales",
 }
 
+# Sections on the late gas that ask for something only by being there, and what is done without them.
+GAS_SECTIONS = {
+    "thermal": "none, the gas is heated by Compton scattering alone",
+    "reionization": "none, the gas stays neutral but for what recombination leaves",
+}
+
+#: Sections whose keys are not filled in where the file does not have them.
+OPTIONAL_SECTIONS = tuple(path for path in SECTIONS if path.startswith(("products.", MIXTURE)))
+
 DEFAULT_PRODUCTS = ("lag",)  # made when the file has no section `products`
 
 _WAVENUMBER_LIMITS = Allowed(1e-4, 1e5)  # beyond the horizon to far below the Jeans length of the gas
@@ -144,6 +171,21 @@ _RADIUS_LIMITS = Allowed(1e-5, 1e4)  # [Mpc]; one over the wavenumbers
 _MASS_LIMITS = Allowed(1e-4, 1e23)  # [solMass]; what such spheres hold in a universe like ours
 _REDSHIFT_LIMITS = Allowed(0, 1e6)  # what a run tabulates
 _TOO_MANY_SPHERES = "more spheres are not tabulated in one run"
+
+
+def _mode_keys(mode):
+    """Return the rows of one initial mode beside the adiabatic one."""
+    return (
+        Key(f"{MIXTURE}.{mode}.ratio", Kind.NUMBER,
+            "rms amplitude at the pivot over the square root of primordial.amplitude; 0 leaves the mode out",
+            allowed=Allowed(0, 1e6), required=True, example="0.1"),
+        Key(f"{MIXTURE}.{mode}.correlation", Kind.NUMBER,
+            "with the random field of the adiabatic mode; positive where denser places have an excess",
+            allowed=Allowed(-1, 1), default=0.0, example="0"),
+        Key(f"{MIXTURE}.{mode}.tilt", Kind.NUMBER, "exponent n of its power",
+            allowed=Allowed(-3, 5), unsaid="that of primordial.tilt", example="0.965"),
+    )  # fmt: skip
+
 
 KEYS = (
     Key("title", Kind.TEXT, "name of the scenario, for tables and figures",
@@ -174,12 +216,49 @@ KEYS = (
         "masses of up to three neutrinos, which share the effective number equally; those not named have none",
         unit="eV", allowed=Allowed(0, 10), default=(), unsaid="[]", example="[0.06 eV]",
         shortest=0, longest=3, repeats=True, longest_reason="three species share the effective number"),
+    Key("cosmology.dark_matter.sound_speed", Kind.QUANTITY, "effective sound speed of the dark matter; 0 is cold",
+        unit="km/s", allowed=Allowed(0, 29979), default=0.0, example="0 km/s"),  # up to a tenth of c: still matter
+    Key("cosmology.dark_matter.at_redshift", Kind.NUMBER, "redshift at which that sound speed is given",
+        allowed=Allowed(0, 1e6), default=0.0, example="0"),
+    # Momenta of free particles fall as 1 + z; sound speeds at the photons' temperature as its root.
+    Key("cosmology.dark_matter.scaling", Kind.NUMBER,
+        "power of 1 + z with which it changes: 1 for free particles, 0.5 for those heated by photons",
+        allowed=Allowed(0, 1), default=1.0, example="1"),
+    Key("thermal.table", Kind.TABLE,
+        "ECSV file beside this one with the columns below, or these columns; from z = 0, no gap of 0.5 in ln(1 + z)",
+        required=True, longest=MOST_TABLE_ROWS, example="heating.ecsv"),
+    Key("thermal.table.redshift", Kind.NUMBERS, "redshift of each row, rising or falling",
+        allowed=Allowed(0, 1000), required=True, longest=MOST_TABLE_ROWS,
+        example="[0, 0.6, 1.5, 3, 5.5, 9, 14, 21, 33]"),
+    Key("thermal.table.gas_temperature", Kind.QUANTITIES, "temperature of the gas, its logarithm interpolated",
+        unit="K", allowed=Allowed(0, 1e9, low_open=True), required=True, longest=MOST_TABLE_ROWS,
+        example="[8000 K, 9000 K, 11000 K, 12000 K, 9500 K, 500 K, 60 K, 15 K, 22 K]"),
+    Key("thermal.table.electron_fraction", Kind.NUMBERS, "free electrons per hydrogen nucleus, helium's included",
+        allowed=Allowed(0, 10, low_open=True), required=True, longest=MOST_TABLE_ROWS,
+        example="[1.08, 1.07, 1.06, 1.05, 0.9, 0.1, 0.01, 5e-4, 2e-4]"),
+    Key("thermal.below_redshift", Kind.NUMBER, "redshift below which the table is used",
+        allowed=Allowed(1, 600), required=True, example="30"),
+    Key("thermal.joining_width", Kind.NUMBER,
+        "stretch of ln(1 + z), down from that redshift, over which the computed history passes into the table",
+        allowed=Allowed(0.02, 1), default=0.1, example="0.1"),
+    Key("reionization.redshift", Kind.NUMBER, "redshift at which half of the hydrogen is ionized",
+        allowed=Allowed(2, 100), required=True, example="7.7"),
+    Key("reionization.width", Kind.NUMBER,
+        "w of the step (1 + tanh((z_re - z)/w))/2 in redshift; at least 0.02 (1 + z_re), at most z_re/4",
+        allowed=Allowed(0.06, 25), required=True, example="0.5"),
+    Key("reionization.gas_temperature", Kind.QUANTITY, "temperature the step brings the gas to, and keeps it at",
+        unit="K", allowed=Allowed(1, 1e6), example="1e4 K",
+        unsaid="no heat from ionizing light: Compton heating and expansion, or the table"),
     Key("primordial.amplitude", Kind.NUMBER, "power of the curvature perturbations at the pivot",
         allowed=Allowed(0, 1, low_open=True), default=2.1e-9, example="2.1e-9"),
     Key("primordial.tilt", Kind.NUMBER, "exponent n of the power law, 1 for equal power on all scales",
         allowed=Allowed(-3, 5), default=0.965, example="0.965"),
     Key("primordial.pivot", Kind.QUANTITY, "wavenumber at which the amplitude is given",
         unit=WAVENUMBER_UNIT, allowed=Allowed(1e-6, 1e6), default=0.05, example="0.05 1/Mpc"),
+    Key(f"{MIXTURE}.{ADIABATIC}", Kind.NUMBER,
+        "rms amplitude of the adiabatic mode over the square root of the primordial power; 0 leaves it out",
+        allowed=Allowed(0, 1e6), default=1.0, example="1"),
+    *(key for mode in INITIAL_MODES for key in _mode_keys(mode)),
     Key("sampling.wavenumbers", Kind.WAVENUMBERS, "comoving wavenumbers, as a range or one by one",
         unit=WAVENUMBER_UNIT, allowed=_WAVENUMBER_LIMITS, required=True, longest=MOST_WAVENUMBERS,
         longest_reason="more modes are not solved in one run", example="[0.1 1/Mpc, 1 1/Mpc]"),
@@ -200,6 +279,9 @@ KEYS = (
     Key("method.accuracy", Kind.CHOICE,
         "step and chain settings: numerical error of the contrasts below 3e-3, 3e-4 or 5e-5",
         choices=("draft", "standard", "reference"), default="standard", example="standard"),
+    Key("method.ionization_fluctuations", Kind.SWITCH,
+        "recombination responds to density and temperature: electron fraction contrasts (kinetic closure)",
+        default=False, example="false"),
     Key("products.lag.fractions", Kind.NUMBERS,
         "ratios of baryon to dark-matter amplitude whose redshift is wanted",
         allowed=Allowed(0, 1, low_open=True, high_open=True), default=(0.5, 0.9, 0.95, 0.99),

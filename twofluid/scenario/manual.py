@@ -1,9 +1,12 @@
 """What the manual says about scenario files: the commented template and the table of keys."""
 
-from .keys import BASE, KEYS, SECTIONS, Kind, keys_under, name_of, sections_under
+from .keys import BASE, GAS_SECTIONS, KEYS, MIXTURE, SECTIONS, Kind, keys_under, name_of, sections_under
 
 INDENT = "  "  # one level of the template
+TABLE_SECTION = "thermal.table"  # another one
 RANGE_SECTION = "sampling.wavenumbers"  # the key whose value may be a mapping; the template shows that form
+_REQUIRED_IN = {RANGE_SECTION: "required in a range", TABLE_SECTION: "required among columns"}
+_REQUIRED_IN |= dict.fromkeys(GAS_SECTIONS, "required if the section is there")
 
 _HEADING = """\
 # A scenario: the whole request in one file. Quantities carry units, in any notation astropy.units reads.
@@ -51,9 +54,18 @@ def _section_lines(section, depth):
     for key in keys_under(section):
         lines += _key_lines(key, depth)
     for inner in sections_under(section):
-        lines += ["", f"{INDENT * depth}# {SECTIONS[inner]}", f"{INDENT * depth}{name_of(inner)}:"]
-        lines += _section_lines(inner, depth + 1)
+        margin, optional, switch = INDENT * depth, inner in GAS_SECTIONS, _switch(inner)
+        lines += ["", f"{margin}# {SECTIONS[inner]}"]
+        lines += [f"{margin}#   without this section: {GAS_SECTIONS[inner]}"] if optional else []
+        section = [f"{margin}{switch}{name_of(inner)}:", *_section_lines(inner, depth + 1)]
+        lines += map(_commented, section) if optional else section
     return lines
+
+
+def _commented(line):
+    """Make a line of the template a comment, at its own margin."""
+    text = line.lstrip()
+    return line if text.startswith("#") or not text else line.removesuffix(text) + "# " + text
 
 
 def _key_lines(key, depth):
@@ -65,9 +77,19 @@ def _key_lines(key, depth):
         parts = [line for part in keys_under(key.path) for line in _key_lines(part, depth + 1)]
         alternative = f"{margin}#   one by one: {key.name}: {key.example}; as a range:"
         return [*comments, alternative, f"{margin}{key.name}:", *parts]
+    if key.path == TABLE_SECTION:
+        parts = [line for part in keys_under(key.path) for line in _key_lines(part, depth + 1)]
+        alternative = f"{margin}#   as a file: {key.name}: {key.example}; as columns:"
+        return [*comments, alternative, f"{margin}{key.name}:", *parts]
     # A key whose default is not its example is shown commented out: the value would change the meaning.
-    switch = "# " if (key.default is None or key.unsaid) and not key.required and key.kind is not Kind.TEXT else ""
+    open_default = (key.default is None or key.unsaid) and not key.required and key.kind is not Kind.TEXT
+    switch = "# " if open_default else _switch(key.section)
     return [*comments, f"{margin}{switch}{key.name}: {key.example}"]
+
+
+def _switch(section):
+    """Return what comments out a section that changes the meaning by being there."""
+    return "# " if section.startswith(MIXTURE) else ""
 
 
 def _value_text(key):
@@ -78,7 +100,7 @@ def _allowed_text(key):
     parts = [str(key.allowed)] if key.allowed else []
     if key.choices:
         parts.append(" or ".join(key.choices))
-    if key.kind in (Kind.NUMBERS, Kind.QUANTITIES, Kind.WAVENUMBERS):
+    if key.kind in (Kind.NUMBERS, Kind.QUANTITIES, Kind.WAVENUMBERS, Kind.TABLE):
         parts.append(f"at most {key.longest} entries" if key.longest else "only []")
     return ", ".join(parts)
 
@@ -90,6 +112,6 @@ def _default_text(key):
 
 
 def _default_cell(key):
-    if key.section == RANGE_SECTION:
-        return "required in a range"
+    if key.section in _REQUIRED_IN and key.required:
+        return _REQUIRED_IN[key.section]
     return _default_text(key).removeprefix("default: ")

@@ -2,7 +2,7 @@
 
 from difflib import get_close_matches
 
-from .keys import BASE, DEFAULT_PRODUCTS, KEY_AT, SECTIONS, name_of, names_under, section_of
+from .keys import BASE, DEFAULT_PRODUCTS, KEY_AT, MIXTURE, SECTIONS, name_of, names_under, section_of, sections_under
 
 
 def checked_names(section, entry):
@@ -42,6 +42,7 @@ def _unknown(section, name):
     valid = names_under(section)
     place = f"in `{section}`" if section else "at the top"
     homes = [section_of(path) or "the top" for path in (BASE.path, *KEY_AT, *SECTIONS) if name_of(path) == name]
+    homes = [home for home in homes if home not in sections_under(MIXTURE)] or homes  # they all have the same
     if homes:
         return f"does not belong {place}", f"move it to {' or '.join(homes)}"
     close = get_close_matches(name, valid, n=1)

@@ -4,12 +4,34 @@ from dataclasses import replace
 from os import fsdecode
 from pathlib import Path
 
+from .attached import with_tables
 from .document import entry_from_plain, entry_from_text
-from .errors import printable
+from .errors import ScenarioError, printable
 from .family import read_document, refuse_base
-from .keys import DEFAULT_PRODUCTS, keys_under, name_of, sections_under
+from .keys import (
+    ADIABATIC,
+    DEFAULT_PRODUCTS,
+    GAS_SECTIONS,
+    MIXTURE,
+    OPTIONAL_SECTIONS,
+    keys_under,
+    name_of,
+    sections_under,
+)
+from .mixture import Mixture, Share, check_mixture
 from .names import checked_names
-from .request import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
+from .request import (
+    Cosmology,
+    DarkMatter,
+    Method,
+    Neutrinos,
+    Primordial,
+    Reionization,
+    Sampling,
+    Scenario,
+    ThermalTable,
+)
+from .thermal import refuse_faults
 from .values import read_value
 
 UNTITLED = "untitled"  # title of a scenario that has neither a title nor a file
@@ -35,7 +57,7 @@ def read_scenario(path):
     """
     name = fsdecode(path)
     return _scenario(
-        read_document(path, name), title=printable(Path(name).stem).strip() or UNTITLED, source=name
+        with_tables(read_document(path, name)), title=printable(Path(name).stem).strip() or UNTITLED, source=name
     )
 
 
@@ -89,17 +111,47 @@ def _scenario(entry, title, source):
     _read_section("", entry, values, assumed)
     if values["title"] is None:
         values["title"] = title
-    neutrinos = Neutrinos(**_pick(values, "cosmology.neutrinos"))
-    return Scenario(
+    scenario = Scenario(
         title=values["title"],
-        cosmology=Cosmology(**_pick(values, "cosmology"), neutrinos=neutrinos),
-        primordial=Primordial(**_pick(values, "primordial")),
+        cosmology=_cosmology(values),
+        primordial=Primordial(**_pick(values, "primordial"), mixture=_mixture(values)),
         sampling=Sampling(**_pick(values, "sampling")),
         products={name: _pick(values, f"products.{name}") for name in entry.content["products"].content},
         assumed=tuple(assumed),
         source=source,
         method=Method(**_pick(values, "method")),
     )
+    refuse_faults(entry, scenario)
+    try:
+        check_mixture(scenario)
+    except ScenarioError as problem:
+        raise entry.at(problem.key).error(problem.rule, problem.remedy) from None
+    return scenario
+
+
+def _cosmology(values):
+    inner = {
+        "neutrinos": Neutrinos(**_pick(values, "cosmology.neutrinos")),
+        "dark_matter": DarkMatter(**_pick(values, "cosmology.dark_matter")),
+    }
+    if "thermal.table" in values:
+        options = _pick(values, "thermal")
+        inner["thermal"] = ThermalTable(**options.pop("table"), **options)
+    if "reionization.redshift" in values:
+        inner["reionization"] = Reionization(**_pick(values, "reionization"))
+    return Cosmology(**_pick(values, "cosmology"), **inner)
+
+
+def _mixture(values):
+    """Make the mixture of initial modes, None where the file has none."""
+    if f"{MIXTURE}.{ADIABATIC}" not in values:
+        return None
+    shares = {
+        name_of(section): Share(**_pick(values, section))
+        for section in sections_under(MIXTURE)
+        if all(key.path in values for key in keys_under(section))
+    }
+    return Mixture(**_pick(values, MIXTURE), **shares)
 
 
 def _with_products(entry):
@@ -130,7 +182,11 @@ def _read_section(section, entry, values, assumed):
             assumed.append(key.path)
     for inner in sections_under(section):
         name = name_of(inner)
-        if name in names or section != "products":
+        if inner in GAS_SECTIONS and (name not in names or names[name].cleared):
+            assumed.append(inner)
+        elif inner in GAS_SECTIONS and names[name].content == {}:
+            continue  # none, as the file says
+        elif name in names or inner not in OPTIONAL_SECTIONS:
             _read_section(inner, names.get(name) or entry.child(name, {}), values, assumed)
 
 

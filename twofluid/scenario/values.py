@@ -8,7 +8,7 @@ from itertools import pairwise
 from math import isclose, isfinite
 
 from .errors import shortened
-from .keys import KEY_AT, Kind
+from .keys import KEY_AT, Kind, keys_under
 from .spacing import intervals, spaced_wavenumbers
 
 ROUNDING = 1e-12  # relative slack at the ends of a range, for values that were converted to another unit
@@ -16,6 +16,7 @@ LONGEST_UNIT = 60  # characters; no unit in use is longer
 
 _QUANTITY = re.compile(r"\s*([-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?)\s*(.*?)\s*", re.DOTALL)
 _SECOND_NUMBER = re.compile(r"[-+.\d]")
+_SWITCH = {"true": True, "false": False}
 _ONE_OVER = re.compile(r"1\s*/")
 _LITTLE_H = re.compile(r"(?<![A-Za-z])(?:little)?h(?![A-Za-z])|hMpc|Mpch")
 
@@ -120,7 +121,30 @@ def _read_quantities(entry, key):
     return _read_list(entry, key, _read_quantity)
 
 
-def _read_list(entry, key, read_item):
+def _read_switch(entry, key):
+    if entry.content not in _SWITCH or entry.quoted:
+        raise entry.error("must be true or false", f"write for example {key.example}")
+    return _SWITCH[entry.content]
+
+
+def _read_table(entry, key):
+    """Return the columns by name, as they stand; `thermal.py` has the rules on the rows."""
+    if isinstance(entry.content, str):
+        rule = "can name a file only in a scenario that is a file: there is no directory to look in"
+        raise entry.error(rule, "write the columns out, or read the scenario from a file")
+    if not isinstance(entry.content, dict):
+        raise entry.error("must be a file name or columns", f"write for example {key.example}")
+    parts = keys_under(key.path)
+    return {part.name: _read_column(entry.content[part.name], part) for part in parts}
+
+
+def _read_column(entry, key):
+    _refuse_nothing(entry, key.example)
+    read_item = _read_quantity if key.kind is Kind.QUANTITIES else _read_number
+    return _read_list(entry, key, read_item, repetition=True)
+
+
+def _read_list(entry, key, read_item, repetition=False):
     if not isinstance(entry.content, tuple):
         raise entry.error("must be a list", f"write for example {key.example}")
     if len(entry.content) > key.longest:
@@ -129,7 +153,7 @@ def _read_list(entry, key, read_item):
     if len(entry.content) < key.shortest:
         raise entry.error("must not be an empty list", f"write for example {key.example}")
     values = tuple(read_item(item, key) for item in entry.content)
-    if not key.repeats:
+    if not (repetition or key.repeats):
         _refuse_repetition(values, entry.content)
     return values
 
@@ -201,4 +225,6 @@ _READERS = {
     Kind.QUANTITIES: _read_quantities,
     Kind.WAVENUMBERS: _read_wavenumbers,
     Kind.CHOICE: _read_choice,
+    Kind.SWITCH: _read_switch,
+    Kind.TABLE: _read_table,
 }

@@ -88,12 +88,15 @@ def follow_patches(
     intervals = _intervals(run, largest * float(rms_velocity(1.0 / (1.0 + start))))
     for number in np.unique(intervals) if len(later) else ():
         some = np.flatnonzero(intervals == number)
-        patch = _Patch(run, some, redshift[later], rms_velocity)
+        patches = [_Patch(part, some, redshift[later], rms_velocity) for part in run.parts]
         grid = component_grid(finer * number, largest)
         fine, coarse = (
-            _averages(patch.solve(grid[::coarser], coarser / finer, counts), grid[::coarser], velocities, patch.weights)
+            _averages(
+                [patch.solve(grid[::coarser], coarser / finer, counts) for patch in patches],
+                grid[::coarser], velocities, patches[0].weights,
+            )
             for coarser in (1, COARSER)
-        )
+        )  # fmt: skip
         told[:, some[:, None], later] = [*fine, np.abs(fine - coarse).max(axis=0)]
     *ratios, error = told
     with np.errstate(invalid="ignore"):
@@ -108,10 +111,9 @@ def _intervals(run, velocity):
     return np.array(numbers)[np.searchsorted(limits, reach)]
 
 
-def _averages(amplitudes, grid, velocities, shares):
-    """Power over that without wind, shape (fluid, mode, redshift, velocity), of the amplitudes on a grid."""
-    matter = np.tensordot(shares, amplitudes, axes=1)
-    power = np.abs([*amplitudes, matter]) ** 2
+def _averages(parts, grid, velocities, shares):
+    """Power over that without wind, shape (fluid, mode, redshift, velocity), of amplitudes on a grid, part by part."""
+    power = sum(np.abs([*amplitudes, np.tensordot(shares, amplitudes, axes=1)]) ** 2 for amplitudes in parts)
     weights = np.vstack([direction_weights(grid, velocities), patch_weights(grid)])
     return np.einsum("fmzc,vc->fmzv", power, weights) / power[..., :1]
 

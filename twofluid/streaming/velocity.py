@@ -1,8 +1,9 @@
 """The streaming velocity: how fast baryons move through the dark matter, and over which distance together.
 
-In the frame of a run, at rest with the dark matter, the velocity of the baryons is the relative one:
-``|v| = |theta_baryon|/k`` per unit curvature, by conformal time, which is the proper peculiar velocity in units of c
-(comoving way by conformal time and proper way by cosmic time differ by the same factor a). Its variance is
+In the frame of a run, at rest with cold dark matter, the velocity of the baryons is the relative one (where dark
+matter has pressure and moves, its own is taken off): ``|v| = |theta_baryon|/k`` per unit curvature, by conformal time,
+which is the proper peculiar velocity in units of c (comoving way by conformal time and proper way by cosmic time
+differ by the same factor a). Its variance is
 
     sigma^2 = int dlnk P_R(k) |theta_baryon/k|^2,    P_R the power of the primordial curvature in ln k.
 
@@ -130,12 +131,18 @@ def find_wind(run: History, redshift) -> Wind:
     redshift = np.asarray(redshift, dtype=float)
     primordial = run.scenario.primordial
     power = primordial.amplitude * (k / primordial.pivot) ** (primordial.tilt - 1.0)
-    spectrum = power[:, None] * (run.at("theta_baryon", redshift) / k[:, None]) ** 2
+    spectrum = power[:, None] * sum((_relative(part, redshift) / k[:, None]) ** 2 for part in run.parts)
     variance = _integral(k, spectrum)
     coarse = _integral(k[::2], spectrum[::2])
     missing = _beyond(k, spectrum, (0, 2)) + _beyond(k, spectrum, (-1, -3)) + np.abs(coarse - variance)
     rms = np.sqrt(variance)
     return Wind(k, redshift, spectrum, rms, missing / (2.0 * rms))
+
+
+def _relative(run, redshift):
+    """Velocity divergence of baryons relative to dark matter, shape (mode, redshift) [1/Mpc]."""
+    theta = run.at("theta_baryon", redshift)
+    return theta if run.theta_dark is None else theta - run.at("theta_dark", redshift)
 
 
 def _integral(k, values, axis=0):

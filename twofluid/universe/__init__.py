@@ -4,6 +4,7 @@ from .conditions import Conditions
 from .errors import UniverseError
 from .landmarks import Landmarks
 from .many import UniverseStack, build_universes
+from .response import Response
 from .universe import Universe
 
-__all__ = ["Conditions", "Landmarks", "Universe", "UniverseError", "UniverseStack", "build_universes"]
+__all__ = ["Conditions", "Landmarks", "Response", "Universe", "UniverseError", "UniverseStack", "build_universes"]

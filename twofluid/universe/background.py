@@ -6,6 +6,7 @@ from .errors import UniverseError
 from .expansion import Expansion
 from .gas import Baryons
 from .ionization import Ionization
+from .thermal import HeatedGas
 
 
 @dataclass(frozen=True)
@@ -16,12 +17,16 @@ class Background:
     ----------
     expansion : Expansion
     baryons : Baryons
-    ionization : Ionization
+    computed : Ionization
+        As recombination and Compton scattering make it.
+    ionization : Ionization or HeatedGas
+        The same, changed as the cosmology asks for.
     """
 
     expansion: Expansion
     baryons: Baryons
-    ionization: Ionization
+    computed: Ionization
+    ionization: Ionization | HeatedGas
 
 
 def solve_backgrounds(cosmologies):
@@ -48,4 +53,15 @@ def solve_backgrounds(cosmologies):
         for cosmology in cosmologies
     ]
     ionizations = Ionization.together(expansions, baryons)
-    return [Background(*parts) for parts in zip(expansions, baryons, ionizations, strict=True)]
+    parts = zip(cosmologies, expansions, baryons, ionizations, strict=True)
+    return [_background(index, *one) for index, one in enumerate(parts)]
+
+
+def _background(index, cosmology, expansion, baryons, computed):
+    if cosmology.thermal is None and cosmology.reionization is None:
+        return Background(expansion, baryons, computed, computed)
+    try:
+        return Background(expansion, baryons, computed, HeatedGas(expansion, baryons, computed, cosmology))
+    except UniverseError as error:
+        error.index = index
+        raise

@@ -70,8 +70,13 @@ class ConditionsTable:
     Parameters
     ----------
     expansion : Expansion
-    ionization : Ionization
+    ionization : Ionization or HeatedGas
     baryons : Baryons
+
+    Attributes
+    ----------
+    scale_factor : array, shape (node,)
+        At the nodes of the table [unitless].
     """
 
     PARTS = ("frame", "contents", "baryons")  # attributes that hold its numbers
@@ -81,7 +86,7 @@ class ConditionsTable:
         earliest = float(expansion.conformal_time(EARLIEST_TABLE_SCALE_FACTOR))
         latest = float(expansion.conformal_time(1.0))
         log_time = np.linspace(np.log(earliest), np.log(latest), TABLE_INTERVALS + 1)
-        a = expansion.scale_factor(np.minimum(np.exp(log_time), latest))
+        self.scale_factor = a = expansion.scale_factor(np.minimum(np.exp(log_time), latest))
         electrons, lag = ionization.state(a)
         step = (log_time[-1] - log_time[0]) / TABLE_INTERVALS
         self.rows = UniformCubic(log_time[0], step, np.stack([np.log(a), np.log(electrons), lag])).rows
@@ -117,6 +122,30 @@ class ConditionsStack:
         """
         first_row, parts = owner * TABLE_INTERVALS, self._parts.pick(owner)
         return lambda conformal_time: _look_up(conformal_time, owner.shape, self._rows, first_row, *parts)
+
+
+class FurtherFields:
+    """Further functions on the nodes of the tables of one universe or several, for what few ask for.
+
+    Parameters
+    ----------
+    tables : sequence of ConditionsTable
+    values : sequence of array, shape (field, node)
+        The functions, one array a table.
+    """
+
+    def __init__(self, tables, values):
+        self._rows = np.concatenate([UniformCubic(0.0, 1.0, one).rows for one in values])
+        self._frames = SideBySide([table.frame for table in tables])
+
+    def __call__(self, conformal_time, owner=0):
+        """Values at `conformal_time`, any shape, its last axis one column for each `owner`: a list of arrays.
+
+        Times have to lie in the table of their universe.
+        """
+        (frame,) = self._frames.pick(owner)
+        place = (np.log(conformal_time) - frame.start) * frame.per_step
+        return evaluate_rows(self._rows, place, TABLE_INTERVALS, owner * TABLE_INTERVALS)
 
 
 def _look_up(conformal_time, columns, rows, first_row, frame, contents, baryons):

@@ -87,11 +87,6 @@ class Baryons:
         return self._unit_pressure * temperature * ((1.0 + self.helium_per_hydrogen) + electron_fraction)
 
 
-def adiabatic_factor(temperature_slope):
-    """c_s^2 over k T/(mu m_H), from d ln T/d ln a: 1 - slope/3 [unitless]."""
-    return 1.0 - temperature_slope / 3.0
-
-
 def plasma_sound_speed(momentum_ratio):
     """Sound speed of photons and baryons tied together, 1/sqrt(3 (1 + R)) [c]; R = 3 rho_b/(4 rho_gamma)."""
     return (3.0 * (1.0 + momentum_ratio)) ** -0.5

@@ -10,7 +10,7 @@ _BESIDE_END = np.array([-3.0, -10.0, 18.0, -6.0, 1.0]) / 12.0
 _LAGRANGE_NODES = 8  # about each point: the order of `interpolate_smooth`
 
 
-def _slopes(values):
+def slopes_per_step(values):
     """Return the derivative per grid step along the last axis, to fourth order everywhere."""
     slope = np.empty_like(values)
     slope[..., 2:-2] = (
@@ -46,7 +46,7 @@ class UniformCubic:
 
     def __init__(self, start, step, values):
         values = np.asarray(values, dtype=float)
-        slope = _slopes(values)
+        slope = slopes_per_step(values)
         self.start, self.step, self.intervals = start, step, values.shape[-1] - 1
         self.rows = np.empty((self.intervals, 4 * len(values)))
         self.rows.reshape(self.intervals, 4, -1)[:] = np.array(

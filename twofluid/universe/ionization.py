@@ -34,6 +34,8 @@ STEP = 5.0e-3  # of the table in ln a: good to 1e-7, at the end of helium recomb
 SOLUTION_STEPS = 320  # from the departure from Saha equilibrium to today: good to 2e-8, see the tests
 EQUILIBRIUM_NEUTRALS = 1.0e-7  # neutral hydrogen up to which Saha stands in: it errs by less than that
 RECOMBINATION_FACTOR = 1.125  # on the case-B coefficient; later work with SSS 2000's atom, from memory
+RESPONSIVE_NEUTRALS = 1.0e-5  # neutral hydrogen from which on electrons respond: their contrast is smaller before
+RESPONSE_STEP = 1.0e-4  # of the logarithms in the difference quotients: good to 1e-8
 _GRADING = 3.2  # of the steps: the last is cosh of it, twelve times, as long as the first
 _NEWTON_STEPS = 25  # for the Saha charge balance: 6 suffice, unless hydrogen is a trace
 _BALANCED = 1.0e-9  # last Newton change of the balance per electron; the one it spares would be about its square
@@ -67,7 +69,7 @@ class Ionization:
     """
 
     def __init__(self, expansion, baryons, recombination_factor=RECOMBINATION_FACTOR, table=None):
-        self._expansion, self._baryons = expansion, baryons
+        self._expansion, self._baryons, self._factor = expansion, baryons, recombination_factor
         self._table = table or _solve([expansion], [baryons], recombination_factor)[0]
 
     @classmethod
@@ -101,6 +103,15 @@ class Ionization:
             electrons = np.where(early, full, electrons)
             lag = np.where(early, _early_lag(self._expansion, self._baryons, np.exp(log_a), full), lag)
         return electrons, lag
+
+    def heating(self, scale_factor):
+        """Heating beside Compton scattering, in units of thermal energy and expansion rate: none [unitless]."""
+        return np.zeros(np.shape(scale_factor))
+
+    def response(self, scale_factor):
+        """How the electrons respond to what surrounds them, shape as `scale_factor`; see `recombination_response`."""
+        a = np.asarray(scale_factor, dtype=float)
+        return recombination_response(self._expansion.contents, self._baryons, a, *self.state(a), self._factor)
 
 
 @dataclass(frozen=True)
@@ -238,10 +249,17 @@ class _Rates:
         """Return the derivatives by ln a, shape (2, ..., point) as `state`; `log_a` broadcasts against its rows."""
         a, ratio = np.exp(log_a), np.exp(state[0])
         rate = self._contents.conformal_hubble_rate(a)
-        protons, neutrals = 1.0 / (1.0 + ratio), ratio / (1.0 + ratio)
+        protons = 1.0 / (1.0 + ratio)
         temperature, density = self._gas(a, state[1])
         electrons = self._electrons(protons, temperature, density)
         second = rate / a * (SPEED_OF_LIGHT / MEGAPARSEC)  # expansion rate [1/s]
+        hydrogen = self._hydrogen(second, temperature, density, ratio, electrons)
+        compton = self._baryons.compton_rate(a, electrons) / rate
+        return np.stack([hydrogen, 1.0 - compton * np.expm1(state[1])])
+
+    def _hydrogen(self, second, temperature, density, ratio, electrons):
+        """Slope of ln(neutral over ionized) for an expansion rate [1/s], a temperature [K] and a density [1/m^3]."""
+        protons, neutrals = 1.0 / (1.0 + ratio), ratio / (1.0 + ratio)
         recombination = self._factor * case_b_coefficient(temperature)
         ionization = recombination * _saha(_HYDROGEN - _LYMAN_ALPHA, temperature, 1.0)  # from the n = 2 level
         # K n_1s: ground-state atoms over the rate at which Lyman-alpha photons are redshifted away [s]
@@ -249,12 +267,20 @@ class _Rates:
         inhibition = (1.0 + escape * TWO_PHOTON_RATE) / (1.0 + escape * (TWO_PHOTON_RATE + ionization))
         captures = recombination * density * electrons / neutrals
         releases = ionization * np.exp(-_LYMAN_ALPHA / temperature) / protons
-        compton = self._baryons.compton_rate(a, electrons) / rate
-        return np.stack([inhibition * (captures - releases) / second, 1.0 - compton * np.expm1(state[1])])
+        return inhibition * (captures - releases) / second
 
     def electrons(self, log_a, state):
         """Electrons per hydrogen nucleus, with singly ionized helium in Saha equilibrium, shape (point,)."""
         return self._electrons(1.0 / (1.0 + np.exp(state[0])), *self._gas(np.exp(log_a), state[1]))
+
+    def shrinking(self, a, lag, moves, ratio):
+        """D ln(proton fraction)/d ln a of gas changed by factors exp(moves) in density, temperature, expansion rate."""
+        temperature, density = self._gas(a, lag)
+        temperature, density = temperature * np.exp(moves[1]), density * np.exp(moves[0])
+        second = self._contents.conformal_hubble_rate(a) / a * (SPEED_OF_LIGHT / MEGAPARSEC)
+        electrons = self._electrons(1.0 / (1.0 + ratio), temperature, density)
+        hydrogen = self._hydrogen(second * np.exp(moves[2]), temperature, density, ratio, electrons)
+        return -ratio / (1.0 + ratio) * hydrogen * np.exp(moves[2])  # per unit of the unchanged expansion
 
     def _gas(self, a, lag):
         return self._baryons.photon_temperature / a * np.exp(-lag), self._baryons.hydrogen_density / a**3
@@ -264,6 +290,46 @@ class _Rates:
         he = _HELIUM_WEIGHT * _saha(_HELIUM, temperature, density)
         half = 0.5 * (he - protons)
         return np.sqrt(half * half + he * (protons + self._baryons.helium_per_hydrogen)) - half
+
+
+def recombination_response(contents, baryons, a, electrons, lag, factor=RECOMBINATION_FACTOR):
+    """Response of the rate d ln x_e/d ln a to its surroundings, from difference quotients of the rate itself.
+
+    To first order d delta_x/d ln a = -r (delta_x - n delta_density - t delta_temperature - h delta_rate), where
+    delta_rate is the relative contrast of the local expansion, which lets Lyman-alpha photons escape. Before
+    one atom in 1e5 is neutral hydrogen there is nothing to respond, and n = t = h = 0.
+
+    Parameters
+    ----------
+    contents : Contents
+    baryons : Baryons
+    a, electrons, lag : array, any shape
+        Scale factor, electrons per hydrogen nucleus and ln(T_gamma/T) [unitless].
+    factor : float
+        On the case-B coefficient [unitless].
+
+    Returns
+    -------
+    tuple of array, each that shape
+        r, n, t, h [unitless].
+    """
+    rates = _Rates(contents, baryons, factor)
+    temperature, density = rates._gas(a, lag)
+    helium = _HELIUM_WEIGHT * _saha(_HELIUM, temperature, density)
+    neutrals = 1.0 - (electrons - baryons.helium_per_hydrogen * helium / (helium + electrons))
+    # From here on, going back in time, hydrogen is all but ionized.
+    settled = np.where(neutrals < RESPONSIVE_NEUTRALS, a, 0.0).max(initial=0.0)
+    responsive = a > settled
+    ratio = np.where(responsive, neutrals, 0.5) / np.where(responsive, 1.0 - neutrals, 0.5)
+    slopes = []
+    for direction in range(4):
+        move = np.eye(4)[direction] * RESPONSE_STEP
+        ends = [rates.shrinking(a, lag, sign * move[:3], ratio * np.exp(sign * move[3])) for sign in (1.0, -1.0)]
+        slopes.append((ends[0] - ends[1]) / (2.0 * RESPONSE_STEP))
+    by_density, by_temperature, by_rate, by_ratio = slopes
+    relaxation = by_ratio * (1.0 + ratio) / ratio  # ln(neutral/ionized) falls by 1/neutrals as ln(ionized) rises
+    answers = [np.where(responsive, slope / relaxation, 0.0) for slope in (by_density, by_temperature, by_rate)]
+    return np.where(responsive, relaxation, 0.0), *answers
 
 
 def case_b_coefficient(temperature):

@@ -8,12 +8,13 @@ from .errors import UniverseError
 from .quadrature import RunningIntegral, bisect
 
 _DEPTH_PANEL = 0.05  # of the optical-depth integrals, in ln(1 + z): the ionization table's cubics average out
+_LATE_PANEL = 0.02  # the same where reionization may be sharp
 _EARLIEST_LOG = np.log(1.0e7)  # ln(1 + z) where the search for last scattering ends
 
 
 @dataclass(frozen=True)
 class Landmarks:
-    """Landmark epochs and scales; reionization is left out.
+    """Landmark epochs and scales; reionization, and heat and electrons from a table, are left out of all but the last.
 
     Parameters
     ----------
@@ -40,6 +41,8 @@ class Landmarks:
         [Gyr]
     conformal_age : float
         Conformal time today [Mpc].
+    reionization_optical_depth : float or None
+        Photon depth of the electrons that a table or reionization adds, up to today; None without either [unitless].
     """
 
     equality_redshift: float
@@ -53,7 +56,7 @@ class Landmarks:
     thermal_decoupling_redshift: float
     age_today: float
     conformal_age: float
-
+    reionization_optical_depth: float | None = None
 
 def find_landmarks(universe):
     """Landmarks of a universe.
@@ -92,6 +95,17 @@ def _unit_depth(universe, rate, name):
     if depth.total <= 1.0:
         raise UniverseError(f"this universe has no {name}: its depth from today stays below one")
     return float(np.exp(-depth.reaches(1.0)))
+
+
+def reionization_depth(universe, unheated):
+    """Photon depth of the electrons that one universe has and the other has not [unitless]."""
+    start = -np.log(universe.heated_from)
+
+    def integrand(log_redshift):
+        a = np.exp(-log_redshift)
+        return (universe.scattering_rate(a) - unheated.scattering_rate(a)) / universe.conformal_hubble_rate(a)
+
+    return float(RunningIntegral(integrand, 0.0, start, panels=int(np.ceil(start / _LATE_PANEL))).total)
 
 
 def _thermal_decoupling(universe):

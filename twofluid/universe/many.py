@@ -5,9 +5,10 @@ from functools import cached_property
 import numpy as np
 
 from .background import solve_backgrounds
-from .conditions import ConditionsStack
+from .conditions import ConditionsStack, FurtherFields
 from .errors import UniverseError
 from .members import SideBySide
+from .response import Response
 from .universe import Universe
 
 _GROUP = 32  # universes solved together, so that the intermediate arrays stay in the cache
@@ -81,8 +82,7 @@ class UniverseStack:
         columns : index of `owner`, optional
             The columns that are meant; all if left out.
         """
-        owner = self.owner if columns is None else self.owner[columns]
-        (contents,) = self._contents.pick(owner)
+        (contents,) = self._contents.pick(self._owner(columns))
         return contents.gravity(species, scale_factor)
 
     @cached_property
@@ -107,6 +107,16 @@ class UniverseStack:
         look_up = self._all_columns if columns is None else self._tables.of(self.owner[columns])
         return look_up(conformal_time)
 
+    @property
+    def has_dark_pressure(self):
+        """Whether the dark matter of any of the universes is not cold."""
+        return any(universe.has_dark_pressure for universe in self.universes)
+
+    def dark_sound_speed(self, scale_factor, columns=None):
+        """Sound speed of the dark matter [c]; arguments as in `gravity`."""
+        (sound,) = self._dark_sounds.pick(self._owner(columns))
+        return sound.speed(scale_factor)
+
     @cached_property
     def _contents(self):
         return SideBySide([universe.contents for universe in self.universes])
@@ -116,5 +126,35 @@ class UniverseStack:
         return self._tables.of(self.owner)
 
     @cached_property
+    def _dark_sounds(self):
+        return SideBySide([universe.dark_sound for universe in self.universes])
+
+    @cached_property
     def _tables(self):
         return ConditionsStack([universe.conditions_table for universe in self.universes])
+
+    def _owner(self, columns):
+        return self.owner if columns is None else self.owner[columns]
+
+    @property
+    def heated_from(self):
+        """Scale factor from which on any of the universes is heated as in `Universe.heated_from`; None: never."""
+        return min((universe.heated_from for universe in self.universes if universe.heated_from), default=None)
+
+    def heating_rate(self, conformal_time, columns=None):
+        """Rate of heating as `Universe.heating_rate`, times and columns as in `conditions` [1/Mpc]."""
+        return self._heating(conformal_time, self._owner(columns))[0]
+
+    def response(self, conformal_time, columns=None):
+        """Response of the electrons as `Universe.response`, times and columns as in `conditions`."""
+        return Response(*self._response(conformal_time, self._owner(columns)))
+
+    @cached_property
+    def _heating(self):
+        tables = [universe.conditions_table for universe in self.universes]
+        return FurtherFields(tables, [universe.heating_values for universe in self.universes])
+
+    @cached_property
+    def _response(self):
+        tables = [universe.conditions_table for universe in self.universes]
+        return FurtherFields(tables, [universe.response_values for universe in self.universes])

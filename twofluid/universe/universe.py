@@ -1,15 +1,18 @@
 """The smooth universe of one cosmology: everything that has no wavenumber."""
 
+from dataclasses import replace
 from functools import cached_property
 
 import numpy as np
 
 from . import gas
-from .background import solve_backgrounds
-from .conditions import ConditionsTable
+from .background import Background, solve_backgrounds
+from .conditions import ConditionsTable, FurtherFields
+from .dark import dark_sound
 from .errors import UniverseError
 from .expansion import log_scale_factor
-from .landmarks import find_landmarks
+from .landmarks import find_landmarks, reionization_depth
+from .response import Response, heating_values, response_values
 
 _POLARIZED_SCATTERING = 16.0 / 15.0  # photon viscosity with polarization; Kaiser 1983, from memory
 
@@ -38,7 +41,9 @@ class Universe:
         background = background or solve_backgrounds([cosmology])[0]
         self._expansion = background.expansion
         self._baryons = background.baryons
+        self.dark_sound = dark_sound(cosmology)
         self._ionization = background.ionization
+        self._computed = background.computed
 
     # --- expansion ---------------------------------------------------------------------------------
     def gravity(self, species, scale_factor, columns=None):
@@ -126,7 +131,35 @@ class Universe:
         """Temperature slope of the gas, d ln T/d ln a [unitless]."""
         lag = self._ionization.temperature_lag(scale_factor)
         heating = self.compton_rate(scale_factor) / self.conformal_hubble_rate(scale_factor)
-        return heating * np.expm1(lag) - 2.0
+        return heating * np.expm1(lag) - 2.0 + self._ionization.heating(scale_factor)
+
+    def gas_stiffness(self, scale_factor):
+        """Contrast of the gas temperature over that of the density, as for slow waves in the gas [unitless].
+
+        -(1/3) d ln T/d ln a where Compton scattering and expansion make the temperature. Where a table or
+        reionization does, that would say that gas cools when squeezed while it is being heated; there it is
+        (2/3)/(3 + d ln T/d ln a + Compton over expansion rate), the answer of gas that is given its heat alike
+        everywhere to a contrast that grows as a, and 2/3 at most.
+        """
+        slope = self.gas_temperature_slope(scale_factor)
+        if not self.heated_from:
+            return -slope / 3.0
+        compton = self.compton_rate(scale_factor) / self.conformal_hubble_rate(scale_factor)
+        given = 2.0 / 3.0 / np.maximum(3.0 + slope + compton, 1.0)
+        return np.where(np.asarray(scale_factor) >= self.heated_from, given, -slope / 3.0)
+
+    @property
+    def heated_from(self):
+        """Scale factor from which on a table or reionization shapes the gas; None: never [unitless]."""
+        return getattr(self._ionization, "start", None)
+
+    @cached_property
+    def unheated(self):
+        """The same universe without table and reionization: itself if it has neither."""
+        if self.heated_from is None:
+            return self
+        background = Background(self._expansion, self._baryons, self._computed, self._computed)
+        return Universe(replace(self.cosmology, thermal=None, reionization=None), background)
 
     def isothermal_sound_speed(self, scale_factor):
         """Sound speed of the gas at fixed temperature, (k T/(mu m_H))^(1/2) [c]."""
@@ -136,9 +169,25 @@ class Universe:
         )
 
     def gas_sound_speed(self, scale_factor):
-        """Sound speed of the gas, c_s^2 = (k T/(mu m_H)) (1 - (1/3) d ln T/d ln a) [c]."""
-        factor = gas.adiabatic_factor(self.gas_temperature_slope(scale_factor))
-        return self.isothermal_sound_speed(scale_factor) * np.sqrt(factor)
+        """Sound speed of the gas, c_s^2 = (k T/(mu m_H)) (1 + stiffness), see `gas_stiffness` [c]."""
+        return self.isothermal_sound_speed(scale_factor) * np.sqrt(1.0 + self.gas_stiffness(scale_factor))
+
+    # --- dark matter -------------------------------------------------------------------------------
+    @property
+    def has_dark_pressure(self):
+        """Whether there is dark matter, and it is not cold."""
+        return self.dark_sound.today > 0.0
+
+    def dark_sound_speed(self, scale_factor, columns=None):
+        """Sound speed of the dark matter, 0 if it is cold [c].
+
+        `columns` is there for a `UniverseStack`, as in `conditions`.
+        """
+        return self.dark_sound.speed(np.asarray(scale_factor, dtype=float))
+
+    def dark_sound_horizon(self, scale_factor):
+        """Comoving way of sound in the dark matter since the beginning [Mpc]."""
+        return self._dark_sound_way(log_scale_factor(scale_factor))
 
     # --- plasma ------------------------------------------------------------------------------------
     def plasma_sound_speed(self, scale_factor):
@@ -161,6 +210,12 @@ class Universe:
     def _sound_way(self):
         return self._expansion.running_integral(
             lambda a: self.plasma_sound_speed(a) / self.conformal_hubble_rate(a), power=1
+        )
+
+    @cached_property
+    def _dark_sound_way(self):
+        return self._expansion.running_integral(
+            lambda a: self.dark_sound_speed(a) / self.conformal_hubble_rate(a), power=1
         )
 
     @cached_property
@@ -190,8 +245,11 @@ class Universe:
     # --- taken together ----------------------------------------------------------------------------
     @cached_property
     def landmarks(self):
-        """Landmark epochs and scales; UniverseError names one this universe does not have."""
-        return find_landmarks(self)
+        """Landmark epochs and scales, those of the gas left unheated; UniverseError names one that is not there."""
+        if self.heated_from is None:
+            return find_landmarks(self)
+        depth = reionization_depth(self, self.unheated)
+        return replace(self.unheated.landmarks, reionization_optical_depth=depth)
 
     def conditions(self, conformal_time, columns=None):
         """Conditions at conformal times [Mpc] from the scale factor 1e-14 to today, by table look-up.
@@ -209,3 +267,34 @@ class Universe:
     def conditions_table(self):
         """The table behind `conditions`."""
         return ConditionsTable(self._expansion, self._ionization, self._baryons)
+
+    def heating_rate(self, conformal_time, columns=None):
+        """Rate at which the gas is given heat beside Compton's, over its thermal energy [1/Mpc]; `conditions` has more.
+
+        Where the history of the gas asks for cooling this is zero.
+        """
+        return self._heating(conformal_time)[0]
+
+    def response(self, conformal_time, columns=None):
+        """Response of the electrons at conformal times [Mpc], a `Response`; times and columns as in `conditions`."""
+        return Response(*self._response(conformal_time))
+
+    @cached_property
+    def _heating(self):
+        return FurtherFields([self.conditions_table], [self.heating_values])
+
+    @cached_property
+    def _response(self):
+        return FurtherFields([self.conditions_table], [self.response_values])
+
+    @cached_property
+    def heating_values(self):
+        """What `heating_rate` looks up, shape (field, node)."""
+        return heating_values(self.conditions_table.scale_factor, self._expansion, self._ionization)
+
+    @cached_property
+    def response_values(self):
+        """What `response` looks up, shape (field, node)."""
+        return response_values(
+            self.conditions_table.scale_factor, self._expansion, self._baryons, self._computed, self._ionization
+        )
