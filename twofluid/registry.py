@@ -13,6 +13,7 @@ from twofluid.drawing import (
     growth_figure,
     lag_comparison_figure,
     lag_figure,
+    matter_comparison_figure,
     scales_figure,
     shortfall_figure,
     spheres_figure,
@@ -239,11 +240,17 @@ def comparison_names(alignment):
     ValueError
         If a product of that name does not exist.
     """
-    figures = (EVOLUTION, "differences", *(name for name in alignment.scenarios[0].products))
+    figures = (EVOLUTION, "differences", *_matter_figure(alignment.scenarios), *alignment.scenarios[0].products)
     tables = (f"{EVOLUTION}.ecsv", *_product_names(alignment.scenarios[0]), "courses.ecsv", "differences.ecsv")
     names = dict.fromkeys(tables)
     names |= dict.fromkeys(f"{name}.{form}" for name in figures for form in FIGURE_FORMATS)
     return [COMPARISON.format(name) for name in names]
+
+
+def _matter_figure(scenarios):
+    """Return the figure that only a comparison with massive neutrinos has, by its name."""
+    massive = any(any(scenario.cosmology.neutrinos.masses) for scenario in scenarios)
+    return {"matter": matter_comparison_figure} if massive else {}
 
 
 def comparison_tables(comparison):
@@ -292,13 +299,13 @@ def make_comparison(comparison):
     """
     tables = comparison_tables(comparison)
     products = {name: PRODUCTS[name] for name in comparison.histories[0].scenario.products}
-    figures = {EVOLUTION: evolution_comparison_figure, "differences": difference_figure}
+    scenarios = [history.scenario for history in comparison.histories]
+    figures = {EVOLUTION: evolution_comparison_figure, "differences": difference_figure} | _matter_figure(scenarios)
     figures |= {name: product.comparison_figure for name, product in products.items() if product.comparison_figure}
     outputs = {COMPARISON.format(f"{stem}.ecsv"): table_bytes(table) for stem, table in tables.items()}
     for name, draw in figures.items():
         figure = draw(tables)
         if figure is not None:
-            scenarios = [history.scenario for history in comparison.histories]
             outputs |= {
                 COMPARISON.format(f"{name}.{form}"): figure_bytes(figure, form, *scenarios) for form in FIGURE_FORMATS
             }

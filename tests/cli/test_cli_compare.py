@@ -24,6 +24,7 @@ products:
   lag: {fractions: [0.5, 0.9]}
 """
 BARE = "base: base.yaml\ncosmology: {dark_matter_density: 0}\n"
+HEAVY = "base: base.yaml\ntitle: heavy\ncosmology: {neutrinos: {masses: [0.1 eV]}}\n"
 HALF = "base: base.yaml\ntitle: half\ncosmology: {dark_matter_density: 0.06}\n"
 STEMS = ("catchup", "courses", "differences", "evolution", "lag")
 OUTPUTS = sorted(
@@ -35,7 +36,7 @@ OUTPUTS = sorted(
 @pytest.fixture(scope="module")
 def files(tmp_path_factory):
     place = tmp_path_factory.mktemp("scenarios")
-    for name, text in (("base", BASE), ("bare", BARE), ("half", HALF)):
+    for name, text in (("base", BASE), ("bare", BARE), ("half", HALF), ("heavy", HEAVY)):
         (place / f"{name}.yaml").write_text(text)
     return place
 
@@ -210,3 +211,18 @@ def test_a_full_disk_is_status_one_and_an_interrupt_130(files, tmp_path, capsys,
     monkeypatch.setattr("twofluid.comparison.evolve_many", stop(KeyboardInterrupt()))
     assert run("compare", files / "base.yaml", files / "half.yaml", "--out", tmp_path / "other") == 130
     assert not Path(tmp_path / "other").exists()
+
+
+def test_a_comparison_with_massive_neutrinos_draws_the_matter(files, tmp_path):
+    assert run("compare", files / "base.yaml", files / "heavy.yaml", "--out", tmp_path, "--no-certificate") == 0
+    assert sorted(path.name for path in tmp_path.iterdir()) == sorted(
+        [*OUTPUTS, "comparison-matter.pdf", "comparison-matter.png"]
+    )
+
+
+def test_massive_neutrinos_in_the_small_model_are_refused(files, tmp_path, capsys, nothing_solved):
+    small = files / "small.yaml"
+    small.write_text("base: heavy.yaml\nmethod: {closure: sound-speed}\n")
+    assert run("compare", files / "base.yaml", small, "--out", tmp_path / "out") == 2
+    assert "method.closure = sound-speed follows neutrinos without mass only" in capsys.readouterr().err
+    assert not (tmp_path / "out").exists()

@@ -5,7 +5,12 @@ import pytest
 from astropy.table import Column, MaskedColumn, Table, vstack
 from matplotlib.text import Text
 
-from twofluid.drawing import difference_figure, evolution_comparison_figure, lag_comparison_figure
+from twofluid.drawing import (
+    difference_figure,
+    evolution_comparison_figure,
+    lag_comparison_figure,
+    matter_comparison_figure,
+)
 
 LABELS = ("baseline", "no dark matter", "half the $ dark matter")
 WAVENUMBERS = np.geomspace(0.01, 10, 13)
@@ -182,3 +187,22 @@ def test_long_titles_stay_on_the_page():
         figure.draw_without_rendering()
         box = figure.legends[0].get_window_extent()
         assert box.x0 >= 0 and box.x1 <= figure.bbox.x1
+
+
+def test_power_of_matter_over_the_first_scenario():
+    k = grid()["wavenumber"]
+    evolution = stacked(grid(), 0.5 / (1 + k), delta_matter_over_first=False)
+    figure = matter_comparison_figure({"evolution": evolution})
+    assert [axes.get_title(loc="left") for axes in figure.axes] == [
+        "no dark matter, over baseline", r"half the \$ dark matter, over baseline",
+    ]  # fmt: skip
+    for number, axes in enumerate(figure.axes, 2):
+        lines = curves(axes)
+        assert list(lines) == ["$z$ = 1000", "$z$ = 30", "$z$ = 0"]
+        for line in lines.values():
+            assert line.get_xdata() == pytest.approx(WAVENUMBERS)
+            assert line.get_ydata() == pytest.approx((number * 0.5 / (1 + WAVENUMBERS)) ** 2)
+        assert axes.get_xscale() == "log"
+        assert axes.get_xlabel() == r"wavenumber $k$ [$\mathrm{Mpc^{-1}}$]"
+        assert axes.get_ylabel() == r"power of matter $(\delta_\mathrm{m}/\delta_\mathrm{m,1})^2$"
+    assert legend(figure) == ["$z$ = 1000", "$z$ = 30", "$z$ = 0"]

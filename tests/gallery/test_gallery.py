@@ -49,6 +49,7 @@ def test_the_gallery_is_complete():
         "mixture/comparison-lag",
         "heated/comparison-lag",
         "heated/comparison-evolution",
+        "massive-neutrinos/comparison-matter",
     ):
         for form in ("pdf", "png"):
             assert (GALLERY / f"{name}.{form}").stat().st_size > 10_000  # bytes; an empty page has fewer

@@ -225,7 +225,7 @@ def test_sound_speed_closure_agrees(warm):
 
 def test_velocity_is_carried_only_where_there_is_one(cold, warm, tmp_path):
     table = evolution_table(warm)
-    assert table.colnames[-1] == "theta_dark"
+    assert table.colnames[-2:] == ["theta_dark", "delta_matter"]
     assert str(table["theta_dark"].unit) == "1 / Mpc"
     np.testing.assert_array_equal(table["theta_dark"], warm.theta_dark.ravel())
     assert table.meta["frame"].startswith("synchronous, carried by cold dust without mass")

@@ -1,6 +1,11 @@
 """Pictures: functions from tables to matplotlib axes."""
 
-from twofluid.drawing.comparison import difference_figure, evolution_comparison_figure, lag_comparison_figure
+from twofluid.drawing.comparison import (
+    difference_figure,
+    evolution_comparison_figure,
+    lag_comparison_figure,
+    matter_comparison_figure,
+)
 from twofluid.drawing.growth import draw_growth_rate, draw_suppression, growth_figure
 from twofluid.drawing.lag import draw_catchup, draw_ratio, lag_figure
 from twofluid.drawing.scales import draw_map, draw_masses, scales_figure
@@ -28,6 +33,7 @@ __all__ = [
     "journal_style",
     "lag_comparison_figure",
     "lag_figure",
+    "matter_comparison_figure",
     "scales_figure",
     "shortfall_figure",
     "spheres_figure",

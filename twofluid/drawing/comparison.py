@@ -8,6 +8,7 @@ from matplotlib.ticker import FixedLocator, NullLocator, ScalarFormatter
 
 from twofluid.drawing.lag import REDSHIFT_TICKS
 from twofluid.drawing.style import (
+    COLUMN_WIDTH,
     DARK_MATTER,
     LABEL_SIZE,
     PAGE_WIDTH,
@@ -119,6 +120,39 @@ def lag_comparison_figure(tables):
     return figure
 
 
+def matter_comparison_figure(tables):
+    """Return the figure of the power of all matter over that of the first scenario, a panel for each other one.
+
+    Parameters
+    ----------
+    tables : mapping of str to astropy.table.Table
+        Stacked tables, under "evolution".
+
+    Returns
+    -------
+    matplotlib.figure.Figure
+        A figure one column wide: ratio of the squares of delta_matter against wavenumber, one curve per redshift.
+    """
+    table = tables["evolution"]
+    first, *others = dict.fromkeys(table["scenario"].tolist())
+    symbol = QUANTITIES["delta_matter"].symbol
+    with journal_style():
+        size = (COLUMN_WIDTH, len(others) * PANEL_HEIGHT + LEGEND_HEIGHT)
+        figure = Figure(figsize=size, layout="constrained")
+        panels = figure.subplots(len(others), 1, squeeze=False)[:, 0]
+        for label, axes in zip(others, panels, strict=True):
+            part = table[table["scenario"] == label]
+            axes.set_title(f"{safe_label(label)}, over {safe_label(first)}", loc="left", fontsize=LABEL_SIZE)
+            axes.axhline(1, color="0.75", linewidth=0.6, zorder=0)
+            curves = [(name, k, ratio**2) for name, k, ratio in _by_redshift(part, "delta_matter_over_first")]
+            draw_curves(axes, curves)
+            _wavenumber_axis(axes, part)
+            axes.set_ylim(*_view([np.ones(1), *(y for *_, y in curves)], RATIO_VIEW))
+            axes.set_ylabel(f"power of matter $({symbol}/{symbol[:-1]},1}})^2$")
+        share_legend(figure, panels)
+    return figure
+
+
 def difference_figure(tables):
     """Return the figure of the differences from the first scenario, a row of panels for each other one.
 
@@ -171,13 +205,7 @@ def _draw_amplitudes(axes, table, across):
 
 
 def _draw_differences(axes, table, name):
-    redshifts = np.unique(table["redshift"])[::-1]
-    redshifts = redshifts[np.unique(np.linspace(0, len(redshifts) - 1, MOST_REDSHIFTS).round().astype(int))]
-    symbol = QUANTITIES["redshift"].symbol
-    curves = [
-        (f"${symbol}$ = {redshift:g}", *_sorted(table[table["redshift"] == redshift], "wavenumber", name))
-        for redshift in redshifts
-    ]
+    curves = _by_redshift(table, name)
     axes.axhline(0, color="0.75", linewidth=0.6, zorder=0)
     draw_curves(axes, curves)
     _wavenumber_axis(axes, table)
@@ -203,6 +231,17 @@ def _by_scenario(table, across, name):
     return [
         (safe_label(label), *_sorted(table[table["scenario"] == label], across, name))
         for label in dict.fromkeys(table["scenario"].tolist())
+    ]
+
+
+def _by_redshift(table, name):
+    """Return label, wavenumber and ordinate of a spread of redshifts, the highest first."""
+    redshifts = np.unique(table["redshift"])[::-1]
+    redshifts = redshifts[np.unique(np.linspace(0, len(redshifts) - 1, MOST_REDSHIFTS).round().astype(int))]
+    symbol = QUANTITIES["redshift"].symbol
+    return [
+        (f"${symbol}$ = {redshift:g}", *_sorted(table[table["redshift"] == redshift], "wavenumber", name))
+        for redshift in redshifts
     ]
 
 

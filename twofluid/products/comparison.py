@@ -34,8 +34,8 @@ def joined_table(tables, labels, notes=(), *, ratios=True):
     Returns
     -------
     astropy.table.Table
-        Scenario after scenario, the rows of each in their order: the column `scenario`, the columns of the
-        tables, and for every number X that is no wavenumber or redshift of its row a column X_over_first
+        Scenario after scenario, the rows of each in their order: the column `scenario`, the columns that all of
+        the tables have, and for every number X that is no wavenumber or redshift of its row a column X_over_first
         [unitless], empty where there is no ratio. The header holds what all have in common, and under
         `scenarios` what each has for itself.
     """
@@ -43,10 +43,11 @@ def joined_table(tables, labels, notes=(), *, ratios=True):
 
     names = np.concatenate([[label] * len(table) for label, table in zip(labels, tables, strict=True)])
     columns = [Column(names.astype(str), name="scenario", description=QUANTITIES["scenario"].meaning)]
-    columns += [_stacked([table[name] for table in tables]) for name in tables[0].colnames]
+    common = [name for name in tables[0].colnames if all(name in table.colnames for table in tables)]
+    columns += [_stacked([table[name] for table in tables]) for name in common]
     if ratios:
         rows = _row_in_first(tables)
-        numbers = [name for name in tables[0].colnames if tables[0][name].dtype.kind in "fiu" and name not in AXES]
+        numbers = [name for name in common if tables[0][name].dtype.kind in "fiu" and name not in AXES]
         columns += [_over_first(name, [table[name] for table in tables], rows) for name in numbers]
     return Table(columns, meta=_joined_meta(tables, labels, notes))
 
