@@ -8,7 +8,7 @@ from courses import FINE, cosmology, course
 from scipy.integrate import solve_ivp
 from scipy.special import roots_laguerre
 
-from twofluid import evolve, evolve_many
+from twofluid import certify, evolve, evolve_many
 from twofluid.fluids import ChainLengths, KineticSystem, resolution_for
 from twofluid.scenario import Method, Mixture, Neutrinos, Primordial, Sampling, Scenario, Share
 from twofluid.universe import Universe
@@ -285,3 +285,14 @@ def test_the_small_model_does_not_know_them():
     refusal = r"method\.closure = sound-speed .*neutrinos\.masses = \[0\.06\] eV .* kinetic"
     with pytest.raises(ValueError, match=refusal):
         evolve(asked)
+
+
+def test_more_momenta_where_neutrinos_are_much_of_the_matter():
+    light, hot = (resolution_for(Universe(massive(*[mass] * 3, dark_matter_density=0.0))) for mass in (0.1, 0.5))
+    assert (light.chains.momenta, hot.chains.momenta) == (5, 20)
+
+
+def test_promise_is_kept_without_dark_matter():
+    # Our own finer run; neutrinos are two fifths of all matter, and the waves near the way they stream turn round.
+    run = evolve(scenario(massive(0.5, 0.5, 0.5, dark_matter_density=0.0), (0.005, 0.03, 0.08), (100.0, 10.0, 0.0)))
+    assert certify(run, modes=np.arange(3)).certificate.kept
