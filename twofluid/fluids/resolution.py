@@ -14,6 +14,8 @@ from .kinetic import ChainLengths
 from .stepping import Stepping
 
 RULING_FRACTION = 0.25  # dark matter over dark matter and baryons, from which on dark matter rules (measured)
+HOT_SHARE = 0.2  # of neutrinos with mass in all matter, from which on how they stream shapes everything (measured)
+MOMENTA_IF_HOT = 4  # times as many momenta then
 LONGER_CHAINS = 1.5  # chains of a refined resolution over those it refines
 
 
@@ -121,4 +123,9 @@ def resolution_for(universe: Universe, accuracy: str = "standard") -> Resolution
     dark, baryon = universe.gravity("dark", 1.0), universe.gravity("baryon", 1.0)
     settings = ACCURACIES[accuracy]
     rules = dark >= RULING_FRACTION * (dark + baryon) and not universe.has_dark_pressure
-    return settings.dark_ruled if rules else settings.baryon_ruled
+    resolution = settings.dark_ruled if rules else settings.baryon_ruled
+    mass = universe.masses
+    if mass["massive_neutrino"] < HOT_SHARE * sum(mass.values()):
+        return resolution
+    chains = resolution.chains
+    return replace(resolution, chains=replace(chains, momenta=MOMENTA_IF_HOT * chains.momenta))
