@@ -43,8 +43,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ..solver.collocation import STAGES
+from ..solver import StepRates, Tail, TailRates
 from ..universe import Conditions, Response, Universe
+from .chain import Chain
 from .massive import MassiveNeutrinos
 from .readout import Reading, constraint_drift, read_moving_dark_matter, read_quantities
 from .start import mixed
@@ -54,7 +55,6 @@ from .start import mixed
 PHOTON_LAYER = (1.0, 5.0)
 NEUTRINO_LAYER = (2.0, 6.0)
 ELECTRONS = "delta_electron"  # the unknown that only a run with ionization fluctuations has
-FIRST_ABSORBED = 3  # the quadrupole and below stay as published
 CONSTRAINT_PULL = 3.0  # over the expansion rate; errors are the same at 10, a few times larger at 1 (measured)
 
 
@@ -114,7 +114,7 @@ class KineticSystem:
         self.ionization_fluctuations = ionization_fluctuations
         self.dark_pressure = universe.has_dark_pressure
         self._massive = MassiveNeutrinos(universe, self.wavenumber, chains.momenta, chains.massive)
-        self.unknowns = (*self._massive.unknowns, *_elimination_order(self.chains, self.dark_pressure))
+        self.unknowns = (*self._massive.unknowns, *_elimination_order(self.dark_pressure))
         self.observed = (*type(self).observed, *self._massive.observed)
         if self.dark_pressure:
             self.observed = (*self.observed, "theta_dark")
@@ -122,7 +122,10 @@ class KineticSystem:
             place = self.unknowns.index("delta_gas_temperature")
             self.unknowns = (*self.unknowns[:place], ELECTRONS, *self.unknowns[place:])
             self.observed = (*self.observed, ELECTRONS)
+        chains = (*_chains(self.chains), *self._massive.chains)
+        self.unknowns = (*self.unknowns, *(name for chain in chains for name in chain.members))
         self._row = {name: row for row, name in enumerate(self.unknowns)}
+        self.tails = tuple(chain.tail(self._row) for chain in chains)
 
     def first_state(self, start: np.ndarray, weights: Mapping[str, np.ndarray] | None = None) -> np.ndarray:
         """State of every mode at its start.
@@ -177,7 +180,7 @@ class KineticSystem:
             others = self._massive.density(now.scale_factor, y)
         return Reading(quantities, constraint_drift(now, self.wavenumber, y, others))
 
-    def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict:
+    def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> StepRates:
         """Evaluate step times rate; see `twofluid.solver.LinearSystem`."""
         now = self.universe.conditions(time, modes)
         surroundings = _Surroundings(now, self.wavenumber[modes], self._curvature[modes], step)
@@ -188,19 +191,21 @@ class KineticSystem:
             **_gas_temperature(surroundings),
             **_quadrupoles(surroundings),
             **_polarization(surroundings),
-            **_chains(surroundings, self.chains),
             **self._massive.step_rates(now.scale_factor, modes, surroundings),
         }
         for added in self._gas_options(now, time, self.wavenumber[modes], modes, step):
             for entry, rate in added.items():
-                named[entry] = named.get(entry, 0.0) + rate.reshape(STAGES, -1)
+                named[entry] = named.get(entry, 0.0) + rate
         if self.dark_pressure:
             named |= _dark_pressure(surroundings, self.universe.dark_sound_speed(now.scale_factor, modes))
         if self.held_to_constraint:
             energies = self._massive.energies(now.scale_factor, modes, surroundings)
             for entry, rate in _constraint(surroundings, self.wavenumber[modes] * time, energies).items():
                 named[entry] = named.get(entry, 0.0) + rate
-        return {(self._row[row], self._row[column]): rate for (row, column), rate in named.items()}
+        entries = {(self._row[row], self._row[column]): rate for (row, column), rate in named.items()}
+        plasma = TailRates(surroundings.x, surroundings.scattering)
+        streams = self._massive.tail_rates(now.scale_factor, modes, surroundings)
+        return StepRates(entries, (plasma, plasma, TailRates(surroundings.x), *streams))
 
     def _gas_options(self, now: Conditions, time: np.ndarray, wavenumber: np.ndarray, modes, step) -> list:
         """Entries of what a scenario can ask of the gas, times step, shaped as `time`."""
@@ -242,24 +247,22 @@ class ConstrainedKineticSystem(KineticSystem):
     held_to_constraint = True
 
 
-def _elimination_order(chains: ChainLengths, dark_pressure: bool) -> tuple[str, ...]:
-    """Passive curvature first, then chains from their far end, the most coupled unknowns last.
-
-    Equal moments of photons and polarization follow one another: chains of equal length share
-    their rates, and the solver then works on both at once.
-    """
-    tails = [
-        f"{field}_{moment}"
-        for moment in range(max(chains.photon, chains.polarization), FIRST_ABSORBED - 1, -1)
-        for field, last in (("photon", chains.photon), ("polarization", chains.polarization))
-        if moment <= last
-    ]
-    tails += [f"neutrino_{moment}" for moment in range(chains.neutrino, FIRST_ABSORBED - 1, -1)]
+def _elimination_order(dark_pressure: bool) -> tuple[str, ...]:
+    """Put what only gravity and one velocity touch first, the most coupled unknowns last."""
     densities = ["delta_dark", "delta_baryon", "delta_photon", "delta_neutrino"]
     densities += ["theta_dark"] if dark_pressure else []
     core = ["delta_gas_temperature", "polarization_1", "polarization_0", "neutrino_2", "polarization_2",
             "photon_2", "slip", "theta_neutrino", "theta_baryon", "metric_rate"]  # fmt: skip
-    return ("curvature", *tails, *densities, *core)
+    return ("curvature", *densities, *core)
+
+
+def _chains(lengths: ChainLengths) -> tuple[Chain, ...]:
+    """Free streaming and scattering of the higher moments, absorbed at the far end (eqs 49, 63, 64)."""
+    return (
+        Chain("photon", lengths.photon, PHOTON_LAYER),
+        Chain("polarization", lengths.polarization, PHOTON_LAYER),
+        Chain("neutrino", lengths.neutrino, NEUTRINO_LAYER),
+    )
 
 
 class _Surroundings:
@@ -269,26 +272,19 @@ class _Surroundings:
     """
 
     def __init__(self, now: Conditions, wavenumber: np.ndarray, curvature: np.ndarray, step: np.ndarray):
-        phase = step * wavenumber
-        self.x = phase.ravel()  # k dtau
-
-        def per_step(rate: np.ndarray) -> np.ndarray:
-            return (rate * step).reshape(STAGES, -1)
-
-        self.hubble = per_step(now.hubble_rate)
-        self.scattering = per_step(now.scattering_rate)
-        self.compton = per_step(now.compton_rate)
-        inertia = step / wavenumber  # g_i / k^2 times k dtau
-        self.inertia = inertia.ravel()
-        self.gravity_photon = (now.gravity_photon * inertia).reshape(STAGES, -1)
-        self.gravity_neutrino = (now.gravity_neutrino * inertia).reshape(STAGES, -1)
-        self.gravity_baryon = (now.gravity_baryon * inertia).reshape(STAGES, -1)
-        self.gravity_dark = (now.gravity_dark * inertia).reshape(STAGES, -1)
-        self.curvature = (curvature * inertia).ravel()
-        self.r = now.photon_baryon_ratio.reshape(STAGES, -1)
-        self.drag = self.r * self.scattering
-        self.pressure = (now.isothermal_sound_speed_squared * phase).reshape(STAGES, -1)
-        self.warmth = now.photon_gas_temperature_ratio.reshape(STAGES, -1)
+        self.x = step * wavenumber  # k dtau
+        self.hubble = now.hubble_rate * step
+        self.scattering = now.scattering_rate * step
+        self.compton = now.compton_rate * step
+        self.inertia = step / wavenumber  # g_i / k^2 times k dtau
+        self.gravity_photon = now.gravity_photon * self.inertia
+        self.gravity_neutrino = now.gravity_neutrino * self.inertia
+        self.gravity_baryon = now.gravity_baryon * self.inertia
+        self.gravity_dark = now.gravity_dark * self.inertia
+        self.curvature = curvature * self.inertia
+        self.drag = now.photon_baryon_ratio * self.scattering
+        self.pressure = now.isothermal_sound_speed_squared * self.x
+        self.warmth = now.photon_gas_temperature_ratio
 
 
 def _gravity(s: _Surroundings) -> dict:
@@ -316,7 +312,7 @@ def _constraint(s: _Surroundings, phase: np.ndarray, massive: Mapping[str, np.nd
     It is zero for a solution of the equations. The rate is that of the expansion times `CONSTRAINT_PULL`, fading
     inside the horizon, where the curvature is a small difference of large terms.
     """
-    pull = (CONSTRAINT_PULL / (1.0 + phase**4)).reshape(STAGES, -1)
+    pull = CONSTRAINT_PULL / (1.0 + phase**4)
     return {
         ("metric_rate", "metric_rate"): -pull * s.hubble,
         ("metric_rate", "curvature"): 2.0 * pull * s.x,
@@ -366,7 +362,7 @@ def _dark_pressure(s: _Surroundings, speed: np.ndarray) -> dict:
     return {
         ("delta_dark", "theta_dark"): -s.x,
         ("theta_dark", "theta_dark"): -s.hubble,
-        ("theta_dark", "delta_dark"): (speed**2).reshape(STAGES, -1) * s.x,
+        ("theta_dark", "delta_dark"): speed**2 * s.x,
         ("curvature", "theta_dark"): s.gravity_dark / 2,
         ("photon_2", "theta_dark"): shear,
         ("neutrino_2", "theta_dark"): shear,
@@ -422,27 +418,3 @@ def _polarization(s: _Surroundings) -> dict:
         ("polarization_2", "polarization_0"): tenth,
         ("polarization_2", "photon_2"): tenth,
     }
-
-
-def _chains(s: _Surroundings, chains: ChainLengths) -> dict:
-    """Free streaming and scattering of the higher moments, absorbed at the far end (eqs 49, 63, 64)."""
-    rates = {}
-    shared: dict[tuple, np.ndarray] = {}  # photon and polarization chains of equal length use the same arrays
-
-    def once(key: tuple, rate: np.ndarray) -> np.ndarray:
-        return shared.setdefault(key, rate)
-
-    fields = (
-        ("photon", chains.photon, PHOTON_LAYER, s.scattering),
-        ("polarization", chains.polarization, PHOTON_LAYER, s.scattering),
-        ("neutrino", chains.neutrino, NEUTRINO_LAYER, 0.0),
-    )
-    for field, last, (strength, steepness), scattering in fields:
-        for moment in range(FIRST_ABSORBED, last + 1):
-            here = f"{field}_{moment}"
-            absorption = strength * (moment / last) ** steepness * s.x
-            rates[here, here] = once(("own", field == "neutrino", last, moment), -absorption - scattering)
-            rates[here, f"{field}_{moment - 1}"] = once(("down", moment), moment / (2 * moment + 1) * s.x)
-            if moment < last:
-                rates[here, f"{field}_{moment + 1}"] = once(("up", moment), -(moment + 1) / (2 * moment + 1) * s.x)
-    return rates

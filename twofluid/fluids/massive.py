@@ -15,17 +15,17 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ..solver.collocation import STAGES, WEIGHTS
+from ..solver import TailRates
 from ..universe import Universe
 from ..universe.fermi_dirac import momentum_sum
+from .chain import QUADRUPOLE, Chain
 
 LAYER = (2.0, 6.0)  # absorbing layer, as of massless neutrinos, in units of k v
 SHIFT = 8.0 / 5.0  # of the quadrupole, in units of the curvature
-FIRST_TAIL = 3  # from this moment on a chain only streams
 
 
 @dataclass(frozen=True)
-class _Chain:
+class _Stream:
     """Neutrinos of one mass and one momentum.
 
     Attributes
@@ -80,13 +80,14 @@ class MassiveNeutrinos:
         resting = sum(density * mass for density, mass in species)
         grid = tuple(zip(*momentum_sum(momenta), strict=True))
         total = sum(weight for _, weight in grid)
-        self._chains = [
-            _Chain(f"massive_{m}_{n}", q, weight, weight / total, density, mass, density * mass / resting)
+        self._streams = [
+            _Stream(f"massive_{m}_{n}", q, weight, weight / total, density, mass, density * mass / resting)
             for m, (density, mass) in enumerate(species)
             for n, (q, weight) in enumerate(grid)
         ]
-        self.unknowns = tuple(chain.unknown(moment) for moment in range(last, -1, -1) for chain in self._chains)
-        self.observed = tuple(chain.unknown(moment) for moment in (0, 1) for chain in self._chains)
+        self.unknowns = tuple(stream.unknown(moment) for moment in (0, QUADRUPOLE, 1) for stream in self._streams)
+        self.chains = tuple(Chain(stream.name, last, LAYER, {"curvature": SHIFT}) for stream in self._streams)
+        self.observed = tuple(stream.unknown(moment) for moment in (0, 1) for stream in self._streams)
 
     def first_state(self, massless: Mapping[str, np.ndarray]) -> dict[str, np.ndarray]:
         """Start like the massless neutrinos: they are as fast.
@@ -101,23 +102,23 @@ class MassiveNeutrinos:
         dict of str to array, shape (mode,)
         """
         state = {}
-        for chain in self._chains:
-            state[chain.unknown(0)] = massless.get("delta_neutrino", 0.0)
-            state[chain.unknown(1)] = 4 / 3 * massless.get("theta_neutrino", 0.0)
-            state[chain.unknown(2)] = massless.get("neutrino_2", 0.0) - SHIFT * massless.get("curvature", 0.0)
-            for moment in range(FIRST_TAIL, self._last + 1):
-                state[chain.unknown(moment)] = massless.get(f"neutrino_{moment}", 0.0)
+        for stream in self._streams:
+            state[stream.unknown(0)] = massless.get("delta_neutrino", 0.0)
+            state[stream.unknown(1)] = 4 / 3 * massless.get("theta_neutrino", 0.0)
+            state[stream.unknown(2)] = massless.get("neutrino_2", 0.0) - SHIFT * massless.get("curvature", 0.0)
+            for moment in range(QUADRUPOLE + 1, self._last + 1):
+                state[stream.unknown(moment)] = massless.get(f"neutrino_{moment}", 0.0)
         return state
 
     def step_rates(self, scale_factor: np.ndarray, modes: np.ndarray, surroundings) -> dict:
-        """Step times rate of everything these neutrinos do and suffer.
+        """Step times rate of everything these neutrinos do and suffer, their chains beyond the quadrupole left out.
 
         Parameters
         ----------
-        scale_factor : array, shape (stage, step, mode)
+        scale_factor : array, shape (stage, lane)
             At the stage times [unitless].
-        modes : array of int, shape (mode,)
-            Which modes are asked for.
+        modes : array of int, shape (lane,)
+            Which mode each lane belongs to.
         surroundings : object
             What `KineticSystem` has at hand: `x`, k dtau [unitless], `inertia`, dtau/k [Mpc^2], and `curvature`, of
             space times the latter [unitless], each an array of shape (lane,).
@@ -129,58 +130,54 @@ class MassiveNeutrinos:
         rates = {}
         x = surroundings.x
         source, growth = 4 / 15 * x - SHIFT / 2 * surroundings.curvature, -2 / 3 * x
-        for chain, energy, gravity in self._at_stages(scale_factor, modes, surroundings):
-            rates |= self._streaming(chain, chain.momentum * x / energy)
+        for stream, energy, gravity in self._at_stages(scale_factor, modes, surroundings):
+            rates |= self._streaming(stream, stream.momentum * x / energy)
             rates |= {
-                (chain.unknown(0), "metric_rate"): growth,
-                (chain.unknown(2), "metric_rate"): source,
-                ("metric_rate", chain.unknown(0)): -gravity * (energy + chain.momentum**2 / energy),
-                ("curvature", chain.unknown(1)): chain.momentum / 2 * gravity,
+                (stream.unknown(0), "metric_rate"): growth,
+                (stream.unknown(2), "metric_rate"): source,
+                ("metric_rate", stream.unknown(0)): -gravity * (energy + stream.momentum**2 / energy),
+                ("curvature", stream.unknown(1)): stream.momentum / 2 * gravity,
             }
-            shear = SHIFT / 2 * chain.momentum * gravity
-            rates |= {(row, chain.unknown(1)): shear for row in ("photon_2", "neutrino_2")}
+            shear = SHIFT / 2 * stream.momentum * gravity
+            rates |= {(row, stream.unknown(1)): shear for row in ("photon_2", "neutrino_2")}
         return rates
 
     def energies(self, scale_factor: np.ndarray, modes: np.ndarray, surroundings) -> dict[str, np.ndarray]:
         """8 pi G a^2 times energy density, times dtau/k, by the unknown that is its contrast, shape (stage, lane)."""
         return {
-            chain.unknown(0): gravity * energy
-            for chain, energy, gravity in self._at_stages(scale_factor, modes, surroundings)
+            stream.unknown(0): gravity * energy
+            for stream, energy, gravity in self._at_stages(scale_factor, modes, surroundings)
         }
 
     def _at_stages(self, scale_factor, modes, surroundings):
         """Yield every chain, its energy and what a unit of energy weighs in the metric, shape (stage, lane)."""
-        for chain in self._chains:
-            energy = chain.energy(scale_factor, modes).reshape(STAGES, -1)
-            weight = (chain.weight * chain.density[modes] / scale_factor**2).reshape(STAGES, -1)
-            yield chain, energy, weight * surroundings.inertia
+        for stream in self._streams:
+            weight = stream.weight * stream.density[modes] / scale_factor**2
+            yield stream, stream.energy(scale_factor, modes), weight * surroundings.inertia
 
-    def _streaming(self, chain: _Chain, flow: np.ndarray) -> dict:
-        """Free streaming of one chain, absorbed at its far end; the curvature is there for the shifted quadrupole.
+    def tail_rates(self, scale_factor: np.ndarray, modes: np.ndarray, surroundings) -> list[TailRates]:
+        """Step times rate of the chains beyond the quadrupole; parameters as in `step_rates`."""
+        return [
+            TailRates(stream.momentum * surroundings.x / stream.energy(scale_factor, modes)) for stream in self._streams
+        ]
 
-        Among themselves the moments of the tail stream at the mean speed of the step. What only streams has then gone
-        the right way at the end of it, and with one rate at all stages the solver is quicker.
-        """
-        strength, steepness = LAYER
-        mean = WEIGHTS[-1] @ flow
+    @staticmethod
+    def _streaming(stream: _Stream, flow: np.ndarray) -> dict:
+        """Free streaming of the first moments of one chain; the curvature is there for the shifted quadrupole."""
         rates = {}
-        for moment in range(self._last):
-            here, beyond = chain.unknown(moment), chain.unknown(moment + 1)
-            speed = (moment + 1) * (mean if moment >= FIRST_TAIL else flow)
-            rates[here, beyond] = -speed / (2 * moment + 1)
-            rates[beyond, here] = speed / (2 * moment + 3)
-        for moment in range(FIRST_TAIL, self._last + 1):
-            rates[chain.unknown(moment), chain.unknown(moment)] = -strength * (moment / self._last) ** steepness * mean
-        for moment in (1, 3):
-            rates[chain.unknown(moment), "curvature"] = SHIFT * rates[chain.unknown(moment), chain.unknown(2)]
+        for moment in range(QUADRUPOLE):
+            here, beyond = stream.unknown(moment), stream.unknown(moment + 1)
+            rates[here, beyond] = -(moment + 1) / (2 * moment + 1) * flow
+            rates[beyond, here] = (moment + 1) / (2 * moment + 3) * flow
+        rates[stream.unknown(1), "curvature"] = SHIFT * rates[stream.unknown(1), stream.unknown(QUADRUPOLE)]
         return rates
 
     def density(self, scale_factor: np.ndarray, y: Mapping[str, np.ndarray]) -> np.ndarray:
         """8 pi G a^2 times the perturbation of their energy density, shape (boundary, mode) [1/Mpc^2]."""
         total = np.zeros_like(scale_factor)
-        for chain in self._chains:
-            energy = chain.energy(scale_factor, slice(None))
-            total += chain.weight * chain.density / scale_factor**2 * energy * y[chain.unknown(0)]
+        for stream in self._streams:
+            energy = stream.energy(scale_factor, slice(None))
+            total += stream.weight * stream.density / scale_factor**2 * energy * y[stream.unknown(0)]
         return total
 
     def contrast(
@@ -188,13 +185,13 @@ class MassiveNeutrinos:
     ) -> tuple[np.ndarray, np.ndarray]:
         """Contrast of their rest mass, and its derivative by conformal time [1/Mpc], each of shape (boundary, mode)."""
         value, change = np.zeros((2, *scale_factor.shape))
-        for chain in self._chains:
-            number = 0.75 * chain.number * chain.share
-            speed = chain.momentum / chain.energy(scale_factor, slice(None))
-            value += number * y[chain.unknown(0)]
-            change -= number * wavenumber * speed * y[chain.unknown(1)]
+        for stream in self._streams:
+            number = 0.75 * stream.number * stream.share
+            speed = stream.momentum / stream.energy(scale_factor, slice(None))
+            value += number * y[stream.unknown(0)]
+            change -= number * wavenumber * speed * y[stream.unknown(1)]
         return value, change - 0.5 * wavenumber * y["metric_rate"]
 
     def __bool__(self) -> bool:
         """Whether there are any."""
-        return bool(self._chains)
+        return bool(self._streams)

@@ -29,8 +29,7 @@ from collections.abc import Callable
 
 import numpy as np
 
-from ..solver import Clock, lay_out
-from ..solver.collocation import STAGES
+from ..solver import Clock, StepRates, lay_out
 from ..universe import Conditions, Universe
 
 PARTS = ("real", "imaginary")
@@ -59,6 +58,7 @@ class PatchSystem:
 
     unknowns = tuple(f"{field}_{part}" for field in FIELDS for part in PARTS)
     observed = tuple(f"{field}_{part}" for field in ("delta_dark", "delta_baryon") for part in PARTS)
+    tails = ()
 
     def __init__(
         self,
@@ -102,25 +102,21 @@ class PatchSystem:
             state[self._row[f"{name}_real"]] = value
         return state
 
-    def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict:
+    def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> StepRates:
         """Evaluate step times rate; see `twofluid.solver.LinearSystem`."""
         now = self.universe.conditions(time)
         wavenumber = self.wavenumber[modes]
         drift = wavenumber * self.component[modes] * self.rms_velocity(now.scale_factor)
-        blown = self._per_step(drift, step)
+        blown = drift * step
         rates = {}
         for (row, column), rate in self._rates(now, wavenumber).items():
-            shared = self._per_step(rate, step)  # the same array for both parts: what follows is computed once
+            shared = rate * step  # the same array for both parts: what follows is computed once
             for part in PARTS:
                 rates[self._row[f"{row}_{part}"], self._row[f"{column}_{part}"]] = shared
         for field in ("delta_gas_temperature", "delta_baryon", "velocity_baryon"):
             real, imaginary = (self._row[f"{field}_{part}"] for part in PARTS)
             rates[real, imaginary], rates[imaginary, real] = blown, -blown
-        return rates
-
-    @staticmethod
-    def _per_step(rate: np.ndarray, step: np.ndarray) -> np.ndarray:
-        return np.broadcast_to(rate * step, (STAGES, *step.shape)).reshape(STAGES, -1)
+        return StepRates(rates)
 
     def _rates(self, now: Conditions, wavenumber: np.ndarray) -> dict:
         """Write the equations of the module's text, the wind left out, as rates [1/Mpc]."""

@@ -48,7 +48,7 @@ from collections.abc import Mapping
 
 import numpy as np
 
-from ..solver.collocation import STAGES
+from ..solver import StepRates
 from ..universe import Universe
 from ..universe.gas import plasma_sound_speed
 from .kinetic import ChainLengths
@@ -84,6 +84,7 @@ class SoundSpeedSystem:
 
     unknowns = ("delta_stream", "delta_dark", "delta_baryon", "theta_stream", "theta_baryon", "metric_rate")
     observed = unknowns
+    tails = ()
     neutrinos_may_have_mass = False
     stackable = False  # the release belongs to one universe
 
@@ -123,14 +124,14 @@ class SoundSpeedSystem:
         first |= {"delta_stream": first["delta_neutrino"], "theta_stream": first["theta_neutrino"]}
         return np.stack([first.get(name, np.zeros(len(start))) for name in self.unknowns])
 
-    def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict:
+    def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> StepRates:
         """Evaluate step times rate; see `twofluid.solver.LinearSystem`."""
         in_plasma = time[:1] < self.release  # the first stage tells: no step lies on both sides
         rates = self._rates(self.wavenumber[modes], time, in_plasma)
-        return {
-            (self._row[row], self._row[column]): np.broadcast_to(rate * step, time.shape).reshape(STAGES, -1)
+        return StepRates({
+            (self._row[row], self._row[column]): np.broadcast_to(rate * step, time.shape)
             for (row, column), rate in rates.items()
-        }
+        })
 
     def _rates(self, k: np.ndarray, time: np.ndarray, in_plasma: np.ndarray) -> dict:
         """Write the equations of the module's text as rates [1/Mpc]."""

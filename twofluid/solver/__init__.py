@@ -3,7 +3,8 @@
 from .clock import Clock, lay_out
 from .collocation import NODES, WEIGHTS
 from .elimination import Elimination
-from .integrate import Course, LinearSystem, SolverFailure, integrate
+from .integrate import Course, SolverFailure, integrate
+from .system import LinearSystem, StepRates, Tail, TailRates, rate_matrix
 
 __all__ = [
     "NODES",
@@ -13,6 +14,10 @@ __all__ = [
     "Elimination",
     "LinearSystem",
     "SolverFailure",
+    "StepRates",
+    "Tail",
+    "TailRates",
     "integrate",
     "lay_out",
+    "rate_matrix",
 ]

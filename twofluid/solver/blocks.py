@@ -1,19 +1,18 @@
 """Algebra of many small stage matrices at once, the lanes on the last axis.
 
-A block couples the three stages of one unknown to those of another. It comes in four kinds, and every
+A block couples the three stages of one unknown to those of another. It comes in three kinds, and every
 operation keeps to the cheapest kind that can hold its result:
 
 =========  ====================  ============================================================
 kind       shape                 meaning
 =========  ====================  ============================================================
 UNIFORM    (lane,)               the same number at the three stages
-SPECTRAL   (2, lane), complex    a function of W: its values at the real and a complex eigenvalue
 DIAGONAL   (stage, lane)         one number a stage
 FULL       (stage, stage, lane)  stages mix in any way
 =========  ====================  ============================================================
 
-Moments that stream freely have the same rate at all stages, so whatever an elimination makes of them
-alone is a function of W. Every operation writes its result into an array it is given.
+A column of numbers, one a stage, is held like a diagonal block. Every operation writes its result into an array
+it is given. A block that is the same in all lanes may have one lane only.
 """
 
 from collections.abc import Sequence
@@ -22,38 +21,32 @@ from functools import lru_cache
 
 import numpy as np
 
-from .collocation import EIGENVALUES, INVERSE_WEIGHTS, PROJECTORS, STAGES, WEIGHTS
+from .collocation import INVERSE_WEIGHTS, STAGES, STATE_LOAD
 
 
 class Kind(Enum):
-    """Kinds of block: shape before the lanes, and type of number."""
+    """Kinds of block: shape before the lanes."""
 
-    UNIFORM = ((), float)
-    SPECTRAL = ((2,), complex)
-    DIAGONAL = ((STAGES,), float)
-    FULL = ((STAGES, STAGES), float)
+    UNIFORM = ()
+    DIAGONAL = (STAGES,)
+    FULL = (STAGES, STAGES)
 
     def empty(self, lanes: int, parts: tuple[int, ...] = ()) -> np.ndarray:
         """Make room for blocks of this kind."""
-        shape, number = self.value
-        return np.empty((*parts, *shape, lanes), dtype=number)
+        return np.empty((*parts, *self.value, lanes))
 
 
-UNIFORM, SPECTRAL, DIAGONAL, FULL = Kind
+UNIFORM, DIAGONAL, FULL = Kind
 
 
 def kind_of(rate: np.ndarray) -> Kind:
-    """Tell the kind of a rate given from outside: uniform or diagonal."""
-    return UNIFORM if rate.ndim == 1 else DIAGONAL
+    """Tell the kind of a block given from outside."""
+    return (UNIFORM, DIAGONAL, FULL)[rate.ndim - 1]
 
 
 def combined(first: Kind, second: Kind) -> Kind:
     """Give the kind of the sum or product of two blocks."""
-    if first == second:
-        return first
-    if UNIFORM in (first, second):
-        return second if first == UNIFORM else first
-    return FULL
+    return max(first, second, key=lambda kind: len(kind.value))
 
 
 def diagonal_of(block: np.ndarray) -> np.ndarray:
@@ -61,46 +54,30 @@ def diagonal_of(block: np.ndarray) -> np.ndarray:
     return np.einsum("iil->il", block)
 
 
-# From eigenvalues to full blocks: real parts of projector times value, as one real matrix product.
-_FROM_SPECTRUM = np.stack([PROJECTORS.real, -PROJECTORS.imag], axis=1).reshape(-1, STAGES * STAGES).T.copy()
-
-
-def write_full(block: np.ndarray, kind: Kind, out: np.ndarray) -> None:
-    """Write a block of any kind as a full one."""
-    if kind == FULL:
-        out[...] = block
-    elif kind == SPECTRAL:
-        parts = np.stack([block.real, block.imag], axis=1).reshape(-1, block.shape[-1])
-        np.matmul(_FROM_SPECTRUM, parts, out=out.reshape(STAGES * STAGES, -1))
-    else:
+def write(block: np.ndarray, kinds: Sequence[Kind], out: np.ndarray) -> None:
+    """Write a block where there may be room for one of a wider kind."""
+    if kinds[0] != FULL and out.ndim == 3:
         out[...] = 0.0
         diagonal = diagonal_of(out)
         diagonal[...] = block
+    else:
+        out[...] = block
 
 
 def add(first: np.ndarray, second: np.ndarray, kinds: Sequence[Kind], out: np.ndarray) -> None:
     """Add two blocks; `out` may be one of them if it is of the kind of the result."""
-    if combined(*kinds) != FULL or kinds[0] == kinds[1]:
+    if FULL not in kinds or kinds[0] == kinds[1]:
         np.add(first, second, out=out)
         return
-    operands = [(first, kinds[0]), (second, kinds[1])]
-    operands.sort(key=lambda operand: (FULL, SPECTRAL).index(operand[1]) if operand[1] in (FULL, SPECTRAL) else 2)
-    (base, base_kind), (other, other_kind) = operands
-    if out is not base:
-        write_full(base, base_kind, out)
-    if other_kind == SPECTRAL:
-        out += _full(other, other_kind)
-    else:
-        diagonal = diagonal_of(out)
-        diagonal += other
+    full, other = (first, second) if kinds[0] == FULL else (second, first)
+    if out is not full:
+        out[...] = full
+    diagonal = diagonal_of(out)
+    diagonal += other
 
 
 def multiply(left: np.ndarray, right: np.ndarray, kinds: Sequence[Kind], out: np.ndarray) -> None:
     """Multiply two blocks."""
-    if combined(*kinds) == FULL and SPECTRAL in kinds:
-        left, right = (
-            _full(block, kind) if kind == SPECTRAL else block for block, kind in zip((left, right), kinds, strict=True)
-        )
     if left.ndim == right.ndim == 3:
         np.einsum("ikl,kjl->ijl", left, right, out=out)
     elif left.ndim == 2 and right.ndim == 3:
@@ -109,24 +86,24 @@ def multiply(left: np.ndarray, right: np.ndarray, kinds: Sequence[Kind], out: np
         np.multiply(left, right, out=out)
 
 
-def _full(block: np.ndarray, kind: Kind) -> np.ndarray:
-    full = FULL.empty(block.shape[-1])
-    write_full(block, kind, full)
-    return full
+def scale(block: np.ndarray, kinds: Sequence[Kind], out: np.ndarray, *, factor: float) -> None:
+    """Multiply a block by a number."""
+    np.multiply(block, factor, out=out)
 
 
-def write_free_inverse(kinds: Sequence[Kind], out: np.ndarray) -> None:
-    """Write the inverse of a pivot without a rate of its own: the Butcher matrix."""
-    out[...] = WEIGHTS[:, :, None]
+def start_alone(inverse: np.ndarray, kinds: Sequence[Kind], out: np.ndarray) -> None:
+    """Give the stages that a unit of old state makes by itself: a column."""
+    np.einsum("ijl,j->il", inverse, STATE_LOAD, out=out)
+
+
+def last_row(inverse: np.ndarray, kinds: Sequence[Kind], out: np.ndarray) -> None:
+    """Give what each stage adds to the last one: a column."""
+    out[...] = inverse[STAGES - 1]
 
 
 def invert_pivot(rate: np.ndarray, kinds: Sequence[Kind], out: np.ndarray) -> None:
-    """Invert the pivot ``W - rate``: eigenvalue by eigenvalue if it is a function of W, else by cofactors."""
-    if kinds[0] in (UNIFORM, SPECTRAL):
-        np.subtract(EIGENVALUES[:, None], rate, out=out)
-        np.reciprocal(out, out=out)
-    else:
-        _adjugate(rate.shape[-1]).invert(rate, out)
+    """Invert the pivot ``W - rate`` by cofactors."""
+    _adjugate(out.shape[-1]).invert(rate, out)
 
 
 @lru_cache(maxsize=4)
@@ -145,7 +122,7 @@ class _Adjugate:
         self._product, self._determinant = np.empty((STAGES, lanes)), np.empty(lanes)
 
     def invert(self, rate: np.ndarray, out: np.ndarray) -> None:
-        """Invert ``W - rate``, the rate diagonal or full."""
+        """Invert ``W - rate``, the rate of any kind."""
         core, product, determinant = self._core, self._product, self._determinant
         if rate.ndim == 3:
             np.subtract(INVERSE_WEIGHTS[:, :, None], rate, out=core)
@@ -162,17 +139,3 @@ class _Adjugate:
         np.einsum("jl,jl->l", core[0], out[:, 0], out=determinant)
         np.reciprocal(determinant, out=determinant)
         np.multiply(out, determinant, out=out)
-
-
-def stack_full(*blocks_and_kinds) -> None:
-    """Stack blocks of any kinds as full ones: blocks, their kinds, the array to fill."""
-    *parts, kinds, out = blocks_and_kinds
-    for part, kind, place in zip(parts, kinds, out, strict=True):
-        write_full(part, kind, place)
-
-
-def stack_diagonal(*blocks_and_kinds) -> None:
-    """Stack uniform and diagonal blocks as diagonal ones: blocks, their kinds, the array to fill."""
-    *parts, _, out = blocks_and_kinds
-    for part, place in zip(parts, out, strict=True):
-        place[...] = part

@@ -1,4 +1,4 @@
-"""The three-stage Radau IIA collocation method: nodes, weights, their inverse and its eigenbasis.
+"""The three-stage Radau IIA collocation method: nodes, weights and their inverse.
 
 The method has order five, is L-stable and stiffly accurate (the last stage is the new state),
 so a component that decays much faster than the step is damped instead of amplified.
@@ -27,27 +27,11 @@ def _butcher_matrix() -> np.ndarray:
     return integrals @ np.linalg.inv(vandermonde)
 
 
-def _eigenbasis(matrix: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Give the real and one of the two complex eigenvalues, and what each contributes to a function of the matrix.
-
-    A function f of the matrix is ``sum_n Re[f(eigenvalue_n) projector_n]``, the projector of the complex
-    eigenvalue standing for its conjugate too.
-    """
-    values, vectors = np.linalg.eig(matrix)
-    inverse = np.linalg.inv(vectors)
-    real, pair = int(np.argmin(np.abs(values.imag))), int(np.argmax(values.imag))
-    projectors = [np.outer(vectors[:, n], inverse[n]) for n in (real, pair)]
-    return values[[real, pair]], np.array([projectors[0], 2.0 * projectors[1]])
-
-
 #: Butcher matrix, shape (stage, stage) [unitless].
 WEIGHTS = _butcher_matrix()
 
 #: Its inverse: the stage equations read ``(W - step * rate) Y = W 1 y``.
 INVERSE_WEIGHTS = np.linalg.inv(WEIGHTS)
-
-#: Eigenvalues of W, shape (2,), and their projectors, shape (2, stage, stage); see `_eigenbasis`.
-EIGENVALUES, PROJECTORS = _eigenbasis(INVERSE_WEIGHTS)
 
 #: ``W 1``, what one unit of the old state contributes to each stage equation, shape (stage,).
 STATE_LOAD = INVERSE_WEIGHTS.sum(axis=1)

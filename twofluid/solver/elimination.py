@@ -4,19 +4,25 @@ The stage equations of one step read ``(W - step A) Y = W 1 y`` with one 3 x 3 b
 non-zero entry of the rate matrix A. Which entries are non-zero never changes, so the order of the
 elimination, its fill-in and all block operations are worked out once (`Elimination`). The numbers do
 not depend on the state, so they are worked out for a whole stretch of steps as long arrays
-(`Elimination.factor`); only the substitution is sequential in time (`Factors.advance`).
+(`Elimination.factor`); only the substitution is sequential in time (`twofluid.solver.substitution`).
+
+Tails come first (`twofluid.solver.tails`). Of the other unknowns those that no unknown before them touches are
+leaves: their load is nothing but their old state, and all that is needed of them in the end is their last stage, so
+that columns of numbers do for both where others need 3 x 3 blocks.
 """
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
-from .blocks import DIAGONAL, FULL, UNIFORM, Kind
-from .collocation import STAGES, STATE_LOAD
+from . import blocks
+from .blocks import DIAGONAL, FULL, Kind
+from .collocation import STAGES, WEIGHTS
 from .program import Program, Symbol
-
-Entry = tuple[int, int]
+from .substitution import Factors, Group, Leaves, State
+from .system import Entry, StepRates, Tail
+from .tails import families
 
 
 @dataclass(frozen=True)
@@ -30,6 +36,8 @@ class Pivot:
     ----------
     index : int
         The unknown.
+    leaf : bool
+        Whether no unknown eliminated before it touches it.
     rows, columns : tuple of int
         Unknowns that need it, and unknowns it needs, among those eliminated later.
     inverse : int
@@ -39,6 +47,7 @@ class Pivot:
     """
 
     index: int
+    leaf: bool
     rows: tuple[int, ...]
     columns: tuple[int, ...]
     inverse: Symbol
@@ -47,19 +56,15 @@ class Pivot:
     response: tuple[Symbol, ...]
 
     @property
-    def blocks(self) -> tuple:
+    def blocks(self) -> tuple[tuple[Symbol, ...], ...]:
         """Symbols of what the substitution is made of."""
-        return self.inverse, self.below, self.right
+        return (self.inverse,), self.below, self.right
 
     def goes_with(self, other: "Pivot", kind: Callable[[Symbol], Kind]) -> bool:
         """Whether both are independent, serve different rows, and are made of the same kinds of block."""
-        alike, others = ([[kind(symbol) for symbol in part] for part in pivot._parts] for pivot in (self, other))
+        alike, others = ([[kind(symbol) for symbol in part] for part in pivot.blocks] for pivot in (self, other))
         touched = (*self.rows, *self.columns)
         return alike == others and other.index not in touched and not set(self.rows) & set(other.rows)
-
-    @property
-    def _parts(self) -> tuple[tuple[Symbol, ...], ...]:
-        return (self.inverse,), self.below, self.right
 
 
 class Elimination:
@@ -68,24 +73,49 @@ class Elimination:
     Parameters
     ----------
     count : int
-        Number of unknowns.
-    sample : mapping of (row, column) to array
+        Number of unknowns, those in tails left out.
+    sample : StepRates
         Step times rate for any steps: the entries that are ever non-zero, their kinds of block (see
         `twofluid.solver.blocks`), and by being the same array, which are always equal.
+    tails : sequence of Tail, optional
+        Tails of the system.
+
+    Attributes
+    ----------
+    pivots : list of Pivot
+    families : list of Family
+        The tails, those of one kind together.
     """
 
-    def __init__(self, count: int, sample: Mapping[Entry, np.ndarray]):
+    def __init__(self, count: int, sample: StepRates, tails: Sequence[Tail] = ()):
         self._count = count
-        self._program = Program()
-        work = {entry: self._program.input(entry, rate) for entry, rate in sample.items()}
+        self._program = program = Program()
+        self._free = program.constant("free inverse", WEIGHTS[:, :, None])
+        self.families = families(tails, sample.tails)
+        work = {entry: program.input(entry, rate) for entry, rate in sample.entries.items()}
+        self._touched: set[int] = set()
+        for number, family in enumerate(self.families):
+            self._attach(number, family, work)
         self.pivots = [self._eliminate(index, work) for index in range(count)]
-        self._groups = _groups(self.pivots, self._program)
-        self._program.close(symbol for group in self._groups for symbol in group.symbols)
-        self._factors: dict[tuple[int, int], Factors] = {}
+        self._leaves = self._gather([pivot for pivot in self.pivots if pivot.leaf])
+        self._groups = _groups([pivot for pivot in self.pivots if not pivot.leaf], program)
+        program.close(symbol for part in (self._leaves, *self._groups) for symbol in part.symbols)
+        self._factors: Factors | None = None
 
     def kind(self, symbol: Symbol) -> Kind:
         """Give the kind of block a symbol of a pivot stands for."""
         return self._program.kind(symbol)
+
+    def _attach(self, number: int, family, work: dict[Entry, Symbol]) -> None:
+        """Add what the tails of one kind do to their sinks once they are eliminated."""
+        program = self._program
+        family.room(1)
+        for tail, place in zip(family.tails, family.set_of, strict=True):
+            block = program.input(("tail", number, place), family.block[place])
+            for source, weight in tail.sources.items():
+                entry, weighted = (tail.sink, source), program.scaled(block, weight)
+                work[entry] = program.sum(work[entry], weighted) if entry in work else weighted
+            self._touched |= {tail.sink, *tail.sources}
 
     def _eliminate(self, index: int, work: dict[Entry, Symbol]) -> Pivot:
         """Take one unknown out of the remaining blocks, by symbol."""
@@ -95,77 +125,95 @@ class Elimination:
         columns = tuple(column for column in later if (index, column) in work)
         below = tuple(work.pop((row, index)) for row in rows)
         right = tuple(work.pop((index, column)) for column in columns)
-        inverse = program.inverse(own)
+        inverse = self._free if own is None else program.inverse(own)
         response = tuple(program.product(inverse, block) for block in right)
         for row, left in zip(rows, below, strict=True):
-            for column, block, product in zip(columns, right, response, strict=True):
-                fill = program.fill(left, block, inverse, product)
+            for column, product in zip(columns, response, strict=True):
+                fill = program.product(left, product)
                 entry = row, column
                 work[entry] = program.sum(work[entry], fill) if entry in work else fill
-        return Pivot(index, rows, columns, inverse, below, right, response)
+        leaf = index not in self._touched
+        self._touched.update(rows, columns)
+        return Pivot(index, leaf, rows, columns, inverse, below, right, response)
 
-    def factor(self, rates: Mapping[Entry, np.ndarray], steps: int) -> "Factors":
+    def _gather(self, pivots: Sequence[Pivot]) -> Leaves:
+        """Put the leaves together, coupling by coupling."""
+        program = self._program
+        full_weight = program.constant("quadrature", WEIGHTS[STAGES - 1][:, None])
+        shares, feeds, alone = [], [], {}
+        for pivot in pivots:
+            free = pivot.inverse == self._free  # then a unit of old state stays what it is
+            if not free:
+                alone[pivot.index] = program.column(blocks.start_alone, pivot.inverse)
+            last = full_weight if free else program.column(blocks.last_row, pivot.inverse)
+            for row, block in zip(pivot.rows, pivot.below, strict=True):
+                shares.append((row, pivot.index, block if free else program.product(block, alone[pivot.index])))
+            for column, block in zip(pivot.columns, pivot.right, strict=True):
+                feeds.append((pivot.index, column, program.product(block, last)))
+
+        def stack(symbols: Sequence[Symbol]) -> Symbol | None:
+            return program.stack(symbols, DIAGONAL) if symbols else None
+
+        return Leaves(
+            rows=[pivot.index for pivot in pivots],
+            damped=list(alone),
+            alone=stack(list(alone.values())),
+            share_rows=[row for row, _, _ in shares],
+            share_leaves=[leaf for _, leaf, _ in shares],
+            share=stack([symbol for _, _, symbol in shares]),
+            feed_leaves=[leaf for leaf, _, _ in feeds],
+            feed_columns=[column for _, column, _ in feeds],
+            feed=stack([symbol for _, _, symbol in feeds]),
+        )
+
+    def split(self, state: np.ndarray) -> State:
+        """Part a state, shape (unknown, mode), into unknowns outside of tails and coordinates of the tails."""
+        return [state[: self._count], *(family.coordinates(state) for family in self.families)]
+
+    def read(self, state: State, rows: np.ndarray) -> np.ndarray:
+        """Read unknowns off a parted state, shape (row, mode)."""
+        core, *coordinates = state
+        if rows.max() < self._count:
+            return core[rows]
+        found = np.empty((len(rows), core.shape[1]))
+        found[rows < self._count] = core[rows[rows < self._count]]
+        for family, own in zip(self.families, coordinates, strict=True):
+            for place, values in family.members(own, rows):
+                found[place] = values
+        return found
+
+    def factor(self, rates: StepRates, steps: int, modes: int) -> Factors:
         """Eliminate all unknowns for every step and mode of a stretch.
 
         Parameters
         ----------
-        rates : mapping of (row, column) to array
-            Step length times rate, shape (lane,) or (stage, lane) [unitless];
-            the lanes are steps times modes, the mode running fastest.
-        steps : int
-            Number of steps among the lanes.
+        rates : StepRates
+            The lanes are steps times modes, the mode running fastest; any further lanes are left alone.
+        steps, modes : int
+            Number of steps, and of modes, among the lanes.
 
         Returns
         -------
         Factors
             Valid until the next stretch is factored.
         """
-        lanes = next(iter(rates.values())).shape[-1]
+        lanes = next(iter(rates.entries.values())).shape[-1]
+        inputs = dict(rates.entries)
+        for number, family in enumerate(self.families):
+            if family.lanes != lanes:
+                family.room(lanes)
+            family.factor(rates.tails)
+            inputs |= {("tail", number, place): block for place, block in enumerate(family.block)}
         bound = self._program.bind(lanes)
-        bound.run(rates)
-        key = lanes, steps
-        if key not in self._factors:
-            if len(self._factors) > 1:
-                self._factors.clear()
-            self._factors[key] = Factors(self._groups, bound.values, self._count, steps, lanes // steps)
-        return self._factors[key]
+        bound.run(inputs)
+        if self._factors is None or self._factors.shape != (lanes, steps, modes):
+            self._factors = Factors(
+                self._leaves, self._groups, self.families, bound.values, self._count, (lanes, steps, modes)
+            )
+        return self._factors
 
 
-@dataclass(frozen=True)
-class _Group:
-    """Pivots substituted together because their blocks are the same, or of the same kinds.
-
-    Attributes
-    ----------
-    sets : int
-        Different sets of blocks: one for all pivots, or one for each.
-    own, rows, columns : list of int
-        Where their unknowns, those below and those to the right stand in the state, pivot by pivot.
-    inverse : int
-        Symbol of the stacked inverses, as full blocks, set by set.
-    below, beyond : int or None
-        Symbols of the stacked blocks for the two passes, set by set, None if there are none.
-    below_full, beyond_full : bool
-        Whether those blocks are full. If none beyond is, the inverse is still to be applied to what comes from there.
-    """
-
-    sets: int
-    own: list[int]
-    rows: list[int]
-    columns: list[int]
-    inverse: Symbol
-    below: Symbol | None
-    beyond: Symbol | None
-    below_full: bool
-    beyond_full: bool
-
-    @property
-    def symbols(self) -> tuple[Symbol, ...]:
-        """All results the substitution needs."""
-        return tuple(symbol for symbol in (self.inverse, self.below, self.beyond) if symbol is not None)
-
-
-def _groups(pivots: Sequence[Pivot], program: Program) -> list[_Group]:
+def _groups(pivots: Sequence[Pivot], program: Program) -> list[Group]:
     """Put neighbours together that can be substituted together."""
     members: list[list[Pivot]] = []
     for pivot in pivots:
@@ -176,150 +224,21 @@ def _groups(pivots: Sequence[Pivot], program: Program) -> list[_Group]:
     groups = []
     for group in members:
         different = group[:1] if all(pivot.blocks == group[0].blocks for pivot in group) else group
-        plain = all(program.kind(symbol) in (UNIFORM, DIAGONAL) for symbol in group[0].right)
+        plain = all(program.kind(symbol) != FULL for symbol in group[0].right)
         right = [symbol for pivot in different for symbol in (pivot.right if plain else pivot.response)]
-        below = program.stack([symbol for pivot in different for symbol in pivot.below]) if group[0].below else None
-        beyond = program.stack(right) if right else None
+        below = [symbol for pivot in different for symbol in pivot.below]
+        below_full = any(program.kind(symbol) == FULL for symbol in below)
         groups.append(
-            _Group(
+            Group(
                 sets=len(different),
                 own=[pivot.index for pivot in group],
                 rows=[row for pivot in group for row in pivot.rows],
                 columns=[column for pivot in group for column in pivot.columns],
-                inverse=program.stack([pivot.inverse for pivot in different]),
-                below=below,
-                beyond=beyond,
-                below_full=below is not None and program.kind(below) == FULL,
+                inverse=program.stack([pivot.inverse for pivot in different], FULL),
+                below=program.stack(below, FULL if below_full else DIAGONAL) if below else None,
+                beyond=program.stack(right, DIAGONAL if plain else FULL) if right else None,
+                below_full=below_full,
                 beyond_full=not plain,
             )
         )
     return groups
-
-
-class Factors:
-    """The eliminated stage equations of a stretch of steps, and room for one step of all modes.
-
-    Parameters
-    ----------
-    groups : sequence
-        Groups of eliminated unknowns in order.
-    values : sequence of array
-        Results of the elimination's program by symbol.
-    count, steps, modes : int
-        Number of unknowns, of steps in the stretch, of modes.
-    """
-
-    def __init__(self, groups: Sequence[_Group], values: Sequence[np.ndarray], count: int, steps: int, modes: int):
-        self._load = np.empty((count, STAGES, modes))
-        self._stages = np.empty((count, STAGES, modes))
-        self._substitutions = [_Substitution(group, values, steps, self._load, self._stages) for group in groups]
-        self._backwards = [substitution for substitution in reversed(self._substitutions) if substitution.needs_others]
-
-    @property
-    def groups(self) -> int:
-        """Number of separate substitutions a step takes."""
-        return len(self._substitutions)
-
-    def advance(self, state: np.ndarray, step: int) -> np.ndarray:
-        """Carry the state over one step.
-
-        Parameters
-        ----------
-        state : array, shape (unknown, mode)
-            State at the beginning of the step.
-        step : int
-            Which step of the stretch.
-
-        Returns
-        -------
-        array, shape (unknown, stage, mode)
-            All stages of the step, good until the next one; the last stage is the new state.
-        """
-        np.multiply(STATE_LOAD[:, None], state[:, None], out=self._load)
-        for substitution in self._substitutions:
-            substitution.forward(step)
-        for substitution in self._backwards:
-            substitution.backward(step)
-        return self._stages
-
-
-class _Substitution:
-    """One group's share in the two passes, with views of everything it touches."""
-
-    def __init__(self, group: _Group, values: Sequence[np.ndarray], steps: int, load: np.ndarray, stages: np.ndarray):
-        size, modes = len(group.own), load.shape[-1]
-        own = _positions(group.own)
-        rows, columns = len(group.rows) // size, len(group.columns) // size
-        self.needs_others = group.beyond is not None
-        self._below_full, self._beyond_full = group.below_full, group.beyond_full
-        self._inverse = _by_step(values[group.inverse], steps, (group.sets, STAGES, STAGES))
-        self._own_load, self._own = load[own], stages[own]
-        self._own_alone = self._own[:, None]
-        if group.below is not None:
-            below = (group.sets, rows, STAGES, STAGES)[: 3 + group.below_full]
-            self._below = _by_step(values[group.below], steps, below)
-        if group.beyond is not None:
-            beyond = (group.sets, columns, STAGES, STAGES)[: 3 + group.beyond_full]
-            self._beyond = _by_step(values[group.beyond], steps, beyond)
-        self._share = np.empty((size, rows, STAGES, modes))
-        self._flat_share = self._share.reshape(-1, STAGES, modes)
-        self._target = _View(load, group.rows)
-        self._source, self._given = _View(stages, group.columns), (size, columns, STAGES, modes)
-        self._received, self._change = np.empty((2, size, STAGES, modes))
-
-    def forward(self, step: int) -> None:
-        """Solve for these unknowns as if they needed no other; pass their share on to the rows below."""
-        np.einsum("gijm,gjm->gim", self._inverse[step], self._own_load, out=self._own)  # one set stretches over all
-        if not self._share.size:
-            return
-        if self._below_full:
-            np.einsum("grijm,gjm->grim", self._below[step], self._own, out=self._share)
-        else:
-            np.multiply(self._below[step], self._own_alone, out=self._share)
-        self._target.add(self._flat_share)
-
-    def backward(self, step: int) -> None:
-        """Add what these unknowns receive from those eliminated after them."""
-        block, change = self._beyond[step], self._change
-        given = self._source.read().reshape(self._given)
-        if self._beyond_full:
-            np.einsum("gcijm,gcjm->gim", block, given, out=change)
-        else:
-            received = self._received
-            if block.shape[1] == 1:
-                np.multiply(block[:, 0], given[:, 0], out=received)
-            else:
-                np.einsum("gcim,gcim->gim", block, given, out=received)
-            np.einsum("gijm,gjm->gim", self._inverse[step], received, out=change)
-        np.add(self._own, change, out=self._own)
-
-
-class _View:
-    """Some unknowns of an array of stages: seen in place where they follow one another, else copied."""
-
-    def __init__(self, array: np.ndarray, indices: list[int]):
-        self._array, self._indices = array, _positions(indices)
-        self._place = array[self._indices] if isinstance(self._indices, slice) else None
-
-    def read(self) -> np.ndarray:
-        """Give their values."""
-        return self._array[self._indices] if self._place is None else self._place
-
-    def add(self, change: np.ndarray) -> None:
-        """Add to their values; the unknowns differ from one another."""
-        if self._place is None:
-            self._array[self._indices] += change
-        else:
-            np.add(self._place, change, out=self._place)
-
-
-def _positions(indices: list[int]) -> slice | np.ndarray:
-    """Index the state without a copy where the positions follow one another."""
-    if indices and indices == list(range(indices[0], indices[0] + len(indices))):
-        return slice(indices[0], indices[0] + len(indices))
-    return np.array(indices, dtype=int)
-
-
-def _by_step(array: np.ndarray, steps: int, shape: tuple[int, ...]) -> list[np.ndarray]:
-    """Give views of every step, modes on the last axis behind the shape of the blocks."""
-    return [array.reshape(*shape, steps, -1)[..., step, :] for step in range(steps)]

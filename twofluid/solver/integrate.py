@@ -1,50 +1,22 @@
-"""March a linear system over its clock, all modes in lockstep."""
+"""March a linear system over its clock, all modes in lockstep.
+
+Modes are sorted by the length of their clocks, so that those still on their way are always the first ones: as others
+arrive, fewer and fewer march.
+"""
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
-from typing import Protocol
 
 import numpy as np
 
 from .collocation import NODES, STAGES
-from .elimination import Elimination, Entry
+from .elimination import Elimination
+from .substitution import State
+from .system import LinearSystem
 
 LANES_PER_STRETCH = 1024  # steps times modes eliminated at once: long enough for arrays, short enough for the cache
 MODES_PER_BATCH = 512  # at most so many modes march together
-STEP_OVERHEAD = 100  # what a step costs whatever the number of modes, in lanes (measured)
-BATCH_GRAIN = 16  # batches end at multiples of this many modes
-
-
-class LinearSystem(Protocol):
-    """What the integrator asks of a linear system ``dy/dt = A(t) y``, one system a mode.
-
-    1. `unknowns` names the rows of y in the order in which they are to be eliminated: chains from
-       their far end first, the most coupled unknowns last.
-    2. `step_rates` gives step times rate for every entry of A that is ever non-zero.
-    """
-
-    unknowns: Sequence[str]
-
-    def step_rates(self, modes: np.ndarray, time: np.ndarray, step: np.ndarray) -> dict[Entry, np.ndarray]:
-        """Evaluate step times rate.
-
-        Parameters
-        ----------
-        modes : array of int, shape (mode,)
-            Which modes are asked for.
-        time : array, shape (stage, step, mode)
-            Stage times.
-        step : array, shape (step, mode)
-            Step lengths.
-
-        Returns
-        -------
-        dict of (row, column) to array
-            Shape (lane,) where the rate is the same at the three stages, else (stage, lane), with
-            lane = step times mode [unitless]. Entries that are always equal may be one array: what
-            follows from them is then computed once.
-        """
-        ...
+GRAIN = 16  # modes leave the march in groups of so many
 
 
 class SolverFailure(RuntimeError):
@@ -110,65 +82,69 @@ def integrate(
     SolverFailure
         If a state is no longer finite; names mode and time.
     """
+    sample = system.step_rates(np.zeros(1, int), np.full((STAGES, 1), times[0, 0]), np.zeros(1))
+    count = len(system.unknowns) - sum(len(tail.rows) for tail in system.tails)
+    elimination = Elimination(count, sample, system.tails)
     rows = np.array([system.unknowns.index(name) for name in observe])
-    observed = np.empty((len(rows), *times.shape))
-    sample = system.step_rates(np.arange(1), np.tile(times[0, 0], (STAGES, 1, 1)), np.zeros((1, 1)))
-    elimination = Elimination(len(system.unknowns), sample)
     length = (np.diff(times, axis=0) > 0.0).sum(axis=0)
-    batches = _batches(length)
-    total = sum(len(modes) * length[modes].max() for modes in batches)
-    counts = {"steps": int(length.sum()), "lanes": 0, "factorizations": 0, "rate_evaluations": 0}
-    for modes in batches:
-        steps = int(length[modes].max())
-        state = start[:, modes]
-        observed[:, 0, modes] = state[rows]
-        stride = max(1, LANES_PER_STRETCH // len(modes))
-        for first in range(0, steps, stride):
-            stretch = times[first : min(first + stride, steps) + 1, modes]
-            state = _march(system, elimination, modes, stretch, state, rows, observed[:, first + 1 :])
-            counts["lanes"] += (len(stretch) - 1) * len(modes)
-            counts["factorizations"] += 1
-            counts["rate_evaluations"] += 1
+    order = np.argsort(-length, kind="stable")
+    batches = [order[first : first + MODES_PER_BATCH] for first in range(0, len(order), MODES_PER_BATCH)]
+    plans = [_stretches(length[modes]) for modes in batches]
+    total = sum(steps * active for plan in plans for _, steps, active in plan)
+    stretches = sum(len(plan) for plan in plans)
+    counts = {"steps": int(length.sum()), "lanes": total, "factorizations": stretches, "rate_evaluations": stretches}
+    observed, done = np.empty((len(rows), *times.shape)), 0
+    for modes, plan in zip(batches, plans, strict=True):
+        lanes = max((steps * active for _, steps, active in plan), default=0)
+        state = elimination.split(start[:, modes])
+        record = np.empty((len(times), len(rows), len(modes)))
+        record[0] = elimination.read(state, rows)
+        for first, steps, active in plan:
+            boundaries = times[first : first + steps + 1, modes[:active]]
+            state = [part[..., :active] for part in state]
+            record[first + 1 :, :, active:] = record[first, :, active:]  # those that have arrived stay
+            state = _march(system, elimination, modes[:active], boundaries, lanes, state, rows, record[first + 1 :])
+            done += steps * active
             if progress is not None:
-                progress(counts["lanes"], total)
-        observed[:, steps + 1 :, modes] = state[rows][:, None]
+                progress(done, total)
+        arrived = int(length[modes[0]])
+        record[arrived + 1 :] = record[arrived]
+        observed[:, :, modes] = record.transpose(1, 0, 2)
     return Course(observed, counts)
 
 
-def _batches(length: np.ndarray) -> list[np.ndarray]:
-    """Group modes with clocks of similar length, the longest first, at the least cost in padding and overhead.
-
-    A batch costs its longest clock times (modes + overhead); the best way to cut the sorted modes is found
-    from the end backwards.
-    """
-    order = np.argsort(-length, kind="stable")
-    cuts = [*range(0, len(order), BATCH_GRAIN), len(order)]
-    cost, following = {len(order): 0.0}, {}
-    for place in reversed(range(len(cuts) - 1)):
-        first = cuts[place]
-        ends = [end for end in cuts[place + 1 :] if end - first <= MODES_PER_BATCH]
-        prices = [length[order[first]] * (end - first + STEP_OVERHEAD) + cost[end] for end in ends]
-        best = int(np.argmin(prices))
-        cost[first], following[first] = prices[best], ends[best]
-    batches, first = [], 0
-    while first < len(order):
-        batches.append(order[first : following[first]])
-        first = following[first]
-    return batches
+def _stretches(length: np.ndarray) -> list[tuple[int, int, int]]:
+    """Cut the march of modes sorted by length into stretches: first step, number of steps, and of modes on their way."""
+    plan, first = [], 0
+    lanes = max(LANES_PER_STRETCH, len(length))
+    while first < length[0]:
+        going = np.count_nonzero(length > first)
+        active = min(-(-going // GRAIN) * GRAIN, len(length))
+        steps = min(lanes // active, int(length[0]) - first)
+        plan.append((first, steps, active))
+        first += steps
+    return plan
 
 
-def _march(system, elimination, modes, stretch, state, rows, observed) -> np.ndarray:
-    """Advance one batch over a stretch of steps; record the observed rows; return the new state."""
-    step = np.diff(stretch, axis=0)
-    stage_times = stretch[:-1] + NODES[:, None, None] * step
-    factors = elimination.factor(system.step_rates(modes, stage_times, step), len(step))
-    for index in range(len(step)):
-        state = factors.advance(state, index)[:, STAGES - 1].copy()
-        observed[:, index, modes] = state[rows]
-    finite = np.isfinite(observed[:, : len(step)][..., modes]).all(axis=0)
+def _march(system, elimination, modes, boundaries, lanes, state, rows, record) -> State:
+    """Advance modes over a stretch of steps; record the observed rows; return the new state."""
+    step = np.diff(boundaries, axis=0)
+    stage_times = boundaries[:-1] + NODES[:, None, None] * step
+    steps, active = step.shape
+    unused = lanes - step.size  # lanes of no length make every stretch as long as the first
+    rates = system.step_rates(
+        np.pad(np.tile(modes, steps), (0, unused), mode="edge"),
+        np.pad(stage_times.reshape(STAGES, -1), ((0, 0), (0, unused)), mode="edge"),
+        np.pad(step.ravel(), (0, unused)),
+    )
+    factors = elimination.factor(rates, steps, active)
+    for index in range(steps):
+        state = factors.advance(state, index)
+        record[index, :, :active] = elimination.read(state, rows)
+    finite = np.isfinite(record[:steps, :, :active]).all(axis=1)
     if not finite.all():
         failed, mode = np.argwhere(~finite)[0]
         raise SolverFailure(
-            "the solution is no longer finite", mode=int(modes[mode]), time=float(stretch[failed + 1, mode])
+            "the solution is no longer finite", mode=int(modes[mode]), time=float(boundaries[failed + 1, mode])
         )
     return state

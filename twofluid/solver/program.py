@@ -2,18 +2,19 @@
 
 Which blocks an elimination multiplies, adds and inverts depends only on the pattern of the system.
 The program records these operations by symbol; an operation on the same symbols is recorded once,
-so that unknowns with the very same rates (moment chains) cost no more than one of them. Before it
-runs, every operation is given the array for its result, and an array is given again as soon as
-nothing needs its content: all of it stays in the processor's cache.
+so that unknowns with the very same rates cost no more than one of them. Before it runs, every
+operation is given the array for its result, and an array is given again as soon as nothing needs
+its content: all of it stays in the processor's cache. Blocks that end up in one stack are written there at once.
 """
 
 from collections.abc import Callable, Hashable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 
 from . import blocks
-from .blocks import DIAGONAL, FULL, SPECTRAL, UNIFORM, Kind
+from .blocks import DIAGONAL, FULL, Kind
 
 Symbol = int
 
@@ -22,13 +23,17 @@ Symbol = int
 class _Operation:
     """One operation: what it computes from which results, and what it gives.
 
-    Without a call it is an input, its only operand the key that finds it.
+    Without a call it is an input or a constant, its only operand the key that finds it, or the array.
     """
 
     call: Callable | None
     operands: tuple
     kind: Kind
     parts: tuple[int, ...] = ()  # of a stack
+
+    @property
+    def is_stack(self) -> bool:
+        return bool(self.parts)
 
 
 class Program:
@@ -38,8 +43,7 @@ class Program:
         self._operations: list[_Operation] = []
         self._known: dict[Hashable, Symbol] = {}
         self._wanted: frozenset[Symbol] = frozenset()
-        self._needed: frozenset[Symbol] = frozenset()
-        self._bound: dict[int, _Bound] = {}
+        self._bound: _Bound | None = None
 
     def kind(self, symbol: Symbol) -> Kind:
         """Give the kind of a result."""
@@ -49,12 +53,13 @@ class Program:
         """Take a block from outside: `key` finds it when the program runs; the same array is the same symbol."""
         return self._record(("input", id(sample)), None, (key,), blocks.kind_of(sample))
 
-    def inverse(self, rate: Symbol | None) -> Symbol:
-        """Invert the pivot ``W - rate``; without a rate of its own that is a constant."""
-        if rate is None:
-            return self._record("free inverse", blocks.write_free_inverse, (), FULL)
-        kind = SPECTRAL if self.kind(rate) in (UNIFORM, SPECTRAL) else FULL
-        return self._record(("inverse", rate), blocks.invert_pivot, (rate,), kind)
+    def constant(self, name: str, block: np.ndarray) -> Symbol:
+        """Take a block that is always the same, with one lane."""
+        return self._record(("constant", name), None, (block,), blocks.kind_of(block))
+
+    def inverse(self, rate: Symbol) -> Symbol:
+        """Invert the pivot ``W - rate``."""
+        return self._record(("inverse", rate), blocks.invert_pivot, (rate,), FULL)
 
     def product(self, left: Symbol, right: Symbol) -> Symbol:
         """Multiply two blocks."""
@@ -66,19 +71,18 @@ class Program:
         kind = blocks.combined(self.kind(first), self.kind(second))
         return self._record(("sum", first, second), blocks.add, (first, second), kind)
 
-    def fill(self, left: Symbol, right: Symbol, inverse: Symbol, response: Symbol) -> Symbol:
-        """Multiply ``left inverse right``, given the response ``inverse right``, the cheaper way round."""
-        if self.kind(left) == self.kind(right) == UNIFORM:
-            return self.product(self.product(left, right), inverse)
-        return self.product(left, response)
+    def scaled(self, block: Symbol, factor: float) -> Symbol:
+        """Multiply a block by a number."""
+        call = partial(blocks.scale, factor=factor)
+        return block if factor == 1.0 else self._record(("scaled", block, factor), call, (block,), self.kind(block))
 
-    def stack(self, symbols: Sequence[Symbol]) -> Symbol:
-        """Put blocks into one array, as diagonal ones if they can be, else as full ones."""
-        if len(symbols) == 1 and self.kind(symbols[0]) == FULL:
-            return symbols[0]
-        plain = all(self.kind(symbol) in (UNIFORM, DIAGONAL) for symbol in symbols)
-        call, kind = (blocks.stack_diagonal, DIAGONAL) if plain else (blocks.stack_full, FULL)
-        return self._record(("stack", *symbols), call, tuple(symbols), kind, (len(symbols),))
+    def column(self, call: Callable, block: Symbol) -> Symbol:
+        """Take a column of numbers, one a stage, from a block."""
+        return self._record((call.__name__, block), call, (block,), DIAGONAL)
+
+    def stack(self, symbols: Sequence[Symbol], kind: Kind) -> Symbol:
+        """Put blocks into one array, as blocks of a kind that holds them all."""
+        return self._record(("stack", *symbols, kind), blocks.write, tuple(symbols), kind, (len(symbols),))
 
     def _record(self, key: Hashable, call: Callable | None, operands: tuple, kind: Kind, parts=()) -> Symbol:
         if key not in self._known:
@@ -89,19 +93,12 @@ class Program:
     def close(self, wanted: Iterable[Symbol]) -> None:
         """End the recording; only the results wanted outlive a run."""
         self._wanted = frozenset(wanted)
-        needed = set(self._wanted)
-        for symbol in reversed(range(len(self._operations))):
-            if symbol in needed and self._operations[symbol].call is not None:
-                needed.update(self._operations[symbol].operands)
-        self._needed = frozenset(needed)
 
     def bind(self, lanes: int) -> "_Bound":
-        """Give every operation its array, for one number of lanes; the last few numbers are remembered."""
-        if lanes not in self._bound:
-            if len(self._bound) > 1:  # a march knows two: whole stretches and the last one
-                self._bound.clear()
-            self._bound[lanes] = _Bound(self._operations, self._wanted, self._needed, lanes)
-        return self._bound[lanes]
+        """Give every operation its array, for one number of lanes; the last number is remembered."""
+        if self._bound is None or self._bound.lanes != lanes:
+            self._bound = _Bound(self._operations, self._wanted, lanes)
+        return self._bound
 
 
 class _Bound:
@@ -109,35 +106,77 @@ class _Bound:
 
     Attributes
     ----------
+    lanes : int
     values : list of array
         Result of every operation by symbol; those wanted are good until the next run.
     """
 
-    def __init__(self, operations: Sequence[_Operation], wanted: frozenset, needed: frozenset, lanes: int):
+    def __init__(self, operations: Sequence[_Operation], wanted: frozenset[Symbol], lanes: int):
+        self.lanes = lanes
         self.values: list[np.ndarray | None] = [None] * len(operations)
-        self._inputs = [(symbol, op.operands[0]) for symbol, op in enumerate(operations) if op.call is None]
-        self._calls = []
-        computed = [(s, op) for s, op in enumerate(operations) if s in needed and op.call is not None]
-        last_use = {o: symbol for symbol, op in computed for o in op.operands}
-        free: dict[tuple, list[np.ndarray]] = {}
-        for symbol, op in computed:
-            spent = [
-                o
-                for o in dict.fromkeys(op.operands)
-                if last_use[o] == symbol and o not in wanted and operations[o].call is not None
-            ]
+        self._operations, self._wanted = operations, wanted
+        self._calls, self._inputs = [], []
+        needed = _needed(operations, wanted)
+        computed = [symbol for symbol, op in enumerate(operations) if symbol in needed and op.call is not None]
+        last_use = {operand: symbol for symbol in computed for operand in operations[symbol].operands}
+        places = self._stacks(computed)
+        free: dict[Kind, list[np.ndarray]] = {}
+        for symbol, op in enumerate(operations):
+            if symbol not in needed:
+                continue
+            if op.call is None:
+                self._take(symbol, *op.operands)
+                continue
             kinds = tuple(operations[o].kind for o in op.operands)
+            if op.is_stack:
+                self._fill(symbol, kinds, places)
+                continue
+            spent = [o for o in dict.fromkeys(op.operands) if last_use[o] == symbol and self._gives_way(o, places)]
             in_place = [o for o in spent if op.call is blocks.add and operations[o].kind == op.kind]
-            if in_place:
+            if symbol in places:
+                stack, number = places[symbol]
+                out = self.values[stack][number]
+            elif in_place:
                 out = self.values[in_place[0]]
                 spent.remove(in_place[0])
             else:
-                room = free.get((op.kind, op.parts))
-                out = room.pop() if room else op.kind.empty(lanes, op.parts)
+                room = free.get(op.kind)
+                out = room.pop() if room else op.kind.empty(lanes)
             for o in spent:
-                free.setdefault((operations[o].kind, operations[o].parts), []).append(self.values[o])
+                free.setdefault(operations[o].kind, []).append(self.values[o])
             self.values[symbol] = out
             self._calls.append((op.call, op.operands, kinds, out))
+
+    def _stacks(self, computed: Sequence[Symbol]) -> dict[Symbol, tuple[Symbol, int]]:
+        """Make room for all stacks; say which results are computed right there: in which stack, and where."""
+        places: dict[Symbol, tuple[Symbol, int]] = {}
+        for symbol in computed:
+            op = self._operations[symbol]
+            if op.is_stack:
+                self.values[symbol] = op.kind.empty(self.lanes, op.parts)
+                for number, part in enumerate(op.operands):
+                    producer = self._operations[part]
+                    if producer.call is not None and producer.kind == op.kind:
+                        places.setdefault(part, (symbol, number))
+        return places
+
+    def _take(self, symbol: Symbol, source) -> None:
+        """Note an input, or set a constant."""
+        if isinstance(source, np.ndarray):
+            self.values[symbol] = source
+        else:
+            self._inputs.append((symbol, source))
+
+    def _fill(self, symbol: Symbol, kinds: Sequence[Kind], places: Mapping[Symbol, tuple[Symbol, int]]) -> None:
+        """Copy what a stack lacks."""
+        for number, part in enumerate(self._operations[symbol].operands):
+            if places.get(part) != (symbol, number):
+                self._calls.append((blocks.write, (part,), kinds[number : number + 1], self.values[symbol][number]))
+
+    def _gives_way(self, symbol: Symbol, places: Mapping[Symbol, tuple[Symbol, int]]) -> bool:
+        """Whether an array may be used again once its content is not needed."""
+        op = self._operations[symbol]
+        return op.call is not None and not op.is_stack and symbol not in places and symbol not in self._wanted
 
     def run(self, inputs: Mapping[Hashable, np.ndarray]) -> None:
         """Work through the operations with blocks from outside."""
@@ -146,3 +185,12 @@ class _Bound:
             values[symbol] = inputs[key]
         for call, operands, kinds, out in self._calls:
             call(*[values[operand] for operand in operands], kinds, out)
+
+
+def _needed(operations: Sequence[_Operation], wanted: frozenset[Symbol]) -> set[Symbol]:
+    """Find the operations that the results wanted rest on."""
+    needed = set(wanted)
+    for symbol in reversed(range(len(operations))):
+        if symbol in needed and operations[symbol].call is not None:
+            needed.update(operations[symbol].operands)
+    return needed
