@@ -8,6 +8,7 @@ from scipy.integrate import solve_ivp
 from twofluid.fluids import ChainLengths, KineticSystem, Resolution, clock, resolution_for, start_time
 from twofluid.fluids.stepping import oscillation_matters
 from twofluid.scenario import DarkMatter
+from twofluid.solver import rate_matrix
 from twofluid.universe import Universe
 
 PHOTON, NEUTRINO = 6, 7  # highest moments of the comparison
@@ -103,7 +104,8 @@ def test_constraint_notices_a_wrong_coefficient():
         def step_rates(self, modes, time, step):
             rates = super().step_rates(modes, time, step)
             entry = (self.unknowns.index("metric_rate"), self.unknowns.index("delta_baryon"))
-            return rates | {entry: 1.02 * rates[entry]}
+            rates.entries[entry] = 1.02 * rates.entries[entry]
+            return rates
 
     def drift(system_class):
         run = course(cosmology(), 0.2, system_class=system_class)
@@ -122,19 +124,16 @@ def test_constraint_notices_a_wrong_coefficient():
 def test_photon_and_polarization_chains_share_their_rates():
     universe = Universe(cosmology())
     system = KineticSystem(universe, np.array([0.1]), ChainLengths(8, 8, 10))
-    time = np.full((3, 1, 1), 200.0)
-    rates = system.step_rates(np.array([0]), time, np.ones((1, 1)))
-    row = system.unknowns.index
-    for moment in (4, 8):
-        photon = rates[row(f"photon_{moment}"), row(f"photon_{moment}")]
-        assert photon is rates[row(f"polarization_{moment}"), row(f"polarization_{moment}")]
+    rates = system.step_rates(np.array([0]), np.full((3, 1), 200.0), np.ones(1))
+    photon, polarization, neutrino = rates.tails
+    assert photon is polarization and photon is not neutrino
+    assert system.tails[0].like(system.tails[1]) and not system.tails[0].like(system.tails[2])
 
 
 def test_unknowns_of_unequal_chains():
     system = KineticSystem(Universe(cosmology()), np.array([0.1]), ChainLengths(5, 7, 6))
     assert len(system.unknowns) == len(set(system.unknowns)) == 1 + (3 + 5 + 4) + 4 + 10
-    rates = system.step_rates(np.array([0]), np.full((3, 1, 1), 300.0), np.ones((1, 1)))
-    assert {row for row, _ in rates} == set(range(len(system.unknowns)))  # every unknown has an equation
+    assert np.all(np.any(rate_matrix(system, 0, 300.0) != 0.0, axis=1))  # every unknown has an equation
 
 
 def laid_out(asked, k):
@@ -157,7 +156,7 @@ def test_start_is_early_enough():
 def test_oscillation_is_resolved_while_it_matters():
     universe, stepping, plan = laid_out(cosmology(), 0.3)
     tau = np.exp(plan.boundaries[: plan.steps[0] + 1, 0])
-    matters = oscillation_matters(universe, np.array([0.3]), tau, stepping, tau[-1:])[0]
+    matters = oscillation_matters(universe, np.array([0.3]), tau, stepping, tau[-1:])[0][0]
     phase = 0.3 * np.diff(tau)
     assert np.all(phase[matters[1:]] <= stepping.phase_step * 1.02)  # density interpolated on its grid
     assert phase[~matters[1:] & (tau[1:] > 1000.0)].min() > stepping.phase_step
@@ -167,7 +166,7 @@ def test_oscillation_is_resolved_while_it_matters():
 def test_oscillation_matters_longer_without_dark_matter(dark, baryon):
     universe, stepping, _ = laid_out(cosmology(dark_matter_density=dark, baryon_density=baryon), 20.0)
     tau = universe.conformal_time(np.geomspace(1e-8, 1.0, 400))
-    last = 20.0 * tau[oscillation_matters(universe, np.array([20.0]), tau, stepping, tau[-1:])[0]].max()
+    last = 20.0 * tau[oscillation_matters(universe, np.array([20.0]), tau, stepping, tau[-1:])[0][0]].max()
     if dark == 0.0:
         exponent = (20.0 / universe.diffusion_wavenumber(universe.scale_factor(last / 20.0))) ** 2
         assert exponent > 0.8 * stepping.diffusion_exponent
@@ -176,20 +175,23 @@ def test_oscillation_matters_longer_without_dark_matter(dark, baryon):
 
 
 def test_oscillation_is_resolved_up_to_a_redshift_asked_for():
-    universe, stepping, _ = laid_out(cosmology(), 1.0)
+    universe, stepping, _ = laid_out(cosmology(), 1.5)
     tau = universe.conformal_time(np.geomspace(1e-8, 1.0, 400))
     early = universe.conformal_time(np.array([1 / 2001.0, 1.0]))
-    plain = oscillation_matters(universe, np.array([1.0]), tau, stepping, tau[-1:])[0]
-    asked = oscillation_matters(universe, np.array([1.0]), tau, stepping, early)[0]
+    plain, seen = (found[0] for found in oscillation_matters(universe, np.array([1.5]), tau, stepping, tau[-1:]))
+    asked, asked_seen = (found[0] for found in oscillation_matters(universe, np.array([1.5]), tau, stepping, early))
+    assert not seen.any() and np.all(asked_seen[asked])
     assert tau[plain].max() < 0.8 * early[0]  # its gravity is no longer felt, and it will be damped
     assert tau[asked].max() == pytest.approx(early[0], rel=0.03)  # but here somebody looks
 
 
 def test_steps_a_mode_takes_are_bounded():
-    # Cost is guarded by counts: measured 238 at the most for this range in a standard universe.
+    # Cost is guarded by counts: measured 180 at the most (k = 1), 112 on average for this range in a standard universe.
     _, _, plan = laid_out(cosmology(), np.geomspace(1e-4, 1e4, 60))
-    assert plan.steps.max() <= 250
-    assert plan.steps.mean() <= 170
+    assert plan.steps.max() <= 190
+    assert plan.steps.mean() <= 120
+    smallest, acoustic = (laid_out(cosmology(), k)[2].steps[0] for k in (1e4, 0.1))
+    assert smallest <= 1.25 * acoustic  # short waves are born early, in steps that are long for that
 
 
 def test_resolution_follows_the_universe():

@@ -10,6 +10,7 @@ from twofluid.fluids import ChainLengths, Resolution, isocurvature
 from twofluid.fluids.kinetic import ConstrainedKineticSystem
 from twofluid.fluids.modes import BEGINNINGS
 from twofluid.scenario.keys import INITIAL_MODES
+from twofluid.solver import rate_matrix
 from twofluid.universe import Universe
 
 TRACE_OF_BARYONS = 1e-5  # baryon density low enough to drop from the dynamics at the level tested
@@ -137,15 +138,11 @@ def test_series_solve_the_equations_of_the_closure(mode):
     step = 0.02 * tau
     weights = {-2: 1 / 12, -1: -2 / 3, 1: 2 / 3, 2: -1 / 12}
     slope = sum(weight * state(tau + place * step) for place, weight in weights.items()) / step
-    rates = system.step_rates(np.arange(1), np.full((3, 1, 1), tau), np.ones((1, 1)))
-    size = len(system.unknowns)
-    matrix = np.zeros((size, size))
-    for place, rate in rates.items():
-        matrix[place] = np.broadcast_to(rate, (3, 1))[0, 0]
+    matrix = rate_matrix(system, 0, tau)
     y = state(tau)
     expected, largest = matrix @ y, np.abs(matrix * y).max(axis=1)
     loading = 1.0 / universe.conditions(np.array([tau])).photon_baryon_ratio[0]
-    momentum = np.zeros(size)
+    momentum = np.zeros(len(y))
     momentum[row("theta_baryon")], momentum[row("slip")] = loading + 1.0, -1.0
     names = ("curvature", "metric_rate", "delta_dark", "delta_baryon", "delta_photon", "delta_neutrino",
              "theta_neutrino", "neutrino_2", "neutrino_3")  # fmt: skip

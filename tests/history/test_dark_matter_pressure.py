@@ -134,7 +134,8 @@ def test_constraint_is_kept_and_needs_all_terms_of_one_order(monkeypatch):
     def one_sided(self, modes, time, step):  # the pressure of the dark matter in the source of h'', and nowhere else
         rates = original(self, modes, time, step)
         entry = (self.unknowns.index("metric_rate"), self.unknowns.index("delta_dark"))
-        return rates | {entry: (1 + 3 * 0.05**2) * rates[entry]}
+        rates.entries[entry] = (1 + 3 * 0.05**2) * rates.entries[entry]
+        return rates
 
     monkeypatch.setattr(KineticSystem, "step_rates", one_sided)
     assert run(*law, wavenumbers=[1e-3, 0.02]).constraint.max() > 1e-3

@@ -2,6 +2,8 @@
 
 import numpy as np
 
+from twofluid.solver import StepRates
+
 
 class MatrixSystem:
     """``dy/dt = A(t) y`` with A given as a function of time for each mode.
@@ -22,15 +24,16 @@ class MatrixSystem:
         every = {(row, column) for row in range(count) for column in range(count)}
         self._couplings = every if couplings is None else couplings
 
+    tails = ()
+
     def step_rates(self, modes, time, step):
         """Step times rate, shape (stage, lane)."""
         rates = {entry: np.empty(time.shape) for entry in self._couplings}
-        for place, mode in enumerate(modes):
-            for index in np.ndindex(time.shape[:2]):
-                matrix = self.matrices[mode](time[*index, place])
-                for (row, column), rate in rates.items():
-                    rate[*index, place] = matrix[row, column] * step[index[1], place]
-        return {entry: rate.reshape(len(time), -1) for entry, rate in rates.items()}
+        for stage, lane in np.ndindex(time.shape):
+            matrix = self.matrices[modes[lane]](time[stage, lane])
+            for (row, column), rate in rates.items():
+                rate[stage, lane] = matrix[row, column] * step[lane]
+        return StepRates(rates)
 
 
 def constant(matrix):

@@ -202,7 +202,7 @@ def test_a_failure_names_wavenumber_redshift_and_wind(start, rms, monkeypatch):
     def broken(self, modes, time, step):
         found = rates(self, modes, time, step)
         if time.min() > 2000.0:  # [Mpc], z = 50 or so
-            found[0, 0] = found[0, 0] * np.nan
+            found.entries[0, 0] = found.entries[0, 0] * np.nan
         return found
 
     monkeypatch.setattr(PatchSystem, "step_rates", broken)

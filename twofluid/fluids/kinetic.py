@@ -251,8 +251,8 @@ def _elimination_order(dark_pressure: bool) -> tuple[str, ...]:
     """Put what only gravity and one velocity touch first, the most coupled unknowns last."""
     densities = ["delta_dark", "delta_baryon", "delta_photon", "delta_neutrino"]
     densities += ["theta_dark"] if dark_pressure else []
-    core = ["delta_gas_temperature", "polarization_1", "polarization_0", "neutrino_2", "polarization_2",
-            "photon_2", "slip", "theta_neutrino", "theta_baryon", "metric_rate"]  # fmt: skip
+    core = ["polarization_1", "delta_gas_temperature", "neutrino_2", "theta_neutrino", "polarization_0",
+            "polarization_2", "photon_2", "slip", "theta_baryon", "metric_rate"]  # fmt: skip
     return ("curvature", *densities, *core)
 
 

@@ -33,7 +33,7 @@ class Resolution:
     chains: ChainLengths
 
     def refined(self) -> "Resolution":
-        """Halve every step, follow oscillations longer, chains further, more momenta: it tells the error."""
+        """Halve every step, without stretch, follow oscillations longer, chains further, more momenta: it tells the error."""
         stepping = self.stepping
         halved = {
             name: getattr(stepping, name) / 2.0
@@ -44,6 +44,8 @@ class Resolution:
             "felt_phase": 1.5 * stepping.felt_phase,
             "drag_ratio": stepping.drag_ratio / 2.0,
             "gas_swing": stepping.gas_swing / 3.0,
+            "radiation_stretch": 0.0,
+            "felt_fading": stepping.felt_fading / 2.0,
         }
         chains = {part.name: ceil(LONGER_CHAINS * getattr(self.chains, part.name)) for part in fields(ChainLengths)}
         return Resolution(replace(stepping, **halved, **longer), ChainLengths(**chains))
@@ -67,8 +69,9 @@ class Accuracy:
     baryon_ruled: Resolution
 
 
-def _resolution(steps: tuple, exponent: float, felt_phase: float, chains: tuple, swing: float) -> Resolution:
+def _resolution(steps: tuple, exponent: float, felt: tuple, chains: tuple, swing: float) -> Resolution:
     outside, smooth, free, change, phase = steps
+    felt_phase, fading, stretch = felt
     return Resolution(
         Stepping(
             outside_step=outside,
@@ -79,30 +82,35 @@ def _resolution(steps: tuple, exponent: float, felt_phase: float, chains: tuple,
             diffusion_exponent=exponent,
             felt_phase=felt_phase,
             gas_swing=swing,
+            radiation_stretch=stretch,
+            felt_fading=fading,
         ),
         ChainLengths(*chains),
     )
 
 
 #: Settings by accuracy. Steps are, in ln a: far outside the horizon, inside it, inside it in free gas; then the
-#: change of the scattering rate and the phase of an oscillation. Chains: photon, polarization, neutrino,
-#: neutrino with mass, and momenta of the last. Swing: of quickly heated gas, over the dark matter's contrast, that
-#: may go unresolved.
+#: change of the scattering rate and the phase of an oscillation. Felt: phase up to which an oscillation is felt; power
+#: with which that fades and stretch of smooth steps, both deep in the radiation era. Chains: photon, polarization,
+#: neutrino, neutrino with mass, and momenta of the last. Swing: of quickly heated gas, over the dark matter's contrast,
+#: that may go unresolved.
 ACCURACIES = {
     "draft": Accuracy(
         promise=3e-3,
-        dark_ruled=_resolution((0.8, 0.3, 0.4, 0.8, 2.0), 15.0, 80.0, (7, 7, 9, 8, 4), swing=1e-2),
-        baryon_ruled=_resolution((0.4, 0.15, 0.2, 0.8, 1.0), 25.0, 200.0, (16, 16, 18, 14, 4), swing=1e-2),
+        dark_ruled=_resolution((0.8, 0.3, 0.4, 0.8, 2.0), 15.0, (120.0, 0.7, 0.5), (7, 7, 9, 8, 4), swing=1e-2),
+        baryon_ruled=_resolution((0.4, 0.15, 0.2, 0.8, 1.0), 25.0, (200.0, 0.0, 0.0), (16, 16, 18, 14, 4), swing=1e-2),
     ),
     "standard": Accuracy(
         promise=3e-4,
-        dark_ruled=_resolution((0.6, 0.2, 0.3, 0.4, 1.3), 20.0, 120.0, (10, 10, 12, 12, 5), swing=2e-3),
-        baryon_ruled=_resolution((0.2, 0.05, 0.1, 0.5, 0.6), 30.0, 300.0, (22, 22, 24, 18, 5), swing=2e-3),
+        dark_ruled=_resolution((0.5, 0.2, 0.4, 0.4, 1.2), 20.0, (150.0, 0.7, 1.5), (10, 10, 12, 12, 5), swing=2e-3),
+        baryon_ruled=_resolution((0.2, 0.05, 0.1, 0.5, 0.6), 30.0, (300.0, 0.0, 0.0), (22, 22, 24, 18, 5), swing=2e-3),
     ),
     "reference": Accuracy(
         promise=5e-5,
-        dark_ruled=_resolution((0.2, 0.08, 0.1, 0.2, 0.6), 30.0, 300.0, (16, 16, 28, 16, 7), swing=7e-4),
-        baryon_ruled=_resolution((0.1, 0.03, 0.05, 0.25, 0.35), 40.0, 500.0, (28, 28, 36, 26, 7), swing=7e-4),
+        dark_ruled=_resolution((0.2, 0.08, 0.1, 0.2, 0.6), 30.0, (300.0, 0.15, 0.3), (16, 16, 28, 16, 7), swing=7e-4),
+        baryon_ruled=_resolution(
+            (0.1, 0.03, 0.05, 0.25, 0.35), 40.0, (500.0, 0.0, 0.0), (28, 28, 36, 26, 7), swing=7e-4
+        ),
     ),
 }
 

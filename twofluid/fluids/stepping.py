@@ -10,6 +10,9 @@ matters. Once it no longer does it is left unresolved and the method damps it. I
   will not have damped it when the baryons are released, or at a later time that is asked for.
   Without dark matter there is no such bound.
 
+Deep in the radiation era steps may be longer. The dark matter then grows with the logarithm of time only, and of an
+oscillation that will be damped it feels less and less, as (k tau)^-2: it is followed the less finely for that.
+
 Photons that push again once the gas is reionized start no such oscillation: they stream by then.
 
 Where the gas is heated quickly, by a table or reionization, a fourth asks for steps. Pressure that rises at
@@ -35,6 +38,8 @@ GAS_PHASE = 0.4  # of `Stepping.phase_step`, the phase of a gas wave in a step: 
 ORDER = 5  # of the method: a wave that is smaller by s bears steps longer by s^(-1/5)
 ADIABATIC = 5.0 / 3.0  # sound speed squared over its isothermal value, at most
 MIXTURES_OUTSIDE = 3.0  # shorter steps far outside the horizon for mixtures of initial modes (measured)
+FULLY_FELT = 4.0  # k tau up to which an oscillation is followed finely in any case (measured)
+DEEP = 4.0  # power of the radiation's share that tells how deep in the radiation era a time is (measured)
 FAR_OUTSIDE = 0.3  # k tau up to which a mode counts as far outside the horizon
 DARK_PHASE_SHARE = 0.5  # longest k c_s dtau of waves of the dark matter, over `Stepping.phase_step` (measured)
 DARK_RADIANS = 100.0  # from so many on steps shorten as radians^(-1/5): the method is of order five
@@ -65,6 +70,10 @@ class Stepping:
         Photon drag on baryons over expansion rate below which the gas counts as free [unitless].
     gas_swing : float
         Swing of heated gas over the dark-matter contrast below which it is left unresolved [unitless].
+    radiation_stretch : float
+        How much longer, relative to `smooth_step`, steps may be deep in the radiation era [unitless].
+    felt_fading : float
+        Power of k tau with which steps lengthen there for an oscillation that will be damped [unitless].
     """
 
     outside_step: float
@@ -76,6 +85,8 @@ class Stepping:
     felt_phase: float
     drag_ratio: float = 1e-3
     gas_swing: float = 1e-2
+    radiation_stretch: float = 0.0
+    felt_fading: float = 0.0
 
     def for_mixtures(self) -> "Stepping":
         """Shorten the steps outside the horizon, as modes without curvature at the beginning need it.
@@ -139,15 +150,18 @@ def step_density(
     per_expansion = now.hubble_rate * time  # d ln a / d ln tau
     log_scattering = np.log(now.scattering_rate * now.scale_factor**2)
     change = np.abs(np.gradient(log_scattering, np.log(time)))
-    quiet = np.where(_pushed(now, stepping), stepping.smooth_step, stepping.free_step)
+    smooth_step = stepping.smooth_step * (1.0 + stepping.radiation_stretch * _depth(now))
+    quiet = np.where(_pushed(now, stepping), smooth_step, stepping.free_step)
     smooth = per_expansion / quiet + change / stepping.scattering_change
     if universe.heated_from:
         a = np.minimum(now.scale_factor, 1.0)
         rise = np.maximum(universe.gas_temperature_slope(a), 0.0)
         smooth = smooth + per_expansion * (rise / stepping.scattering_change + (a > universe.heated_from) / quiet)
     phase = wavenumber[:, None] * time
-    matters = oscillation_matters(universe, wavenumber, time, stepping, asked)
-    inside = np.where(matters, np.hypot(smooth, phase / stepping.phase_step), smooth)
+    matters, will_be_seen = oscillation_matters(universe, wavenumber, time, stepping, asked)
+    fading = np.where(will_be_seen, 0.0, stepping.felt_fading * _depth(now))
+    followed = phase / stepping.phase_step * np.minimum(1.0, FULLY_FELT / phase) ** fading
+    inside = np.where(matters, np.hypot(smooth, followed), smooth)
     if universe.heated_from:
         inside = np.hypot(inside, _gas_waves(universe, now, wavenumber, time, stepping))
     if universe.has_dark_pressure:
@@ -204,6 +218,12 @@ def _longest_dark_phase(universe: Universe, wavenumber: np.ndarray, stepping: St
     return DARK_PHASE_SHARE * stepping.phase_step * np.minimum(1.0, DARK_RADIANS / radians) ** 0.2
 
 
+def _depth(now: Conditions) -> np.ndarray:
+    """Tell how deep in the radiation era a time is, from 0 to 1."""
+    matter = (now.gravity_baryon + now.gravity_dark) / (3.0 * now.hubble_rate**2)
+    return np.clip(1.0 - matter, 0.0, 1.0) ** DEEP
+
+
 def _pushed(now: Conditions, stepping: Stepping) -> np.ndarray:
     """Whether photons still push the baryons."""
     return now.photon_baryon_ratio * now.scattering_rate > stepping.drag_ratio * now.hubble_rate
@@ -211,7 +231,7 @@ def _pushed(now: Conditions, stepping: Stepping) -> np.ndarray:
 
 def oscillation_matters(
     universe: Universe, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping, asked: np.ndarray
-) -> np.ndarray:
+) -> tuple[np.ndarray, np.ndarray]:
     """Whether the acoustic oscillation of a mode still has to be resolved; see the module's text.
 
     Parameters
@@ -227,7 +247,8 @@ def oscillation_matters(
 
     Returns
     -------
-    array of bool, shape (mode, node)
+    two arrays of bool, shape (mode, node)
+        Whether it matters, and whether what it is then will be there when it is asked for or the baryons are released.
     """
     now = universe.conditions(time)
     pushed = _pushed(now, stepping)
@@ -235,8 +256,9 @@ def oscillation_matters(
     pushed = np.logical_and.accumulate(pushed)  # until the first release
     alive = pushed & (exponent < stepping.diffusion_exponent)
     release = time[pushed][-1] if pushed.any() else time[0]
-    seen = alive[:, np.searchsorted(time, np.append(asked[asked < release], release)).clip(max=len(time) - 1)]
-    last_seen = np.max(np.where(seen, np.append(asked[asked < release], release), 0.0), axis=1)
+    looks = np.append(asked[asked < release], release)
+    seen = alive[:, np.searchsorted(time, looks).clip(max=len(time) - 1)]
+    will_be_seen = time <= np.max(np.where(seen, looks, 0.0), axis=1)[:, None]
     dark_fraction = now.gravity_dark[0] / (now.gravity_dark[0] + now.gravity_baryon[0])
     felt = wavenumber[:, None] * time * np.sqrt(dark_fraction) < stepping.felt_phase
-    return alive & (felt | (time <= last_seen[:, None]))
+    return alive & (felt | will_be_seen), will_be_seen

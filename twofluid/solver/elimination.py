@@ -111,7 +111,7 @@ class Elimination:
         program = self._program
         family.room(1)
         for tail, place in zip(family.tails, family.set_of, strict=True):
-            block = program.input(("tail", number, place), family.block[place])
+            block = program.input(("tail", number, place), family.blocks[place])
             for source, weight in tail.sources.items():
                 entry, weighted = (tail.sink, source), program.scaled(block, weight)
                 work[entry] = program.sum(work[entry], weighted) if entry in work else weighted
@@ -203,7 +203,7 @@ class Elimination:
             if family.lanes != lanes:
                 family.room(lanes)
             family.factor(rates.tails)
-            inputs |= {("tail", number, place): block for place, block in enumerate(family.block)}
+            inputs |= {("tail", number, place): block for place, block in enumerate(family.blocks)}
         bound = self._program.bind(lanes)
         bound.run(inputs)
         if self._factors is None or self._factors.shape != (lanes, steps, modes):

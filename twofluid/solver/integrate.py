@@ -14,7 +14,7 @@ from .elimination import Elimination
 from .substitution import State
 from .system import LinearSystem
 
-LANES_PER_STRETCH = 1024  # steps times modes eliminated at once: long enough for arrays, short enough for the cache
+LANES_PER_STRETCH = 1536  # steps times modes eliminated at once: long enough for arrays, short enough for the cache
 MODES_PER_BATCH = 512  # at most so many modes march together
 GRAIN = 16  # modes leave the march in groups of so many
 
@@ -90,7 +90,7 @@ def integrate(
     order = np.argsort(-length, kind="stable")
     batches = [order[first : first + MODES_PER_BATCH] for first in range(0, len(order), MODES_PER_BATCH)]
     plans = [_stretches(length[modes]) for modes in batches]
-    total = sum(steps * active for plan in plans for _, steps, active in plan)
+    total = int(sum(steps * active for plan in plans for _, steps, active in plan))
     stretches = sum(len(plan) for plan in plans)
     counts = {"steps": int(length.sum()), "lanes": total, "factorizations": stretches, "rate_evaluations": stretches}
     observed, done = np.empty((len(rows), *times.shape)), 0

@@ -253,7 +253,7 @@ class _TailSubstitution:
     """One family of tails in the two passes."""
 
     def __init__(self, family: Family, shape: tuple, load: np.ndarray, stages: np.ndarray):
-        sets, size = len(family.block), family.kind.size
+        sets, size = len(family.blocks), family.kind.size
         self._share = _by_step(family.share, shape, (sets, 2 * size, STAGES))
         self._feed = _by_step(family.feed, shape, (sets, 2 * size, STAGES))
         self._turn = _by_step(family.turn, shape, (sets, 2, 2, size))

@@ -171,11 +171,11 @@ class Family:
         sets, size = len(self._sets), self.kind.size
         self.share, self.feed = np.empty((2, sets, 2, size, STAGES, lanes))
         self.turn = np.empty((sets, 2, 2, size, lanes))
-        self.block = np.empty((sets, STAGES, STAGES, lanes))
+        self.blocks = list(np.empty((sets, STAGES, STAGES, lanes)))  # kept: the elimination knows arrays by identity
 
     def factor(self, rates: Sequence[TailRates]) -> None:
         """Work out all factors."""
-        for place, *parts in zip(self._sets, self.share, self.turn, self.feed, self.block, strict=True):
+        for place, *parts in zip(self._sets, self.share, self.turn, self.feed, self.blocks, strict=True):
             self.kind.solve(rates[place], *parts)
 
     def coordinates(self, state: np.ndarray) -> np.ndarray:
