@@ -157,17 +157,20 @@ def step_density(
         a = np.minimum(now.scale_factor, 1.0)
         rise = np.maximum(universe.gas_temperature_slope(a), 0.0)
         smooth = smooth + per_expansion * (rise / stepping.scattering_change + (a > universe.heated_from) / quiet)
-    phase = wavenumber[:, None] * time
     matters, will_be_seen = oscillation_matters(universe, wavenumber, time, stepping, asked)
-    fading = np.where(will_be_seen, 0.0, stepping.felt_fading * _depth(now))
-    followed = phase / stepping.phase_step * np.minimum(1.0, FULLY_FELT / phase) ** fading
-    inside = np.where(matters, np.hypot(smooth, followed), smooth)
+    squares = np.broadcast_to(smooth**2, matters.shape).copy()  # of all demands, which add up like that
+    fading = 2.0 * stepping.felt_fading * _depth(now)
+    for row, k, followed, seen in zip(squares, wavenumber, matters, will_be_seen, strict=True):
+        phase = k * time[followed]
+        faded = np.where(seen[followed], 0.0, fading[followed]) * np.log(np.maximum(phase / FULLY_FELT, 1.0))
+        row[followed] += (phase / stepping.phase_step) ** 2 * np.exp(-faded)
     if universe.heated_from:
-        inside = np.hypot(inside, _gas_waves(universe, now, wavenumber, time, stepping))
+        squares += _gas_waves(universe, now, wavenumber, time, stepping) ** 2
     if universe.has_dark_pressure:
-        dark_phase = phase * universe.dark_sound_speed(now.scale_factor)
-        inside = np.hypot(inside, dark_phase / _longest_dark_phase(universe, wavenumber, stepping)[:, None])
-    return np.where(phase < FAR_OUTSIDE, per_expansion / stepping.outside_step, inside)
+        dark_phase = wavenumber[:, None] * time * universe.dark_sound_speed(now.scale_factor)
+        squares += (dark_phase / _longest_dark_phase(universe, wavenumber, stepping)[:, None]) ** 2
+    outside = wavenumber[:, None] < FAR_OUTSIDE / time
+    return np.where(outside, per_expansion / stepping.outside_step, np.sqrt(squares, out=squares))
 
 
 def _gas_waves(
@@ -184,7 +187,6 @@ def _gas_waves(
     phase = wavenumber[:, None] * time * np.sqrt(ADIABATIC * now.isothermal_sound_speed_squared)
     density = phase / (GAS_PHASE * stepping.phase_step * swing ** (-1.0 / ORDER))
     return np.where((np.arange(len(time)) >= first) & (swing > stepping.gas_swing), density, 0.0)
-
 
 
 def check_dark_waves(universe: Universe, wavenumber: np.ndarray) -> None:
@@ -252,13 +254,13 @@ def oscillation_matters(
     """
     now = universe.conditions(time)
     pushed = _pushed(now, stepping)
-    exponent = (wavenumber[:, None] / universe.diffusion_wavenumber(now.scale_factor)) ** 2
     pushed = np.logical_and.accumulate(pushed)  # until the first release
-    alive = pushed & (exponent < stepping.diffusion_exponent)
+    damped_from = np.sqrt(stepping.diffusion_exponent) * universe.diffusion_wavenumber(now.scale_factor)
+    alive = pushed & (wavenumber[:, None] < damped_from)
     release = time[pushed][-1] if pushed.any() else time[0]
     looks = np.append(asked[asked < release], release)
     seen = alive[:, np.searchsorted(time, looks).clip(max=len(time) - 1)]
     will_be_seen = time <= np.max(np.where(seen, looks, 0.0), axis=1)[:, None]
     dark_fraction = now.gravity_dark[0] / (now.gravity_dark[0] + now.gravity_baryon[0])
-    felt = wavenumber[:, None] * time * np.sqrt(dark_fraction) < stepping.felt_phase
+    felt = wavenumber[:, None] * np.sqrt(dark_fraction) < stepping.felt_phase / time
     return alive & (felt | will_be_seen), will_be_seen

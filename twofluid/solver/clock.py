@@ -59,7 +59,7 @@ def lay_out(grid: np.ndarray, density: np.ndarray, start: np.ndarray, marks: np.
         raise ValueError("each mode must start on the grid, before the first mark, and end on the grid")
     total = np.zeros_like(density)  # counted back from the end, so that it does not depend on where the grid begins
     pieces = 0.5 * (density[:, 1:] + density[:, :-1]) * np.diff(grid)
-    total[:, :-1] = -np.cumsum(pieces[:, ::-1], axis=1)[:, ::-1]
+    np.negative(np.cumsum(pieces[:, ::-1], axis=1), out=total[:, -2::-1])
 
     stops = np.concatenate([start[:, None], np.broadcast_to(marks, (len(start), len(marks)))], axis=1)
     share = _on_grid(grid, total, stops)
@@ -67,10 +67,10 @@ def lay_out(grid: np.ndarray, density: np.ndarray, start: np.ndarray, marks: np.
     reached = np.concatenate([np.zeros((len(start), 1), int), np.cumsum(pieces, axis=1)], axis=1)
 
     count = np.arange(reached[:, -1].max() + 1)
-    place = _interpolate_rows(reached.astype(float), share, np.minimum(count, reached[:, -1:]).astype(float))
-    boundaries = _interpolate_rows(total, np.broadcast_to(grid, total.shape), place)
-    modes = np.arange(len(start))[:, None]
-    boundaries[modes, reached] = stops
+    boundaries = np.empty((len(start), len(count)))
+    for row, places, shares, totals in zip(boundaries, reached, share, total, strict=True):
+        row[:] = np.interp(np.interp(count, places, shares), totals, grid)
+    boundaries[np.arange(len(start))[:, None], reached] = stops
     boundaries = np.where(count > reached[:, -1:], stops[:, -1:], boundaries)
     return Clock(np.ascontiguousarray(boundaries.T), reached[:, 1:].T, reached[:, -1])
 
@@ -81,16 +81,3 @@ def _on_grid(grid: np.ndarray, values: np.ndarray, points: np.ndarray) -> np.nda
     rows = np.arange(len(values))[:, None]
     fraction = (points - grid[right - 1]) / (grid[right] - grid[right - 1])
     return values[rows, right - 1] + fraction * (values[rows, right] - values[rows, right - 1])
-
-
-def _interpolate_rows(abscissae: np.ndarray, ordinates: np.ndarray, points: np.ndarray) -> np.ndarray:
-    """Interpolate row by row, abscissae increasing along each row, in one pass over all rows."""
-    span = abscissae.max() - abscissae.min() + 1.0
-    shift = span * np.arange(len(abscissae))[:, None]
-    right = np.searchsorted((abscissae + shift).ravel(), (points + shift).ravel()).reshape(points.shape)
-    length = abscissae.shape[1]
-    rows = np.arange(len(abscissae))[:, None]
-    right = np.clip(right - rows * length, 1, length - 1)
-    left_x, right_x = abscissae[rows, right - 1], abscissae[rows, right]
-    fraction = np.clip((points - left_x) / (right_x - left_x), 0.0, 1.0)
-    return ordinates[rows, right - 1] + fraction * (ordinates[rows, right] - ordinates[rows, right - 1])

@@ -109,7 +109,7 @@ class Elimination:
     def _attach(self, number: int, family, work: dict[Entry, Symbol]) -> None:
         """Add what the tails of one kind do to their sinks once they are eliminated."""
         program = self._program
-        family.room(1)
+        family.prepare(1)
         for tail, place in zip(family.tails, family.set_of, strict=True):
             block = program.input(("tail", number, place), family.blocks[place])
             for source, weight in tail.sources.items():
@@ -200,8 +200,7 @@ class Elimination:
         lanes = next(iter(rates.entries.values())).shape[-1]
         inputs = dict(rates.entries)
         for number, family in enumerate(self.families):
-            if family.lanes != lanes:
-                family.room(lanes)
+            family.prepare(lanes)
             family.factor(rates.tails)
             inputs |= {("tail", number, place): block for place, block in enumerate(family.blocks)}
         bound = self._program.bind(lanes)

@@ -102,8 +102,9 @@ def integrate(
         for first, steps, active in plan:
             boundaries = times[first : first + steps + 1, modes[:active]]
             state = [part[..., :active] for part in state]
-            record[first + 1 :, :, active:] = record[first, :, active:]  # those that have arrived stay
-            state = _march(system, elimination, modes[:active], boundaries, lanes, state, rows, record[first + 1 :])
+            here = record[first + 1 : first + 1 + steps]
+            here[:, :, active:] = record[first, :, active:]  # those that have arrived stay
+            state = _march(system, elimination, modes[:active], boundaries, lanes, state, rows, here[:, :, :active])
             done += steps * active
             if progress is not None:
                 progress(done, total)
@@ -131,17 +132,14 @@ def _march(system, elimination, modes, boundaries, lanes, state, rows, record) -
     step = np.diff(boundaries, axis=0)
     stage_times = boundaries[:-1] + NODES[:, None, None] * step
     steps, active = step.shape
-    unused = lanes - step.size  # lanes of no length make every stretch as long as the first
-    rates = system.step_rates(
-        np.pad(np.tile(modes, steps), (0, unused), mode="edge"),
-        np.pad(stage_times.reshape(STAGES, -1), ((0, 0), (0, unused)), mode="edge"),
-        np.pad(step.ravel(), (0, unused)),
-    )
+    place = np.minimum(np.arange(lanes), step.size - 1)  # lanes beyond repeat the last one
+    length = step.ravel()[place]
+    rates = system.step_rates(np.tile(modes, steps)[place], stage_times.reshape(STAGES, -1)[:, place], length)
     factors = elimination.factor(rates, steps, active)
     for index in range(steps):
         state = factors.advance(state, index)
-        record[index, :, :active] = elimination.read(state, rows)
-    finite = np.isfinite(record[:steps, :, :active]).all(axis=1)
+        record[index] = elimination.read(state, rows)
+    finite = np.isfinite(record).all(axis=1)
     if not finite.all():
         failed, mode = np.argwhere(~finite)[0]
         raise SolverFailure(

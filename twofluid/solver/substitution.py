@@ -254,9 +254,10 @@ class _TailSubstitution:
 
     def __init__(self, family: Family, shape: tuple, load: np.ndarray, stages: np.ndarray):
         sets, size = len(family.blocks), family.kind.size
-        self._share = _by_step(family.share, shape, (sets, 2 * size, STAGES))
-        self._feed = _by_step(family.feed, shape, (sets, 2 * size, STAGES))
-        self._turn = _by_step(family.turn, shape, (sets, 2, 2, size))
+        factors = family.factors
+        self._share = _by_step(factors.share, shape, (sets, 2 * size, STAGES))
+        self._feed = _by_step(factors.feed, shape, (sets, 2 * size, STAGES))
+        self._turn = _by_step(factors.turn, shape, (sets, 2, 2, size))
         self._coordinates = (len(family.tails), 2, size, shape[-1])
         self._target = _View(load, [tail.sink for tail in family.tails])
         sources = zip(*(tail.sources.items() for tail in family.tails), strict=True)

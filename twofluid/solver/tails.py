@@ -69,68 +69,73 @@ class EigenTail:
         through = (exit_ * entrance)[:, None] * powers[:, :STAGES]
         self._through = np.concatenate([through.real, -through.imag]).T.copy()
 
-    def solve(self, rates: TailRates, share: np.ndarray, turn: np.ndarray, feed: np.ndarray, block: np.ndarray) -> None:
+    def solve(self, rates: TailRates, room: "_Room", block: np.ndarray, factors: "TailFactors", number: int) -> None:
         """Solve the stage equations of all members for many lanes.
 
         Parameters
         ----------
         rates : TailRates
-        share : array, shape (2, size, stage, lane)
-            Filled with what the coordinates' old state adds to the sink's load.
-        turn : array, shape (2, 2, size, lane)
-            Filled with what becomes of their old state by itself.
-        feed : array, shape (2, size, stage, lane)
-            Filled with what the driver's stages add to that.
+        room : _Room
+            For what is worked out on the way.
         block : array, shape (stage, stage, lane)
             Filled with the rate of the sink by the driver through the tail.
+        factors : TailFactors
+            Filled with the factors of these rates.
+        number : int
+            Where among the factors.
         """
-        lanes = block.shape[-1]
-        pace = np.broadcast_to(rates.pace, (STAGES, lanes))
-        adjugate, determinant = _polynomials(pace, np.diag(INVERSE_WEIGHTS)[:, None] + rates.damping)
-        # 1 / determinant, member by member
-        inverse = (self._determinant @ determinant).reshape(2, self.size, lanes)
-        inverse /= np.einsum("pql,pql->ql", inverse, inverse)
+        pace = np.broadcast_to(rates.pace, block.shape[1:])
+        adjugate, determinant = room.adjugate, room.determinant
+        _expand(pace, np.diag(INVERSE_WEIGHTS)[:, None] + rates.damping, adjugate, determinant)
+        inverse = np.matmul(self._determinant, determinant, out=room.inverse).reshape(2, self.size, -1)
+        inverse /= np.einsum("pql,pql->ql", inverse, inverse, out=room.scratch[:, 0])
         np.negative(inverse[1], out=inverse[1])
 
-        alone = np.einsum("nijl,j->nil", adjugate, STATE_LOAD)  # what a unit of old state makes of the member
+        alone = np.einsum("nijl,j->nil", adjugate, STATE_LOAD, out=room.alone)  # of a unit of old state
+        share, feed, turn = factors.share[number], factors.feed[number], factors.turn[number]
         for coefficients, weights, out in (
-            (alone * pace, self._to_sink, share),
-            (adjugate[:, LAST] * pace, self._from_driver, feed),
+            (alone, self._to_sink, share),
+            (adjugate[:, LAST], self._from_driver, feed),
         ):
-            numerator = (weights @ coefficients.reshape(STAGES, -1)).reshape(out.shape)
-            _multiply(numerator, inverse[:, :, None], out)
+            paced = np.multiply(coefficients, pace, out=room.paced).reshape(STAGES, -1)
+            numerator = np.matmul(weights, paced, out=room.numerator).reshape(out.shape)
+            _multiply(numerator, inverse[:, :, None], out, room.scratch)
         np.negative(share[1], out=share[1])  # the real part of a product is asked of it
-        numerator = (self._own @ alone[:, LAST]).reshape(2, self.size, lanes)
-        _multiply(numerator, inverse, turn[:, 0])
+        numerator = (self._own @ alone[:, LAST]).reshape(inverse.shape)
+        _multiply(numerator, inverse, turn[:, 0], room.scratch[:, 0])
         np.negative(turn[1, 0], out=turn[0, 1])
         turn[1, 1] = turn[0, 0]
 
-        moments = self._through @ inverse.reshape(2 * self.size, lanes)
+        moments = self._through @ room.inverse
         np.einsum("nijl,nl->ijl", adjugate, moments, out=block)
         block *= pace
         block *= pace[:, None]
 
 
-def _polynomials(pace: np.ndarray, diagonal: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+def _expand(pace: np.ndarray, diagonal: np.ndarray, adjugate: np.ndarray, determinant: np.ndarray) -> None:
     """Expand adjugate and determinant of ``W' - pace d`` in powers of d, W' being W with another diagonal.
 
-    Returns arrays of shape (3, stage, stage, lane) and (4, lane).
+    Fills arrays of shape (3, stage, stage, lane), whose last power has a diagonal only, and (4, lane).
     """
-    W, lanes = INVERSE_WEIGHTS, pace.shape[-1]
-    adjugate, determinant = np.zeros((STAGES, STAGES, STAGES, lanes)), np.zeros((STAGES + 1, lanes))
+    W = INVERSE_WEIGHTS
     constant, linear, square = adjugate
     for i, j, k in _CYCLES:
-        constant[i, i] = diagonal[j] * diagonal[k] - W[j, k] * W[k, j]
-        linear[i, i] = -(diagonal[j] * pace[k] + diagonal[k] * pace[j])
-        square[i, i] = pace[j] * pace[k]
+        np.multiply(diagonal[j], diagonal[k], out=constant[i, i])
+        constant[i, i] -= W[j, k] * W[k, j]
+        np.multiply(diagonal[j], pace[k], out=linear[i, i])
+        linear[i, i] += diagonal[k] * pace[j]
+        np.negative(linear[i, i], out=linear[i, i])
+        np.multiply(pace[j], pace[k], out=square[i, i])
         for row, column, other in ((i, j, k), (j, i, k)):
-            constant[row, column] = W[row, other] * W[other, column] - W[row, column] * diagonal[other]
-            linear[row, column] = W[row, column] * pace[other]
+            np.multiply(diagonal[other], -W[row, column], out=constant[row, column])
+            constant[row, column] += W[row, other] * W[other, column]
+            np.multiply(pace[other], W[row, column], out=linear[row, column])
     for power, part in enumerate((constant, linear)):
-        determinant[power] = diagonal[0] * part[0, 0] + W[0, 1] * part[1, 0] + W[0, 2] * part[2, 0]
-    determinant[2] = diagonal[0] * square[0, 0]
+        np.multiply(diagonal[0], part[0, 0], out=determinant[power])
+        determinant[power] += W[0, 1] * part[1, 0] + W[0, 2] * part[2, 0]
+    np.multiply(diagonal[0], square[0, 0], out=determinant[2])
+    determinant[3] = 0.0
     determinant[1:] -= pace[0] * adjugate[:, 0, 0]
-    return adjugate, determinant
 
 
 def _real_rows(coefficients: np.ndarray) -> np.ndarray:
@@ -138,12 +143,42 @@ def _real_rows(coefficients: np.ndarray) -> np.ndarray:
     return np.concatenate([coefficients.real, coefficients.imag])
 
 
-def _multiply(first: np.ndarray, second: np.ndarray, out: np.ndarray) -> None:
+def _multiply(first: np.ndarray, second: np.ndarray, out: np.ndarray, scratch: np.ndarray) -> None:
     """Multiply complex numbers with their parts along the first axis."""
     np.multiply(first[0], second[0], out=out[0])
-    out[0] -= first[1] * second[1]
+    out[0] -= np.multiply(first[1], second[1], out=scratch)
     np.multiply(first[0], second[1], out=out[1])
-    out[1] += first[1] * second[0]
+    out[1] += np.multiply(first[1], second[0], out=scratch)
+
+
+class _Room:
+    """Room for what is worked out on the way to the factors of one tail, for one number of lanes."""
+
+    def __init__(self, size: int, lanes: int):
+        self.adjugate = np.zeros((STAGES, STAGES, STAGES, lanes))
+        self.determinant = np.empty((STAGES + 1, lanes))
+        self.inverse = np.empty((2 * size, lanes))
+        self.alone, self.paced = np.empty((2, STAGES, STAGES, lanes))
+        self.numerator = np.empty((2 * size, STAGES * lanes))
+        self.scratch = np.empty((size, STAGES, lanes))
+
+
+class TailFactors:
+    """What the substitution needs of the tails of one kind, set by set.
+
+    Attributes
+    ----------
+    share : array, shape (set, 2, size, stage, lane)
+        What the coordinates' old state adds to the sink's load.
+    turn : array, shape (set, 2, 2, size, lane)
+        What becomes of their old state by itself.
+    feed : array, shape (set, 2, size, stage, lane)
+        What the driver's stages add to that.
+    """
+
+    def __init__(self, sets: int, size: int, lanes: int):
+        self.share, self.feed = np.empty((2, sets, 2, size, STAGES, lanes))
+        self.turn = np.empty((sets, 2, 2, size, lanes))
 
 
 class Family:
@@ -157,6 +192,14 @@ class Family:
         Where each stands among the tails of the system.
     sample : sequence of TailRates
         Rates of all tails of the system for any steps: those that are one object always are.
+
+    Attributes
+    ----------
+    set_of : sequence of int
+        Which set of factors each tail has.
+    blocks : list of array, shape (stage, stage, lane)
+        Rate of the sinks by the drivers through the tails, set by set.
+    factors : TailFactors
     """
 
     def __init__(self, tails: Sequence[Tail], places: Sequence[int], sample: Sequence[TailRates]):
@@ -164,19 +207,20 @@ class Family:
         shared = len({id(sample[place]) for place in places}) == 1
         self._sets = places[:1] if shared else places  # tails whose rates are worked out
         self.set_of = [0] * len(places) if shared else range(len(places))
+        self.lanes = 0
 
-    def room(self, lanes: int) -> None:
+    def prepare(self, lanes: int) -> None:
         """Make room for the factors of so many lanes."""
-        self.lanes = lanes
-        sets, size = len(self._sets), self.kind.size
-        self.share, self.feed = np.empty((2, sets, 2, size, STAGES, lanes))
-        self.turn = np.empty((sets, 2, 2, size, lanes))
+        if self.lanes == lanes:
+            return
+        self.lanes, sets = lanes, len(self._sets)
+        self.factors, self._room = TailFactors(sets, self.kind.size, lanes), _Room(self.kind.size, lanes)
         self.blocks = list(np.empty((sets, STAGES, STAGES, lanes)))  # kept: the elimination knows arrays by identity
 
     def factor(self, rates: Sequence[TailRates]) -> None:
         """Work out all factors."""
-        for place, *parts in zip(self._sets, self.share, self.turn, self.feed, self.blocks, strict=True):
-            self.kind.solve(rates[place], *parts)
+        for number, (place, block) in enumerate(zip(self._sets, self.blocks, strict=True)):
+            self.kind.solve(rates[place], self._room, block, self.factors, number)
 
     def coordinates(self, state: np.ndarray) -> np.ndarray:
         """Take the coordinates from a state, shape (unknown, mode): shape (tail, 2 size, mode)."""
