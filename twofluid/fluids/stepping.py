@@ -158,12 +158,9 @@ def step_density(
         rise = np.maximum(universe.gas_temperature_slope(a), 0.0)
         smooth = smooth + per_expansion * (rise / stepping.scattering_change + (a > universe.heated_from) / quiet)
     matters, will_be_seen = oscillation_matters(universe, wavenumber, time, stepping, asked)
-    squares = np.broadcast_to(smooth**2, matters.shape).copy()  # of all demands, which add up like that
-    fading = 2.0 * stepping.felt_fading * _depth(now)
-    for row, k, followed, seen in zip(squares, wavenumber, matters, will_be_seen, strict=True):
-        phase = k * time[followed]
-        faded = np.where(seen[followed], 0.0, fading[followed]) * np.log(np.maximum(phase / FULLY_FELT, 1.0))
-        row[followed] += (phase / stepping.phase_step) ** 2 * np.exp(-faded)
+    squares = _felt(now, wavenumber, time, stepping, will_be_seen)  # of all demands, which add up like that
+    squares *= matters
+    squares += smooth**2
     if universe.heated_from:
         squares += _gas_waves(universe, now, wavenumber, time, stepping) ** 2
     if universe.has_dark_pressure:
@@ -171,6 +168,19 @@ def step_density(
         squares += (dark_phase / _longest_dark_phase(universe, wavenumber, stepping)[:, None]) ** 2
     outside = wavenumber[:, None] < FAR_OUTSIDE / time
     return np.where(outside, per_expansion / stepping.outside_step, np.sqrt(squares, out=squares))
+
+
+def _felt(
+    now: Conditions, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping, will_be_seen: np.ndarray
+) -> np.ndarray:
+    """Give the square of the steps per unit of log conformal time for an acoustic oscillation, shape (mode, node)."""
+    fading = np.log(wavenumber / FULLY_FELT)[:, None] + np.log(time)
+    np.maximum(fading, 0.0, out=fading)
+    fading *= -2.0 * stepping.felt_fading * _depth(now)
+    fading[will_be_seen] = 0.0
+    density = np.multiply.outer((wavenumber / stepping.phase_step) ** 2, time**2)
+    density *= np.exp(fading, out=fading)
+    return density
 
 
 def _gas_waves(

@@ -115,6 +115,7 @@ class _Adjugate:
     """Inverse by cofactors, with room for one number of lanes."""
 
     def __init__(self, lanes: int):
+        self._weights = np.repeat(INVERSE_WEIGHTS[:, :, None], lanes, axis=2)  # quicker than to stretch it every time
         pivot = np.empty((STAGES, 2 * STAGES - 1, lanes))  # columns repeat: every cofactor becomes a plain slice
         self._core, self._again, self._first = pivot[:, :STAGES], pivot[:, STAGES:], pivot[:, : STAGES - 1]
         pairs = ((1, 2), (2, 0), (0, 1))
@@ -125,9 +126,9 @@ class _Adjugate:
         """Invert ``W - rate``, the rate of any kind."""
         core, product, determinant = self._core, self._product, self._determinant
         if rate.ndim == 3:
-            np.subtract(INVERSE_WEIGHTS[:, :, None], rate, out=core)
+            np.subtract(self._weights, rate, out=core)
         else:
-            core[...] = INVERSE_WEIGHTS[:, :, None]
+            core[...] = self._weights
             diagonal = diagonal_of(core)
             diagonal -= rate
         self._again[...] = self._first

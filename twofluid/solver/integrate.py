@@ -14,7 +14,7 @@ from .elimination import Elimination
 from .substitution import State
 from .system import LinearSystem
 
-LANES_PER_STRETCH = 1536  # steps times modes eliminated at once: long enough for arrays, short enough for the cache
+LANES_PER_STRETCH = 1024  # steps times modes eliminated at once: long enough for arrays, short enough for the cache
 MODES_PER_BATCH = 512  # at most so many modes march together
 GRAIN = 16  # modes leave the march in groups of so many
 
