@@ -3,9 +3,9 @@
 import numpy as np
 import pytest
 
-from twofluid.solver import Elimination, blocks
-from twofluid.solver.blocks import DIAGONAL, FULL, SPECTRAL, UNIFORM
-from twofluid.solver.collocation import EIGENVALUES, INVERSE_WEIGHTS, PROJECTORS, STATE_LOAD, WEIGHTS
+from twofluid.solver import Elimination, StepRates, blocks
+from twofluid.solver.blocks import DIAGONAL, FULL, UNIFORM
+from twofluid.solver.collocation import INVERSE_WEIGHTS, STATE_LOAD
 
 STEPS, MODES = 2, 3
 LANES = STEPS * MODES
@@ -21,16 +21,23 @@ def random_rates(count, seed, density=1.0, uniform=0.3):
     return rates
 
 
-def dense_stages(rates, count, state, step):
-    """Solve the stage equations of one step mode by mode as one dense system."""
-    stages = np.empty((count, 3, MODES))
+def dense_end(rates, count, state, step):
+    """Solve the stage equations of one step mode by mode as one dense system; return the last stage."""
+    end = np.empty((count, MODES))
     for mode in range(MODES):
         matrix = np.kron(np.eye(count), INVERSE_WEIGHTS)
         for (row, column), rate in rates.items():
             lane = np.broadcast_to(rate, (3, LANES))[:, step * MODES + mode]
             matrix[3 * row : 3 * row + 3, 3 * column : 3 * column + 3] -= np.diag(lane)
-        stages[:, :, mode] = np.linalg.solve(matrix, np.kron(state[:, mode], STATE_LOAD)).reshape(count, 3)
-    return stages
+        stages = np.linalg.solve(matrix, np.kron(state[:, mode], STATE_LOAD)).reshape(count, 3)
+        end[:, mode] = stages[:, -1]
+    return end
+
+
+def factored(count, rates):
+    """Eliminate; returns the factors, and how to advance a plain state by them."""
+    factors = Elimination(count, StepRates(rates)).factor(StepRates(rates), STEPS, MODES)
+    return factors, lambda state, step: factors.advance([state], step)[0]
 
 
 @pytest.mark.parametrize("density", [0.15, 0.4, 1.0])
@@ -39,18 +46,39 @@ def test_matches_a_dense_solve(density, seed):
     count = 7
     rates = random_rates(count, seed, density)
     state = np.random.default_rng(seed + 10).normal(size=(count, MODES))
-    factors = Elimination(count, rates).factor(rates, STEPS)
+    _, advance = factored(count, rates)
     for step in range(STEPS):
-        expected = dense_stages(rates, count, state, step)
+        expected = dense_end(rates, count, state, step)
         # Round-off of an elimination without pivoting: the random blocks are not graded.
-        np.testing.assert_allclose(factors.advance(state, step), expected, rtol=1e-7, atol=1e-9)
+        np.testing.assert_allclose(advance(state, step), expected, rtol=1e-7, atol=1e-9)
 
 
 def test_unknowns_without_a_rate_of_their_own():
     rates = {(0, 2): np.full(LANES, 0.7), (2, 0): np.full(LANES, -0.3), (1, 2): np.full((3, LANES), 0.2)}
     state = np.ones((3, MODES))
-    factors = Elimination(3, rates).factor(rates, STEPS)
-    np.testing.assert_allclose(factors.advance(state, 1), dense_stages(rates, 3, state, 1), rtol=1e-12)
+    _, advance = factored(3, rates)
+    np.testing.assert_allclose(advance(state, 1), dense_end(rates, 3, state, 1), rtol=1e-12)
+
+
+def test_leaves_are_what_nothing_before_them_touches():
+    # 0 and 1 act on 3 and are driven by it; 2 is touched by 0.
+    rates = {(3, 0): np.full(LANES, 0.5), (0, 3): np.full(LANES, -0.4), (1, 1): np.full((3, LANES), -2.0)}
+    rates |= {(3, 1): np.full(LANES, 0.1), (1, 3): np.full((3, LANES), 0.3), (2, 0): np.full(LANES, 1.0)}
+    pivots = Elimination(4, StepRates(rates)).pivots
+    assert [pivot.leaf for pivot in pivots] == [True, True, False, False]
+    state = np.random.default_rng(4).normal(size=(4, MODES))
+    _, advance = factored(4, rates)
+    np.testing.assert_allclose(advance(state, 1), dense_end(rates, 4, state, 1), rtol=1e-12)
+
+
+def test_lanes_beyond_those_used_change_nothing():
+    rates = random_rates(5, 2)
+    state = np.random.default_rng(3).normal(size=(5, MODES))
+    _, advance = factored(5, rates)
+    padded = StepRates({entry: np.concatenate([rate, rate[..., -1:]], axis=-1) for entry, rate in rates.items()})
+    factors = Elimination(5, padded).factor(padded, STEPS, MODES)
+    for step in range(STEPS):
+        np.testing.assert_array_equal(factors.advance([state], step)[0], advance(state, step))
 
 
 def twin_chains(shared):
@@ -70,11 +98,7 @@ def twin_chains(shared):
 
 def test_shared_chains_give_what_separate_ones_give():
     state = np.random.default_rng(6).normal(size=(7, MODES))
-    results = []
-    for shared in (True, False):
-        rates = twin_chains(shared)
-        factors = Elimination(7, rates).factor(rates, STEPS)
-        results.append(factors.advance(state, 0))
+    results = [factored(7, twin_chains(shared))[1](state, 0) for shared in (True, False)]
     np.testing.assert_allclose(results[0], results[1], rtol=1e-10)
 
 
@@ -87,17 +111,15 @@ def different_chains():
 def test_different_chains_are_substituted_together():
     state = np.random.default_rng(6).normal(size=(7, MODES))
     rates = different_chains()
-    factors = Elimination(7, rates).factor(rates, STEPS)
+    _, advance = factored(7, rates)
     for step in range(STEPS):
-        np.testing.assert_allclose(factors.advance(state, step), dense_stages(rates, 7, state, step), rtol=1e-9)
+        np.testing.assert_allclose(advance(state, step), dense_end(rates, 7, state, step), rtol=1e-9)
 
 
 def test_chains_made_of_the_same_kinds_of_block_are_substituted_together():
-    unlike = different_chains()
-    unlike[1, 1] = unlike[1, 1][0]  # the same at all stages, while its twin's is not: the first pair falls apart
-    systems = (twin_chains(True), different_chains(), unlike)
-    groups = [Elimination(7, rates).factor(rates, STEPS).groups for rates in systems]
-    assert groups == [5, 5, 6]  # the last pair feeds one row, so it goes one by one
+    systems = (twin_chains(True), different_chains())
+    # The first pair are leaves; the second goes together, the last pair feeds one row, so it goes one by one.
+    assert [factored(7, rates)[0].groups for rates in systems] == [4, 4]
 
 
 def test_fill_in_is_symbolic():
@@ -105,38 +127,35 @@ def test_fill_in_is_symbolic():
     entries = {(0, index) for index in range(4)} | {(index, 0) for index in range(4)}
     tip_first = {entry: np.zeros(LANES) for entry in entries}
     tip_last = {(3 - row, 3 - column): rate for (row, column), rate in tip_first.items()}
-    assert [len(pivot.columns) for pivot in Elimination(4, tip_first).pivots] == [3, 2, 1, 0]
-    assert [len(pivot.columns) for pivot in Elimination(4, tip_last).pivots] == [1, 1, 1, 0]
+    assert [len(pivot.columns) for pivot in Elimination(4, StepRates(tip_first)).pivots] == [3, 2, 1, 0]
+    assert [len(pivot.columns) for pivot in Elimination(4, StepRates(tip_last)).pivots] == [1, 1, 1, 0]
 
 
 def random_block(kind, seed):
     """One block of some kind, and the same as full matrices computed another way."""
-    draw = np.random.default_rng(seed)
-    shape, number = kind.value
-    block = draw.normal(size=(*shape, LANES)).astype(number)
-    if kind == SPECTRAL:
-        block[1] += 1j * draw.normal(size=LANES)
-        full = np.einsum("nij,nl->ijl", PROJECTORS, block).real
-    elif kind == FULL:
-        full = block
-    else:
-        full = np.eye(3)[:, :, None] * block
-    return block, full
+    block = np.random.default_rng(seed).normal(size=(*kind.value, LANES))
+    return block, block if kind == FULL else np.eye(3)[:, :, None] * block
 
 
 def as_full(block, kind):
     out = FULL.empty(LANES)
-    blocks.write_full(block, kind, out)
+    blocks.write(block, (kind,), out)
     return out
 
 
-KINDS = (UNIFORM, SPECTRAL, DIAGONAL, FULL)
+KINDS = (UNIFORM, DIAGONAL, FULL)
 
 
 @pytest.mark.parametrize("kind", KINDS)
 def test_any_block_as_a_full_one(kind):
     block, full = random_block(kind, 3)
     np.testing.assert_allclose(as_full(block, kind), full, atol=1e-12)
+
+
+def test_a_uniform_block_as_a_diagonal_one():
+    out = DIAGONAL.empty(LANES)
+    blocks.write(np.arange(float(LANES)), (UNIFORM,), out)
+    np.testing.assert_array_equal(out, np.tile(np.arange(LANES), (3, 1)))
 
 
 @pytest.mark.parametrize("first_kind", KINDS)
@@ -166,13 +185,11 @@ def test_sum_in_place(first_kind, second_kind):
 @pytest.mark.parametrize("kind", KINDS)
 def test_inverse_of_a_pivot(kind):
     rate, full = random_block(kind, 9)
-    result = SPECTRAL if kind in (UNIFORM, SPECTRAL) else FULL
-    out = result.empty(LANES)
+    out, start, last = FULL.empty(LANES), DIAGONAL.empty(LANES), DIAGONAL.empty(LANES)
     blocks.invert_pivot(rate, (kind,), out)
     expected = np.linalg.inv(np.moveaxis(INVERSE_WEIGHTS[:, :, None] - full, 2, 0))
-    np.testing.assert_allclose(np.moveaxis(as_full(out, result), 2, 0), expected, rtol=1e-8, atol=1e-10)
-
-
-def test_eigenbasis_gives_functions_of_the_matrix():
-    np.testing.assert_allclose(np.einsum("n,nij->ij", EIGENVALUES, PROJECTORS).real, INVERSE_WEIGHTS, atol=1e-12)
-    np.testing.assert_allclose(np.einsum("n,nij->ij", 1 / EIGENVALUES, PROJECTORS).real, WEIGHTS, atol=1e-12)
+    np.testing.assert_allclose(np.moveaxis(out, 2, 0), expected, rtol=1e-8, atol=1e-10)
+    blocks.start_alone(out, (FULL,), start)
+    np.testing.assert_allclose(start.T, expected @ STATE_LOAD, rtol=1e-8, atol=1e-10)
+    blocks.last_row(out, (FULL,), last)
+    np.testing.assert_allclose(last.T, expected[:, 2], rtol=1e-8, atol=1e-10)

@@ -43,7 +43,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ..solver import StepRates, Tail, TailRates
+from ..solver import StepRates, TailRates
 from ..universe import Conditions, Response, Universe
 from .chain import Chain
 from .massive import MassiveNeutrinos

@@ -115,7 +115,7 @@ def integrate(
 
 
 def _stretches(length: np.ndarray) -> list[tuple[int, int, int]]:
-    """Cut the march of modes sorted by length into stretches: first step, number of steps, and of modes on their way."""
+    """Cut the march of modes sorted by length into stretches: first step, steps, and modes that are on their way."""
     plan, first = [], 0
     lanes = max(LANES_PER_STRETCH, len(length))
     while first < length[0]:

@@ -211,7 +211,9 @@ class _Substitution:
 class _LeafSubstitution:
     """The leaves' share in the two passes: columns times old state, and stages times rows."""
 
-    def __init__(self, leaves: Leaves, values: Sequence[np.ndarray], shape: tuple, load: np.ndarray, stages: np.ndarray):
+    def __init__(
+        self, leaves: Leaves, values: Sequence[np.ndarray], shape: tuple, load: np.ndarray, stages: np.ndarray
+    ):
         modes = shape[-1]
         self._rows, self._damped = leaves.rows, leaves.damped
         self._keeping = [row for row in leaves.rows if row not in leaves.damped]
