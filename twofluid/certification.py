@@ -18,7 +18,7 @@ from .scenario import ADIABATIC
 
 BUDGET = 0.25  # of the cost of a run that its certificate may take
 FIXED_COST = 350_000  # what a run costs beside its steps (universe, tables, figures), in steps of one mode (measured)
-STEP_OVERHEAD = 100  # what a step of all modes costs whatever their number, in steps of one mode (measured)
+STEP_OVERHEAD = 30  # what a step of all modes costs whatever their number, in steps of one mode (measured)
 REFINED_COST = 3.0  # steps and chains of the finer run over those of the first (measured)
 FEWEST_MODES = 3
 SMALL_CONTRAST = 0.1  # of its largest so far, below which a contrast that passes through zero is not its own measure

@@ -15,7 +15,8 @@ from twofluid import evolve, evolve_many
 from twofluid.evolution import _request
 from twofluid.fluids import KineticSystem, resolution_for, start_time
 from twofluid.scenario import Cosmology, Primordial, Sampling, Scenario
-from twofluid.solver import Elimination
+from twofluid.solver import Elimination, blocks, rate_matrix
+from twofluid.solver.blocks import FULL
 from twofluid.universe import Universe
 
 REPEATS = 5
@@ -48,7 +49,6 @@ def general(universe, k, method):
     resolution = resolution_for(universe)
     system = KineticSystem(universe, np.array([k]), resolution.chains)
     start = start_time(universe, system.wavenumber)
-    count = len(system.unknowns)
     began = time.process_time()
 
     class TooLongError(Exception):
@@ -57,11 +57,7 @@ def general(universe, k, method):
     def matrix(log_time):
         if time.process_time() - began > LONGEST_GENERAL_RUN:
             raise TooLongError
-        tau = np.exp(log_time)
-        dense = np.zeros((count, count))
-        for (row, column), rate in system.step_rates([0], np.full((3, 1, 1), tau), np.full((1, 1), tau)).items():
-            dense[row, column] = rate.flat[0]
-        return dense
+        return np.exp(log_time) * rate_matrix(system, 0, np.exp(log_time))
 
     first = system.first_state(start)[:, 0]
     span = np.log([start[0], universe.conformal_time(1.0)])
@@ -133,20 +129,28 @@ def many_universes():
     print(f"200 universes of 64 modes: {time.process_time() - start:.1f} s")
 
 
-def operations(elimination):
-    """Count multiplications and additions a step and mode: full blocks as 27 + 18, an inverse as 45, and so on."""
-    sizes = {"UNIFORM": 1, "SPECTRAL": 4, "DIAGONAL": 3, "FULL": 9}
+def operations(elimination, lanes):
+    """Count multiplications and additions a step and mode, in elimination and substitution."""
     count = 0
+    for call, _, kinds, out in elimination.program.bind(lanes).calls:
+        size = out.size // lanes
+        if call is blocks.invert_pivot:
+            count += 51
+        elif call is blocks.multiply:
+            count += 45 if kinds[0] == kinds[1] == FULL else size
+        elif call is blocks.add:
+            count += 9 if kinds[0] == kinds[1] == FULL else 3
+        elif call is blocks.start_alone:
+            count += 15
     for pivot in elimination.pivots:
-        kinds = [elimination.kind(symbol).name for symbol in (*pivot.below, *pivot.right, *pivot.response)]
-        below, right = kinds[: len(pivot.below)], kinds[len(pivot.below) : len(pivot.below) + len(pivot.right)]
-        response = kinds[len(pivot.below) + len(pivot.right) :]
-        count += 45 if elimination.kind(pivot.inverse).name == "FULL" else 8
-        count += sum(45 if kind == "FULL" else 9 for kind in right)
-        for left in below:
-            for kind in response:
-                count += (45 if left == kind == "FULL" else sizes[kind]) + sizes[kind]
-        count += 15 + sum(2 * sizes[kind] for kind in below) + 15 + sum(2 * sizes[kind] for kind in right)
+        blocks_beside = [*pivot.below, *(pivot.right if pivot.leaf else pivot.response)]
+        if pivot.leaf:
+            count += 6 * len(blocks_beside)
+        else:
+            count += 15 + sum(18 if elimination.kind(block) == FULL else 6 for block in blocks_beside)
+    for family in elimination.families:
+        size = family.kind.size  # complex coordinates: polynomials, their quotients, and what is made of the state
+        count += len(family.blocks) * (220 + 160 * size) + len(family.tails) * 32 * size
     return count
 
 
@@ -154,13 +158,12 @@ def floor(universe):
     """Print how far the integration is above what this core does on plain arrays."""
     wavenumbers = np.geomspace(1e-4, 1e4, 256)
     request = _request(scenario(), universe, wavenumbers, [0.0], None)
-    system, plan = request.system, request.plan
-    modes, steps = np.arange(256), 4
-    times = np.exp(plan.boundaries[: steps + 1])
-    step = np.diff(times, axis=0)
-    rates = system.step_rates(modes, times[:-1] + 0.5 * step * np.ones((3, 1, 1)), step)
-    elimination = Elimination(len(system.unknowns), rates)
-    flops = operations(elimination)
+    system = request.system
+    tau = np.full((3, 256), 1.0)
+    rates = system.step_rates(np.arange(256), tau, np.full(256, 0.1))
+    tails = sum(len(tail.rows) for tail in system.tails)
+    elimination = Elimination(len(system.unknowns) - tails, rates, system.tails)
+    flops = operations(elimination, 256)
     lanes = evolve(scenario(), wavenumbers=wavenumbers, redshifts=[0.0], universe=universe).counts["lanes"]
     x, y, out = np.random.default_rng(1).normal(size=(3, 9, 1024))
 

@@ -34,7 +34,9 @@ class System:
         self.unknowns = [f"y{row}" for row in range(CORE + sum(len(tail.rows) for tail in tails))]
         self._core = draw.normal(size=(CORE, CORE, modes)) - np.eye(CORE)[:, :, None]
         paces, dampings = draw.uniform(0.5, 3.0, (2, len(tails), modes))
-        self._paces, self._dampings = (np.tile(one[:1], (len(tails), 1)) if shared else one for one in (paces, dampings))
+        if shared:
+            paces[:], dampings[:] = paces[0], dampings[0]
+        self._paces, self._dampings = paces, dampings
         self._stages, self._shared = np.array(stages)[:, None], shared
 
     def step_rates(self, modes, time, step):

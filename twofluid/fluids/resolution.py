@@ -33,7 +33,7 @@ class Resolution:
     chains: ChainLengths
 
     def refined(self) -> "Resolution":
-        """Halve every step, without stretch, follow oscillations longer, chains further, more momenta: it tells the error."""
+        """Halve steps, stretch none, follow oscillations longer, chains further, more momenta: it tells the error."""
         stepping = self.stepping
         halved = {
             name: getattr(stepping, name) / 2.0

@@ -82,6 +82,8 @@ class Elimination:
 
     Attributes
     ----------
+    program : Program
+        All block operations.
     pivots : list of Pivot
     families : list of Family
         The tails, those of one kind together.
@@ -89,7 +91,7 @@ class Elimination:
 
     def __init__(self, count: int, sample: StepRates, tails: Sequence[Tail] = ()):
         self._count = count
-        self._program = program = Program()
+        self.program = program = Program()
         self._free = program.constant("free inverse", WEIGHTS[:, :, None])
         self.families = families(tails, sample.tails)
         work = {entry: program.input(entry, rate) for entry, rate in sample.entries.items()}
@@ -104,11 +106,11 @@ class Elimination:
 
     def kind(self, symbol: Symbol) -> Kind:
         """Give the kind of block a symbol of a pivot stands for."""
-        return self._program.kind(symbol)
+        return self.program.kind(symbol)
 
     def _attach(self, number: int, family, work: dict[Entry, Symbol]) -> None:
         """Add what the tails of one kind do to their sinks once they are eliminated."""
-        program = self._program
+        program = self.program
         family.prepare(1)
         for tail, place in zip(family.tails, family.set_of, strict=True):
             block = program.input(("tail", number, place), family.blocks[place])
@@ -119,7 +121,7 @@ class Elimination:
 
     def _eliminate(self, index: int, work: dict[Entry, Symbol]) -> Pivot:
         """Take one unknown out of the remaining blocks, by symbol."""
-        program, later = self._program, range(index + 1, self._count)
+        program, later = self.program, range(index + 1, self._count)
         own = work.pop((index, index), None)
         rows = tuple(row for row in later if (row, index) in work)
         columns = tuple(column for column in later if (index, column) in work)
@@ -138,7 +140,7 @@ class Elimination:
 
     def _gather(self, pivots: Sequence[Pivot]) -> Leaves:
         """Put the leaves together, coupling by coupling."""
-        program = self._program
+        program = self.program
         full_weight = program.constant("quadrature", WEIGHTS[STAGES - 1][:, None])
         shares, feeds, alone = [], [], {}
         for pivot in pivots:
@@ -203,7 +205,7 @@ class Elimination:
             family.prepare(lanes)
             family.factor(rates.tails)
             inputs |= {("tail", number, place): block for place, block in enumerate(family.blocks)}
-        bound = self._program.bind(lanes)
+        bound = self.program.bind(lanes)
         bound.run(inputs)
         if self._factors is None or self._factors.shape != (lanes, steps, modes):
             self._factors = Factors(

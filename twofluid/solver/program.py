@@ -109,13 +109,15 @@ class _Bound:
     lanes : int
     values : list of array
         Result of every operation by symbol; those wanted are good until the next run.
+    calls : list of tuple
+        What a run works through: function, symbols of the operands, their kinds, array of the result.
     """
 
     def __init__(self, operations: Sequence[_Operation], wanted: frozenset[Symbol], lanes: int):
         self.lanes = lanes
         self.values: list[np.ndarray | None] = [None] * len(operations)
         self._operations, self._wanted = operations, wanted
-        self._calls, self._inputs = [], []
+        self.calls, self._inputs = [], []
         needed = _needed(operations, wanted)
         computed = [symbol for symbol, op in enumerate(operations) if symbol in needed and op.call is not None]
         last_use = {operand: symbol for symbol in computed for operand in operations[symbol].operands}
@@ -145,7 +147,7 @@ class _Bound:
             for o in spent:
                 free.setdefault(operations[o].kind, []).append(self.values[o])
             self.values[symbol] = out
-            self._calls.append((op.call, op.operands, kinds, out))
+            self.calls.append((op.call, op.operands, kinds, out))
 
     def _stacks(self, computed: Sequence[Symbol]) -> dict[Symbol, tuple[Symbol, int]]:
         """Make room for all stacks; say which results are computed right there: in which stack, and where."""
@@ -171,7 +173,7 @@ class _Bound:
         """Copy what a stack lacks."""
         for number, part in enumerate(self._operations[symbol].operands):
             if places.get(part) != (symbol, number):
-                self._calls.append((blocks.write, (part,), kinds[number : number + 1], self.values[symbol][number]))
+                self.calls.append((blocks.write, (part,), kinds[number : number + 1], self.values[symbol][number]))
 
     def _gives_way(self, symbol: Symbol, places: Mapping[Symbol, tuple[Symbol, int]]) -> bool:
         """Whether an array may be used again once its content is not needed."""
@@ -183,7 +185,7 @@ class _Bound:
         values = self.values
         for symbol, key in self._inputs:
             values[symbol] = inputs[key]
-        for call, operands, kinds, out in self._calls:
+        for call, operands, kinds, out in self.calls:
             call(*[values[operand] for operand in operands], kinds, out)
 
 
