@@ -1,14 +1,18 @@
 """The rates against an independent writing of the equations, and the clock's rules."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from courses import FINE, cosmology, course
 from scipy.integrate import solve_ivp
 
 from twofluid.fluids import ChainLengths, KineticSystem, Resolution, clock, resolution_for, start_time
+from twofluid.fluids.kinetic import ConstrainedKineticSystem
 from twofluid.fluids.stepping import oscillation_matters
-from twofluid.scenario import DarkMatter
-from twofluid.solver import rate_matrix
+from twofluid.scenario import DarkMatter, Neutrinos
+from twofluid.solver import NODES, integrate, rate_matrix
+from twofluid.solver.collocation import INVERSE_WEIGHTS, STATE_LOAD
 from twofluid.universe import Universe
 
 PHOTON, NEUTRINO = 6, 7  # highest moments of the comparison
@@ -96,6 +100,31 @@ def test_same_solution_as_a_general_solver_on_the_published_equations(k, law):
     if universe.has_dark_pressure:
         assert k * run.theta_dark[-1] == pytest.approx(expected[-1], rel=2e-4)
         assert abs(expected[-1]) > 0.1 * run.now.hubble_rate[-1] * abs(expected[1])  # it does something
+
+
+@pytest.mark.parametrize("time", [1.0, 280.0, 3000.0])  # [Mpc]: tied plasma, recombination, free streaming
+@pytest.mark.parametrize(
+    ("asked", "system_class", "fluctuations"),
+    [
+        (cosmology(), KineticSystem, False),
+        (cosmology(dark_matter=DarkMatter(50.0, 0.0, 0.5)), KineticSystem, True),
+        (replace(cosmology(), neutrinos=Neutrinos(3.046, (0.06, 0.3))), ConstrainedKineticSystem, False),
+    ],
+    ids=["plain", "pressure and electrons", "massive, held to the constraint"],
+)
+def test_one_step_against_the_whole_matrix(asked, system_class, fluctuations, time):
+    # General library: numpy.linalg.solve on the stage equations with every entry written out, tails included.
+    universe = Universe(asked)
+    system = system_class(universe, np.array([0.3]), ChainLengths(9, 7, 8, 8, 3), fluctuations)
+    count, step = len(system.unknowns), 0.3 * time
+    state = np.random.default_rng(1).normal(size=(count, 1))
+    found = integrate(system, np.array([[time], [time + step]]), state, system.unknowns).observed[:, 1, 0]
+    matrix = np.kron(INVERSE_WEIGHTS, np.eye(count))  # stage by stage
+    for stage, node in enumerate(NODES):
+        here = slice(stage * count, (stage + 1) * count)
+        matrix[here, here] -= step * rate_matrix(system, 0, time + node * step)
+    expected = np.linalg.solve(matrix, np.kron(STATE_LOAD, state[:, 0]))[-count:]
+    np.testing.assert_allclose(found, expected, rtol=1e-8, atol=1e-10 * np.abs(expected).max())
 
 
 def test_constraint_notices_a_wrong_coefficient():

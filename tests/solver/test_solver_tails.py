@@ -137,3 +137,10 @@ def test_parallel_eigenvectors_are_refused():
     tail = Tail((1, 2), matrix, np.array([1.0, 0.0]), np.array([0.0, 1.0]), {0: 1.0}, 0)
     with pytest.raises(ValueError, match="a tail of 2 moments is too long"):
         Elimination(1, StepRates({(0, 0): np.ones(1)}, [TailRates(np.ones(1))]), [tail])
+
+
+def test_entries_of_a_tail_beside_it_are_refused():
+    tail = chain(2, (1, 2), {0: 1.0}, 0)
+    rates = StepRates({(0, 0): np.ones(1), (0, 1): np.ones(1)}, [TailRates(np.ones(1))])
+    with pytest.raises(ValueError, match=r"entries \[\(0, 1\)\] belong to tails"):
+        Elimination(1, rates, [tail])

@@ -383,13 +383,12 @@ def _quadrupoles(s: _Surroundings) -> dict:
     """Second moments of photons and neutrinos, with the shear of the metric (eqs 49, 63)."""
     shear_photon, shear_neutrino = 16 / 15 * s.gravity_photon, 16 / 15 * s.gravity_neutrino
     shear_plasma = shear_photon + 4 / 5 * s.gravity_baryon
-    metric, third = 4 / 15 * s.x, -3 / 5 * s.x
+    metric = 4 / 15 * s.x
     return {
         ("photon_2", "metric_rate"): metric,
         ("photon_2", "theta_baryon"): 8 / 15 * s.x + shear_plasma,
         ("photon_2", "slip"): -8 / 15 * s.x - shear_photon,
         ("photon_2", "theta_neutrino"): shear_neutrino,
-        ("photon_2", "photon_3"): third,
         ("photon_2", "photon_2"): -0.9 * s.scattering,
         ("photon_2", "polarization_0"): 0.1 * s.scattering,
         ("photon_2", "polarization_2"): 0.1 * s.scattering,
@@ -397,7 +396,6 @@ def _quadrupoles(s: _Surroundings) -> dict:
         ("neutrino_2", "theta_baryon"): shear_plasma,
         ("neutrino_2", "slip"): -shear_photon,
         ("neutrino_2", "theta_neutrino"): 8 / 15 * s.x + shear_neutrino,
-        ("neutrino_2", "neutrino_3"): third,
     }
 
 
@@ -413,7 +411,6 @@ def _polarization(s: _Surroundings) -> dict:
         ("polarization_1", "polarization_2"): -2 / 3 * s.x,
         ("polarization_1", "polarization_1"): -s.scattering,
         ("polarization_2", "polarization_1"): 2 / 5 * s.x,
-        ("polarization_2", "polarization_3"): -3 / 5 * s.x,
         ("polarization_2", "polarization_2"): -9.0 * tenth,
         ("polarization_2", "polarization_0"): tenth,
         ("polarization_2", "photon_2"): tenth,

@@ -80,6 +80,11 @@ class Elimination:
     tails : sequence of Tail, optional
         Tails of the system.
 
+    Raises
+    ------
+    ValueError
+        If an entry belongs to a tail, or the eigenvectors of a tail are too nearly parallel.
+
     Attributes
     ----------
     program : Program
@@ -94,6 +99,8 @@ class Elimination:
         self.program = program = Program()
         self._free = program.constant("free inverse", WEIGHTS[:, :, None])
         self.families = families(tails, sample.tails)
+        if beyond := [entry for entry in sample.entries if max(entry) >= count]:
+            raise ValueError(f"entries {beyond} belong to tails, whose rates are told by `Tail` and `TailRates`")
         work = {entry: program.input(entry, rate) for entry, rate in sample.entries.items()}
         self._touched: set[int] = set()
         for number, family in enumerate(self.families):
