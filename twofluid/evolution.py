@@ -188,7 +188,7 @@ def _request(scenario: Scenario, universe: Universe, wavenumbers, redshifts, res
 
     scale_factors = np.unique(np.append(1.0 / (1.0 + z), 1.0))  # the marks: ascending, today included
     marks = universe.conformal_time(scale_factors)
-    stops = _with_switches(marks, system.switches)
+    stops = _with_switches(np.unique(marks), system.switches)
     asked = np.searchsorted(stops, marks)[np.searchsorted(scale_factors, 1.0 / (1.0 + z))]
     start = start_time(universe, k)
     plan = clock(universe, k, start, stops, stepping)

@@ -1,6 +1,6 @@
 """The measured error of each accuracy, as the table in DEVELOPERS.md.
 
-Run by hand: ``python tests/benchmarks/accuracy_table.py``. Every accuracy is compared with twice refined
+Run by hand: ``python tests/benchmarks/accuracy_table.py``. Every accuracy is compared with refined
 "reference" runs of very different universes; it takes some minutes.
 """
 

@@ -134,7 +134,7 @@ def operations(elimination, lanes):
     count = 0
     for call, _, kinds, out in elimination.program.bind(lanes).calls:
         size = out.size // lanes
-        if call is blocks.invert_pivot:
+        if isinstance(call, blocks.PivotInverse):
             count += 51
         elif call is blocks.multiply:
             count += 45 if kinds[0] == kinds[1] == FULL else size

@@ -1,12 +1,15 @@
 """Whole runs against an independent integration, finer runs of our own, and the facts of the trade."""
 
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from brute_force import DELTA_BARYON, DELTA_DARK, DELTA_GAS_TEMPERATURE, REDSHIFTS, WAVENUMBERS
 
 from twofluid import evolve
 from twofluid.fluids import ChainLengths, Resolution, Stepping
-from twofluid.scenario import Cosmology, Neutrinos, Primordial, Sampling, Scenario
+from twofluid.scenario import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
 
 FINER = Resolution(
     Stepping(
@@ -121,6 +124,25 @@ def test_results_do_not_depend_on_companions():
         alone = evolve(scenario(), wavenumbers=wavenumbers[mode], redshifts=[1000.0, 10.0])
         for name in ("delta_dark", "delta_baryon", "theta_baryon"):
             np.testing.assert_allclose(getattr(alone, name)[0], getattr(together, name)[mode], rtol=1e-9)
+
+
+def test_results_do_not_depend_on_other_threads():
+    asked = [np.geomspace(0.01, 10.0, 5), np.geomspace(0.1, 100.0, 7)] * 2
+    alone = [evolve(scenario(), wavenumbers=k, redshifts=[10.0]).delta_baryon for k in asked]
+    with ThreadPoolExecutor(4) as pool:
+        found = list(pool.map(lambda k: evolve(scenario(), wavenumbers=k, redshifts=[10.0]).delta_baryon, asked))
+    for one, other in zip(alone, found, strict=True):
+        np.testing.assert_array_equal(one, other)
+
+
+def test_redshifts_that_are_one_to_the_clock():
+    near = np.nextafter(1000.0, 2000.0)
+    for closure in ("kinetic", "sound-speed"):
+        asked = replace(scenario(), method=Method(closure))
+        history = evolve(asked, wavenumbers=[0.1, 1.0], redshifts=[1000.0, near, 0.0])
+        np.testing.assert_allclose(history.delta_dark[:, 0], history.delta_dark[:, 1], rtol=1e-12)
+        expected = evolve(asked, wavenumbers=[0.1, 1.0], redshifts=[1000.0, 0.0]).delta_dark
+        np.testing.assert_allclose(history.delta_dark[:, [0, 2]], expected, rtol=1e-6)
 
 
 def test_every_wavenumber_from_the_smallest_to_the_largest_in_one_call():

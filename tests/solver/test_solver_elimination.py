@@ -36,7 +36,7 @@ def dense_end(rates, count, state, step):
 
 def factored(count, rates):
     """Eliminate; returns the factors, and how to advance a plain state by them."""
-    factors = Elimination(count, StepRates(rates)).factor(StepRates(rates), STEPS, MODES)
+    factors = Elimination(count, StepRates(rates)).factor(StepRates(rates), LANES, STEPS, MODES)
     return factors, lambda state, step: factors.advance([state], step)[0]
 
 
@@ -71,12 +71,21 @@ def test_leaves_are_what_nothing_before_them_touches():
     np.testing.assert_allclose(advance(state, 1), dense_end(rates, 4, state, 1), rtol=1e-12)
 
 
+def test_a_group_is_one_piece_of_the_state():
+    # 1 and 3 are made of the same kinds of block, but 2, a leaf, stands between them.
+    rates = {(1, 0): np.full(LANES, 0.5), (3, 0): np.full(LANES, 0.3)}
+    state = np.random.default_rng(4).normal(size=(4, MODES))
+    factors, advance = factored(4, rates)
+    np.testing.assert_allclose(advance(state, 1), dense_end(rates, 4, state, 1), rtol=1e-12)
+    assert factors.groups == 2
+
+
 def test_lanes_beyond_those_used_change_nothing():
     rates = random_rates(5, 2)
     state = np.random.default_rng(3).normal(size=(5, MODES))
     _, advance = factored(5, rates)
     padded = StepRates({entry: np.concatenate([rate, rate[..., -1:]], axis=-1) for entry, rate in rates.items()})
-    factors = Elimination(5, padded).factor(padded, STEPS, MODES)
+    factors = Elimination(5, padded).factor(padded, LANES + 1, STEPS, MODES)
     for step in range(STEPS):
         np.testing.assert_array_equal(factors.advance([state], step)[0], advance(state, step))
 
@@ -186,7 +195,7 @@ def test_sum_in_place(first_kind, second_kind):
 def test_inverse_of_a_pivot(kind):
     rate, full = random_block(kind, 9)
     out, start, last = FULL.empty(LANES), DIAGONAL.empty(LANES), DIAGONAL.empty(LANES)
-    blocks.invert_pivot(rate, (kind,), out)
+    blocks.PivotInverse(LANES)(rate, (kind,), out)
     expected = np.linalg.inv(np.moveaxis(INVERSE_WEIGHTS[:, :, None] - full, 2, 0))
     np.testing.assert_allclose(np.moveaxis(out, 2, 0), expected, rtol=1e-8, atol=1e-10)
     blocks.start_alone(out, (FULL,), start)

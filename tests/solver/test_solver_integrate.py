@@ -76,6 +76,31 @@ def test_result_does_not_depend_on_companions():
         np.testing.assert_allclose(together[:, mode], alone[:, 0], rtol=1e-13)
 
 
+def test_modes_leave_the_march_in_any_order():
+    # Closed form: exponential decay. More modes than march together, of every length down to none at all.
+    draw = np.random.default_rng(7)
+    lengths, rates = draw.integers(0, 40, 1100), draw.uniform(0.1, 2.0, 1100)
+    times = np.ones((41, 1100))
+    for mode, steps in enumerate(lengths):
+        times[: steps + 1, mode] = np.linspace(1.0 - steps / 40.0, 1.0, steps + 1)
+    system = MatrixSystem([constant([[-rate]]) for rate in rates], 1)
+    observed = integrate(system, times, np.ones((1, 1100)), ["y0"]).observed[0]
+    np.testing.assert_allclose(observed, np.exp(-rates * (times - times[0])), rtol=1e-9)  # after arrival as well
+
+
+def test_steps_of_no_length_on_the_way_change_nothing():
+    system = MatrixSystem([constant([[-1.0]])], 1)
+    with_pause = np.array([0.0, 0.25, 0.5, 0.5, 0.75, 1.0])[:, None]
+    course = integrate(system, with_pause, np.ones((1, 1)), ["y0"])
+    np.testing.assert_allclose(course.observed[0, :, 0], np.exp(-with_pause[:, 0]), rtol=1e-6)
+    assert course.counts["steps"] == 4
+
+
+def test_nothing_observed():
+    system = MatrixSystem([constant([[-1.0]])], 1)
+    assert integrate(system, clock(1.0, 3), np.ones((1, 1)), []).observed.shape == (0, 4, 1)
+
+
 def test_many_modes_are_split_into_batches_without_a_trace():
     decay = np.linspace(0.1, 2.0, 700)
     system = MatrixSystem([constant([[-rate]]) for rate in decay], 1)
@@ -105,10 +130,13 @@ def test_failure_names_mode_and_time():
     def poisoned(time):
         return np.array([[np.nan if time > 0.5 else -1.0]])
 
-    system = MatrixSystem([constant([[-1.0]]), poisoned], 1)
+    system = MatrixSystem([constant([[-1.0]]), constant([[-1.0]]), poisoned], 1)
+    times = clock(1.0, 10, 3)
+    times[5:, 0] = times[5, 0]  # the shortest clock: last in the march
+    times[9:, 1] = times[9, 1]
     with pytest.raises(SolverFailure, match="no longer finite") as failure:
-        final(system, clock(1.0, 10, 2), np.ones((1, 2)))
-    assert failure.value.mode == 1
+        final(system, times, np.ones((1, 3)))
+    assert failure.value.mode == 2
     assert failure.value.time == pytest.approx(0.6)  # the step that first evaluates beyond 0.5 ends at 0.6
 
 

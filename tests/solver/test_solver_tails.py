@@ -70,6 +70,8 @@ CASES = {
     "two alike with the same rates": (two_chains(), True),
     "two of different length": ([chain(4, range(3, 7), {0: 1.0}, 0), chain(6, range(7, 13), {1: 1.0}, 1)], False),
     "driven by two, acting on another": ([chain(4, range(3, 7), {0: 1.0, 1: 1.6}, 2)], False),
+    "two of one kind on one sink": ([chain(4, range(3, 7), {0: 1.0}, 2), chain(4, range(7, 11), {1: 1.0}, 2)], False),
+    "of one kind, other weights": ([chain(4, range(3, 7), {0: 1.0}, 1), chain(4, range(7, 11), {0: 0.3}, 2)], False),
     "two on one sink": ([chain(4, range(3, 7), {0: 1.0}, 2), chain(5, range(7, 12), {0: 1.0}, 2)], False),
 }
 
@@ -81,7 +83,7 @@ def test_matches_a_dense_solve(tails, shared, stages):
     step = np.repeat([0.3, 2.0], MODES)
     rates = system.step_rates(np.tile(np.arange(MODES), STEPS), np.zeros((3, LANES)), step)
     elimination = Elimination(CORE, rates, tails)
-    factors = elimination.factor(rates, STEPS, MODES)
+    factors = elimination.factor(rates, LANES, STEPS, MODES)
     state = np.random.default_rng(5).normal(size=(len(system.unknowns), MODES))
     for number in range(STEPS):
         end = factors.advance(elimination.split(state), number)
@@ -100,7 +102,7 @@ def test_any_pace_and_damping(pace, damping):
     rates = StepRates({(0, 0): -factors}, [TailRates(pace * factors, damping * factors)])
     elimination = Elimination(1, rates, [tail])
     state = np.random.default_rng(2).normal(size=(9, 1))
-    end = elimination.read(elimination.factor(rates, 1, 1).advance(elimination.split(state), 0), np.arange(9))
+    end = elimination.read(elimination.factor(rates, 1, 1, 1).advance(elimination.split(state), 0), np.arange(9))
     rate = np.zeros((9, 9))
     rate[1:, 1:], rate[1:, 0], rate[0, 1:] = pace * tail.matrix, pace * tail.entrance, pace * tail.exit
     rate -= np.diag([1.0] + [damping] * 8)
@@ -137,6 +139,27 @@ def test_parallel_eigenvectors_are_refused():
     tail = Tail((1, 2), matrix, np.array([1.0, 0.0]), np.array([0.0, 1.0]), {0: 1.0}, 0)
     with pytest.raises(ValueError, match="a tail of 2 moments is too long"):
         Elimination(1, StepRates({(0, 0): np.ones(1)}, [TailRates(np.ones(1))]), [tail])
+
+
+def test_unknowns_without_entries_that_tails_touch():
+    # Nothing but a tail, from the first of two unknowns to the second: neither is a leaf.
+    tail = chain(3, (2, 3, 4), {0: 1.0}, 1)
+    rates = StepRates({}, [TailRates(np.full(1, 0.7), np.full(1, 0.2))])
+    elimination = Elimination(2, rates, [tail])
+    assert not any(pivot.leaf for pivot in elimination.pivots)
+    state = np.random.default_rng(2).normal(size=(5, 1))
+    end = elimination.read(elimination.factor(rates, 1, 1, 1).advance(elimination.split(state), 0), np.arange(5))
+    rate = np.zeros((5, 5))
+    rate[2:, 2:] = 0.7 * tail.matrix - 0.2 * np.eye(3)
+    rate[2:, 0], rate[1, 2:] = 0.7 * tail.entrance, 0.7 * tail.exit
+    matrix = np.kron(np.eye(5), INVERSE_WEIGHTS) - np.kron(rate, np.eye(3))
+    expected = np.linalg.solve(matrix, np.kron(state[:, 0], STATE_LOAD)).reshape(5, 3)[:, -1]
+    np.testing.assert_allclose(end[:, 0], expected, rtol=1e-11)
+
+
+def test_a_tail_without_a_source_is_refused():
+    with pytest.raises(ValueError, match="a tail without a source"):
+        Elimination(1, StepRates({}, [TailRates(np.ones(1))]), [chain(2, (1, 2), {}, 0)])
 
 
 def test_entries_of_a_tail_beside_it_are_refused():

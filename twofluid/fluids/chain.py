@@ -20,8 +20,8 @@ class Chain:
 
     Attributes
     ----------
-    field : str
-        What moves: its moments are named FIELD_MOMENT.
+    name : str
+        What its moments are named after: NAME_MOMENT.
     last : int
         Highest moment followed [unitless].
     layer : tuple of float
@@ -30,7 +30,7 @@ class Chain:
         What the third moment is fed by, beside the quadrupole, and its weight.
     """
 
-    field: str
+    name: str
     last: int
     layer: tuple[float, float]
     sources: Mapping[str, float] = field(default_factory=dict)
@@ -38,7 +38,7 @@ class Chain:
     @property
     def members(self) -> tuple[str, ...]:
         """Names of the moments beyond the quadrupole."""
-        return tuple(f"{self.field}_{moment}" for moment in range(QUADRUPOLE + 1, self.last + 1))
+        return tuple(f"{self.name}_{moment}" for moment in range(QUADRUPOLE + 1, self.last + 1))
 
     def tail(self, row: Mapping[str, int]) -> Tail:
         """Write the chain down for the solver (Ma & Bertschinger 1995, eqs 49, 51, 58, 63 and 64, high moments).
@@ -53,7 +53,7 @@ class Chain:
         down, up = moments / (2 * moments + 1), -(moments + 1) / (2 * moments + 1)
         matrix = np.diag(-strength * (moments / self.last) ** steepness) + np.diag(down[1:], -1) + np.diag(up[:-1], 1)
         first = (moments == moments[0]).astype(float)
-        quadrupole = f"{self.field}_{QUADRUPOLE}"
+        quadrupole = f"{self.name}_{QUADRUPOLE}"
         return Tail(
             rows=tuple(row[name] for name in self.members),
             matrix=matrix,

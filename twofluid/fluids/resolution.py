@@ -69,50 +69,49 @@ class Accuracy:
     baryon_ruled: Resolution
 
 
-def _resolution(steps: tuple, exponent: float, felt: tuple, chains: tuple, swing: float) -> Resolution:
-    outside, smooth, free, change, phase = steps
-    felt_phase, fading, stretch = felt
-    return Resolution(
-        Stepping(
-            outside_step=outside,
-            smooth_step=smooth,
-            free_step=free,
-            scattering_change=change,
-            phase_step=phase,
-            diffusion_exponent=exponent,
-            felt_phase=felt_phase,
-            gas_swing=swing,
-            radiation_stretch=stretch,
-            felt_fading=fading,
-        ),
-        ChainLengths(*chains),
-    )
+def _resolution(chains: tuple[int, ...], **stepping: float) -> Resolution:
+    """Chains: photon, polarization, neutrino, neutrino with mass, and momenta of the last."""
+    return Resolution(Stepping(**stepping), ChainLengths(*chains))
 
 
-#: Settings by accuracy. Steps are, in ln a: far outside the horizon, inside it, inside it in free gas; then the
-#: change of the scattering rate and the phase of an oscillation. Felt: phase up to which an oscillation is felt; power
-#: with which that fades and stretch of smooth steps, both deep in the radiation era. Chains: photon, polarization,
-#: neutrino, neutrino with mass, and momenta of the last. Swing: of quickly heated gas, over the dark matter's contrast,
-#: that may go unresolved.
+#: Settings by accuracy: chain lengths, and what `Stepping` says.
 ACCURACIES = {
     "draft": Accuracy(
         promise=3e-3,
-        dark_ruled=_resolution((0.8, 0.3, 0.4, 0.8, 2.0), 15.0, (120.0, 0.7, 0.5), (7, 7, 9, 8, 4), swing=1e-2),
-        baryon_ruled=_resolution((0.4, 0.15, 0.2, 0.8, 1.0), 25.0, (200.0, 0.0, 0.0), (16, 16, 18, 14, 4), swing=1e-2),
+        dark_ruled=_resolution(
+            (7, 7, 9, 8, 4), outside_step=0.8, smooth_step=0.3, free_step=0.4, scattering_change=0.8, phase_step=2.0,
+            diffusion_exponent=15.0, felt_phase=120.0, felt_fading=0.7, radiation_stretch=0.5, gas_swing=1e-2,
+        ),
+        baryon_ruled=_resolution(
+            (16, 16, 18, 14, 4), outside_step=0.4, smooth_step=0.15, free_step=0.2, scattering_change=0.8,
+            phase_step=1.0, diffusion_exponent=25.0, felt_phase=200.0, gas_swing=1e-2,
+        ),
     ),
     "standard": Accuracy(
         promise=3e-4,
-        dark_ruled=_resolution((0.5, 0.2, 0.4, 0.4, 1.2), 20.0, (150.0, 0.7, 1.5), (10, 10, 12, 12, 5), swing=2e-3),
-        baryon_ruled=_resolution((0.2, 0.05, 0.1, 0.5, 0.6), 30.0, (300.0, 0.0, 0.0), (22, 22, 24, 18, 5), swing=2e-3),
+        dark_ruled=_resolution(
+            (10, 10, 12, 12, 5), outside_step=0.5, smooth_step=0.2, free_step=0.4, scattering_change=0.4,
+            phase_step=1.2, diffusion_exponent=20.0, felt_phase=150.0, felt_fading=0.7, radiation_stretch=1.5,
+            gas_swing=2e-3,
+        ),
+        baryon_ruled=_resolution(
+            (22, 22, 24, 18, 5), outside_step=0.2, smooth_step=0.05, free_step=0.1, scattering_change=0.5,
+            phase_step=0.6, diffusion_exponent=30.0, felt_phase=300.0, gas_swing=2e-3,
+        ),
     ),
     "reference": Accuracy(
         promise=5e-5,
-        dark_ruled=_resolution((0.2, 0.08, 0.1, 0.2, 0.6), 30.0, (300.0, 0.15, 0.3), (16, 16, 28, 16, 7), swing=7e-4),
+        dark_ruled=_resolution(
+            (16, 16, 28, 16, 7), outside_step=0.2, smooth_step=0.08, free_step=0.1, scattering_change=0.2,
+            phase_step=0.6, diffusion_exponent=30.0, felt_phase=300.0, felt_fading=0.15, radiation_stretch=0.3,
+            gas_swing=7e-4,
+        ),
         baryon_ruled=_resolution(
-            (0.1, 0.03, 0.05, 0.25, 0.35), 40.0, (500.0, 0.0, 0.0), (28, 28, 36, 26, 7), swing=7e-4
+            (28, 28, 36, 26, 7), outside_step=0.1, smooth_step=0.03, free_step=0.05, scattering_change=0.25,
+            phase_step=0.35, diffusion_exponent=40.0, felt_phase=500.0, gas_swing=7e-4,
         ),
     ),
-}
+}  # fmt: skip
 
 
 def resolution_for(universe: Universe, accuracy: str = "standard") -> Resolution:

@@ -158,7 +158,8 @@ def step_density(
         rise = np.maximum(universe.gas_temperature_slope(a), 0.0)
         smooth = smooth + per_expansion * (rise / stepping.scattering_change + (a > universe.heated_from) / quiet)
     matters, will_be_seen = oscillation_matters(universe, wavenumber, time, stepping, asked)
-    squares = _felt(now, wavenumber, time, stepping, will_be_seen)  # of all demands, which add up like that
+    # demands add up by their squares
+    squares = _oscillation_squared(now, wavenumber, time, stepping, will_be_seen)
     squares *= matters
     squares += smooth**2
     if universe.heated_from:
@@ -170,7 +171,7 @@ def step_density(
     return np.where(outside, per_expansion / stepping.outside_step, np.sqrt(squares, out=squares))
 
 
-def _felt(
+def _oscillation_squared(
     now: Conditions, wavenumber: np.ndarray, time: np.ndarray, stepping: Stepping, will_be_seen: np.ndarray
 ) -> np.ndarray:
     """Give the square of the steps per unit of log conformal time for an acoustic oscillation, shape (mode, node)."""
@@ -231,7 +232,7 @@ def _longest_dark_phase(universe: Universe, wavenumber: np.ndarray, stepping: St
 
 
 def _depth(now: Conditions) -> np.ndarray:
-    """Tell how deep in the radiation era a time is, from 0 to 1."""
+    """Tell how deep in the radiation era a time is, from 0 to 1; all but baryons and dark matter count as radiation."""
     matter = (now.gravity_baryon + now.gravity_dark) / (3.0 * now.hubble_rate**2)
     return np.clip(1.0 - matter, 0.0, 1.0) ** DEEP
 

@@ -17,11 +17,10 @@ it is given. A block that is the same in all lanes may have one lane only.
 
 from collections.abc import Sequence
 from enum import Enum
-from functools import lru_cache
 
 import numpy as np
 
-from .collocation import INVERSE_WEIGHTS, STAGES, STATE_LOAD
+from .collocation import INVERSE_WEIGHTS, LAST, STAGES, STATE_LOAD
 
 
 class Kind(Enum):
@@ -98,21 +97,11 @@ def start_alone(inverse: np.ndarray, kinds: Sequence[Kind], out: np.ndarray) -> 
 
 def last_row(inverse: np.ndarray, kinds: Sequence[Kind], out: np.ndarray) -> None:
     """Give what each stage adds to the last one: a column."""
-    out[...] = inverse[STAGES - 1]
+    out[...] = inverse[LAST]
 
 
-def invert_pivot(rate: np.ndarray, kinds: Sequence[Kind], out: np.ndarray) -> None:
-    """Invert the pivot ``W - rate`` by cofactors."""
-    _adjugate(out.shape[-1]).invert(rate, out)
-
-
-@lru_cache(maxsize=4)
-def _adjugate(lanes: int) -> "_Adjugate":
-    return _Adjugate(lanes)
-
-
-class _Adjugate:
-    """Inverse by cofactors, with room for one number of lanes."""
+class PivotInverse:
+    """Inverse of pivots ``W - rate`` by cofactors, with room for one number of lanes."""
 
     def __init__(self, lanes: int):
         self._weights = np.repeat(INVERSE_WEIGHTS[:, :, None], lanes, axis=2)  # quicker than to stretch it every time
@@ -122,7 +111,7 @@ class _Adjugate:
         self._slices = [(pivot[a, 1:4], pivot[b, 2:5], pivot[a, 2:5], pivot[b, 1:4]) for a, b in pairs]
         self._product, self._determinant = np.empty((STAGES, lanes)), np.empty(lanes)
 
-    def invert(self, rate: np.ndarray, out: np.ndarray) -> None:
+    def __call__(self, rate: np.ndarray, kinds: Sequence[Kind], out: np.ndarray) -> None:
         """Invert ``W - rate``, the rate of any kind."""
         core, product, determinant = self._core, self._product, self._determinant
         if rate.ndim == 3:

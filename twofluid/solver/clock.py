@@ -1,9 +1,8 @@
 """The clock: when each mode takes its steps.
 
 Every mode has its own clock, laid out before the integration from a density of steps (how many
-steps the solution wants per unit of log time). All modes are then advanced in lockstep; a mode
-with fewer steps than the others ends with steps of zero length, which leave it as it is, so that
-its result never depends on its companions.
+steps the solution wants per unit of log time). All modes are then advanced in lockstep; the clock of
+a mode with fewer steps than others ends with steps of zero length, which leave it as it is.
 """
 
 from dataclasses import dataclass

@@ -12,6 +12,7 @@ table 5.6 (from memory; the tests verify nodes, weights and order on their own).
 import numpy as np
 
 STAGES = 3
+LAST = STAGES - 1  # the stage that is the new state
 
 _ROOT6 = np.sqrt(6.0)
 

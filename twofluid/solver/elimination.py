@@ -18,11 +18,11 @@ import numpy as np
 
 from . import blocks
 from .blocks import DIAGONAL, FULL, Kind
-from .collocation import STAGES, WEIGHTS
+from .collocation import LAST, WEIGHTS
 from .program import Program, Symbol
 from .substitution import Factors, Group, Leaves, State
 from .system import Entry, StepRates, Tail
-from .tails import families
+from .tails import Family, families
 
 
 @dataclass(frozen=True)
@@ -83,7 +83,7 @@ class Elimination:
     Raises
     ------
     ValueError
-        If an entry belongs to a tail, or the eigenvectors of a tail are too nearly parallel.
+        If an entry belongs to a tail, a tail has no source, or its eigenvectors are too nearly parallel.
 
     Attributes
     ----------
@@ -101,6 +101,8 @@ class Elimination:
         self.families = families(tails, sample.tails)
         if beyond := [entry for entry in sample.entries if max(entry) >= count]:
             raise ValueError(f"entries {beyond} belong to tails, whose rates are told by `Tail` and `TailRates`")
+        if not all(tail.sources for tail in tails):
+            raise ValueError("a tail without a source is no tail")
         work = {entry: program.input(entry, rate) for entry, rate in sample.entries.items()}
         self._touched: set[int] = set()
         for number, family in enumerate(self.families):
@@ -115,7 +117,7 @@ class Elimination:
         """Give the kind of block a symbol of a pivot stands for."""
         return self.program.kind(symbol)
 
-    def _attach(self, number: int, family, work: dict[Entry, Symbol]) -> None:
+    def _attach(self, number: int, family: Family, work: dict[Entry, Symbol]) -> None:
         """Add what the tails of one kind do to their sinks once they are eliminated."""
         program = self.program
         family.prepare(1)
@@ -148,7 +150,7 @@ class Elimination:
     def _gather(self, pivots: Sequence[Pivot]) -> Leaves:
         """Put the leaves together, coupling by coupling."""
         program = self.program
-        full_weight = program.constant("quadrature", WEIGHTS[STAGES - 1][:, None])
+        full_weight = program.constant("quadrature", WEIGHTS[LAST][:, None])
         shares, feeds, alone = [], [], {}
         for pivot in pivots:
             free = pivot.inverse == self._free  # then a unit of old state stays what it is
@@ -182,7 +184,7 @@ class Elimination:
     def read(self, state: State, rows: np.ndarray) -> np.ndarray:
         """Read unknowns off a parted state, shape (row, mode)."""
         core, *coordinates = state
-        if rows.max() < self._count:
+        if np.all(rows < self._count):
             return core[rows]
         found = np.empty((len(rows), core.shape[1]))
         found[rows < self._count] = core[rows[rows < self._count]]
@@ -191,22 +193,21 @@ class Elimination:
                 found[place] = values
         return found
 
-    def factor(self, rates: StepRates, steps: int, modes: int) -> Factors:
+    def factor(self, rates: StepRates, lanes: int, steps: int, modes: int) -> Factors:
         """Eliminate all unknowns for every step and mode of a stretch.
 
         Parameters
         ----------
         rates : StepRates
             The lanes are steps times modes, the mode running fastest; any further lanes are left alone.
-        steps, modes : int
-            Number of steps, and of modes, among the lanes.
+        lanes, steps, modes : int
+            Number of lanes, and of steps and of modes among them.
 
         Returns
         -------
         Factors
             Valid until the next stretch is factored.
         """
-        lanes = next(iter(rates.entries.values())).shape[-1]
         inputs = dict(rates.entries)
         for number, family in enumerate(self.families):
             family.prepare(lanes)
@@ -225,7 +226,8 @@ def _groups(pivots: Sequence[Pivot], program: Program) -> list[Group]:
     """Put neighbours together that can be substituted together."""
     members: list[list[Pivot]] = []
     for pivot in pivots:
-        if members and all(member.goes_with(pivot, program.kind) for member in members[-1]):
+        follows = members and members[-1][-1].index + 1 == pivot.index  # a group is one piece of the state
+        if follows and all(member.goes_with(pivot, program.kind) for member in members[-1]):
             members[-1].append(pivot)
         else:
             members.append([pivot])

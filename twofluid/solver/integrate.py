@@ -4,7 +4,7 @@ Modes are sorted by the length of their clocks, so that those still on their way
 arrive, fewer and fewer march.
 """
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -44,8 +44,8 @@ class Course:
     observed : array, shape (unknown, boundary, mode)
         Observed unknowns at every step boundary, in the order asked for.
     counts : dict
-        Counters: "steps" summed over modes (padding excluded), "lanes" (padding included),
-        "factorizations" and "rate_evaluations" of stretches.
+        Counters: "steps" of non-zero length summed over modes, "lanes" that were substituted (steps of no length
+        included), "factorizations" and "rate_evaluations" of stretches.
     """
 
     observed: np.ndarray
@@ -80,37 +80,28 @@ def integrate(
     Raises
     ------
     SolverFailure
-        If a state is no longer finite; names mode and time.
+        If an observed unknown is no longer finite; names mode and time.
     """
     sample = system.step_rates(np.zeros(1, int), np.full((STAGES, 1), times[0, 0]), np.zeros(1))
     count = len(system.unknowns) - sum(len(tail.rows) for tail in system.tails)
     elimination = Elimination(count, sample, system.tails)
-    rows = np.array([system.unknowns.index(name) for name in observe])
-    length = (np.diff(times, axis=0) > 0.0).sum(axis=0)
+    rows = np.array([system.unknowns.index(name) for name in observe], dtype=int)
+    moves = np.diff(times, axis=0) > 0.0
+    length = (moves * np.arange(1, len(times))[:, None]).max(axis=0, initial=0)  # up to the last one that moves
     order = np.argsort(-length, kind="stable")
     batches = [order[first : first + MODES_PER_BATCH] for first in range(0, len(order), MODES_PER_BATCH)]
     plans = [_stretches(length[modes]) for modes in batches]
     total = int(sum(steps * active for plan in plans for _, steps, active in plan))
     stretches = sum(len(plan) for plan in plans)
-    counts = {"steps": int(length.sum()), "lanes": total, "factorizations": stretches, "rate_evaluations": stretches}
+    counts = {"steps": int(moves.sum()), "lanes": total, "factorizations": stretches, "rate_evaluations": stretches}
     observed, done = np.empty((len(rows), *times.shape)), 0
     for modes, plan in zip(batches, plans, strict=True):
-        lanes = max((steps * active for _, steps, active in plan), default=0)
-        state = elimination.split(start[:, modes])
-        record = np.empty((len(times), len(rows), len(modes)))
-        record[0] = elimination.read(state, rows)
-        for first, steps, active in plan:
-            boundaries = times[first : first + steps + 1, modes[:active]]
-            state = [part[..., :active] for part in state]
-            here = record[first + 1 : first + 1 + steps]
-            here[:, :, active:] = record[first, :, active:]  # those that have arrived stay
-            state = _march(system, elimination, modes[:active], boundaries, lanes, state, rows, here[:, :, :active])
-            done += steps * active
+        march = _March(system, elimination, modes, plan, rows)
+        for lanes in march.follow(times[:, modes], start[:, modes]):
+            done += lanes
             if progress is not None:
                 progress(done, total)
-        arrived = int(length[modes[0]])
-        record[arrived + 1 :] = record[arrived]
-        observed[:, :, modes] = record.transpose(1, 0, 2)
+        observed[:, :, modes] = march.record.transpose(1, 0, 2)
     return Course(observed, counts)
 
 
@@ -127,22 +118,53 @@ def _stretches(length: np.ndarray) -> list[tuple[int, int, int]]:
     return plan
 
 
-def _march(system, elimination, modes, boundaries, lanes, state, rows, record) -> State:
-    """Advance modes over a stretch of steps; record the observed rows; return the new state."""
-    step = np.diff(boundaries, axis=0)
-    stage_times = boundaries[:-1] + NODES[:, None, None] * step
-    steps, active = step.shape
-    place = np.minimum(np.arange(lanes), step.size - 1)  # lanes beyond repeat the last one
-    length = step.ravel()[place]
-    rates = system.step_rates(np.tile(modes, steps)[place], stage_times.reshape(STAGES, -1)[:, place], length)
-    factors = elimination.factor(rates, steps, active)
-    for index in range(steps):
-        state = factors.advance(state, index)
-        record[index] = elimination.read(state, rows)
-    finite = np.isfinite(record).all(axis=1)
-    if not finite.all():
-        failed, mode = np.argwhere(~finite)[0]
-        raise SolverFailure(
-            "the solution is no longer finite", mode=int(modes[mode]), time=float(boundaries[failed + 1, mode])
+class _March:
+    """The march of one batch of modes.
+
+    Attributes
+    ----------
+    record : array, shape (boundary, row, mode)
+        Observed unknowns.
+    """
+
+    def __init__(self, system: LinearSystem, elimination: Elimination, modes: np.ndarray, plan: list, rows: np.ndarray):
+        self._system, self._elimination, self._rows = system, elimination, rows
+        self._modes, self._plan = modes, plan
+        self._lanes = max((steps * active for _, steps, active in plan), default=0)
+
+    def follow(self, times: np.ndarray, start: np.ndarray) -> Iterator[int]:
+        """March from the first boundary to the last; tell the lanes of every stretch."""
+        state = self._elimination.split(start)
+        self.record = record = np.empty((len(times), len(self._rows), len(self._modes)))
+        record[0] = self._elimination.read(state, self._rows)
+        arrived = 0
+        for first, steps, active in self._plan:
+            arrived = first + steps
+            here = record[first + 1 : arrived + 1]
+            here[:, :, active:] = record[first, :, active:]  # those that have arrived stay
+            state = [part[..., :active] for part in state]
+            state = self._stretch(times[first : arrived + 1, :active], state, here[:, :, :active])
+            yield steps * active
+        record[arrived + 1 :] = record[arrived]
+
+    def _stretch(self, boundaries: np.ndarray, state: State, record: np.ndarray) -> State:
+        """Advance modes over a stretch of steps; record the observed rows; return the new state."""
+        step = np.diff(boundaries, axis=0)
+        stage_times = boundaries[:-1] + NODES[:, None, None] * step
+        steps, active = step.shape
+        modes = self._modes[:active]
+        place = np.minimum(np.arange(self._lanes), step.size - 1)  # lanes beyond repeat the last one
+        rates = self._system.step_rates(
+            np.tile(modes, steps)[place], stage_times.reshape(STAGES, -1)[:, place], step.ravel()[place]
         )
-    return state
+        factors = self._elimination.factor(rates, self._lanes, steps, active)
+        for index in range(steps):
+            state = factors.advance(state, index)
+            record[index] = self._elimination.read(state, self._rows)
+        finite = np.isfinite(record).all(axis=1)
+        if not finite.all():
+            failed, mode = np.argwhere(~finite)[0]
+            raise SolverFailure(
+                "the solution is no longer finite", mode=int(modes[mode]), time=float(boundaries[failed + 1, mode])
+            )
+        return state

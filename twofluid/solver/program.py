@@ -59,7 +59,7 @@ class Program:
 
     def inverse(self, rate: Symbol) -> Symbol:
         """Invert the pivot ``W - rate``."""
-        return self._record(("inverse", rate), blocks.invert_pivot, (rate,), FULL)
+        return self._record(("inverse", rate), blocks.PivotInverse, (rate,), FULL)
 
     def product(self, left: Symbol, right: Symbol) -> Symbol:
         """Multiply two blocks."""
@@ -116,38 +116,42 @@ class _Bound:
     def __init__(self, operations: Sequence[_Operation], wanted: frozenset[Symbol], lanes: int):
         self.lanes = lanes
         self.values: list[np.ndarray | None] = [None] * len(operations)
-        self._operations, self._wanted = operations, wanted
         self.calls, self._inputs = [], []
+        self._operations, self._wanted = operations, wanted
+        self._invert = blocks.PivotInverse(lanes)
         needed = _needed(operations, wanted)
-        computed = [symbol for symbol, op in enumerate(operations) if symbol in needed and op.call is not None]
-        last_use = {operand: symbol for symbol in computed for operand in operations[symbol].operands}
-        places = self._stacks(computed)
-        free: dict[Kind, list[np.ndarray]] = {}
-        for symbol, op in enumerate(operations):
-            if symbol not in needed:
-                continue
+        computed = [symbol for symbol in needed if operations[symbol].call is not None]
+        self._last_use = {operand: symbol for symbol in computed for operand in operations[symbol].operands}
+        self._places = self._stacks(computed)
+        self._free: dict[Kind, list[np.ndarray]] = {}
+        for symbol in needed:
+            op = operations[symbol]
             if op.call is None:
                 self._take(symbol, *op.operands)
-                continue
-            kinds = tuple(operations[o].kind for o in op.operands)
-            if op.is_stack:
-                self._fill(symbol, kinds, places)
-                continue
-            spent = [o for o in dict.fromkeys(op.operands) if last_use[o] == symbol and self._gives_way(o, places)]
-            in_place = [o for o in spent if op.call is blocks.add and operations[o].kind == op.kind]
-            if symbol in places:
-                stack, number = places[symbol]
-                out = self.values[stack][number]
-            elif in_place:
-                out = self.values[in_place[0]]
-                spent.remove(in_place[0])
+            elif op.is_stack:
+                self._fill(symbol)
             else:
-                room = free.get(op.kind)
-                out = room.pop() if room else op.kind.empty(lanes)
-            for o in spent:
-                free.setdefault(operations[o].kind, []).append(self.values[o])
-            self.values[symbol] = out
-            self.calls.append((op.call, op.operands, kinds, out))
+                self._compute(symbol)
+
+    def _compute(self, symbol: Symbol) -> None:
+        """Find the array for a result; note the call."""
+        op = self._operations[symbol]
+        spent = [o for o in dict.fromkeys(op.operands) if self._last_use[o] == symbol and self._gives_way(o)]
+        in_place = [o for o in spent if op.call is blocks.add and self._operations[o].kind == op.kind]
+        if symbol in self._places:
+            stack, number = self._places[symbol]
+            out = self.values[stack][number]
+        elif in_place:
+            out = self.values[in_place[0]]
+            spent.remove(in_place[0])
+        else:
+            room = self._free.get(op.kind)
+            out = room.pop() if room else op.kind.empty(self.lanes)
+        for o in spent:
+            self._free.setdefault(self._operations[o].kind, []).append(self.values[o])
+        self.values[symbol] = out
+        call = self._invert if op.call is blocks.PivotInverse else op.call
+        self.calls.append((call, op.operands, tuple(self._operations[o].kind for o in op.operands), out))
 
     def _stacks(self, computed: Sequence[Symbol]) -> dict[Symbol, tuple[Symbol, int]]:
         """Make room for all stacks; say which results are computed right there: in which stack, and where."""
@@ -169,16 +173,18 @@ class _Bound:
         else:
             self._inputs.append((symbol, source))
 
-    def _fill(self, symbol: Symbol, kinds: Sequence[Kind], places: Mapping[Symbol, tuple[Symbol, int]]) -> None:
+    def _fill(self, symbol: Symbol) -> None:
         """Copy what a stack lacks."""
         for number, part in enumerate(self._operations[symbol].operands):
-            if places.get(part) != (symbol, number):
-                self.calls.append((blocks.write, (part,), kinds[number : number + 1], self.values[symbol][number]))
+            if self._places.get(part) != (symbol, number):
+                kinds = (self._operations[part].kind,)
+                self.calls.append((blocks.write, (part,), kinds, self.values[symbol][number]))
 
-    def _gives_way(self, symbol: Symbol, places: Mapping[Symbol, tuple[Symbol, int]]) -> bool:
-        """Whether an array may be used again once its content is not needed."""
+    def _gives_way(self, symbol: Symbol) -> bool:
+        """Whether an array may be used again once its content is not needed, whatever the order of operations."""
         op = self._operations[symbol]
-        return op.call is not None and not op.is_stack and symbol not in places and symbol not in self._wanted
+        kept = op.is_stack or symbol in self._places or symbol in self._wanted
+        return op.call is not None and not kept
 
     def run(self, inputs: Mapping[Hashable, np.ndarray]) -> None:
         """Work through the operations with blocks from outside."""
@@ -189,10 +195,10 @@ class _Bound:
             call(*[values[operand] for operand in operands], kinds, out)
 
 
-def _needed(operations: Sequence[_Operation], wanted: frozenset[Symbol]) -> set[Symbol]:
-    """Find the operations that the results wanted rest on."""
+def _needed(operations: Sequence[_Operation], wanted: frozenset[Symbol]) -> list[Symbol]:
+    """Find the operations that the results wanted rest on, in order."""
     needed = set(wanted)
     for symbol in reversed(range(len(operations))):
         if symbol in needed and operations[symbol].call is not None:
             needed.update(operations[symbol].operands)
-    return needed
+    return sorted(needed)

@@ -10,11 +10,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from .collocation import STAGES, STATE_LOAD
+from .collocation import LAST, STAGES, STATE_LOAD
 from .program import Symbol
 from .tails import Family
 
-LAST = STAGES - 1
 State = list[np.ndarray]  # the unknowns outside of tails, then the coordinates of every family of tails
 
 
@@ -267,7 +266,7 @@ class _TailSubstitution:
             (_View(stages, [row for row, _ in source]), np.array([weight for _, weight in source])[:, None, None])
             for source in sources
         ]
-        self._weighted = any(np.any(weight != 1.0) for _, weight in self._sources)
+        self._plain = len(self._sources) == 1 and np.all(self._sources[0][1] == 1.0)
 
     def forward(self, own: np.ndarray, step: int) -> None:
         """Add what the old state of the tails does to the loads of their sinks."""
@@ -275,8 +274,9 @@ class _TailSubstitution:
 
     def backward(self, own: np.ndarray, step: int) -> np.ndarray:
         """Give their new state."""
-        driver = self._sources[0][0].read()
-        if self._weighted or len(self._sources) > 1:
+        if self._plain:
+            driver = self._sources[0][0].read()
+        else:
             driver = sum(weight * view.read() for view, weight in self._sources)
         turned = np.einsum("tcbqm,tbqm->tcqm", self._turn[step], own.reshape(self._coordinates))
         return turned.reshape(own.shape) + np.einsum("tpjm,tjm->tpm", self._feed[step], driver)

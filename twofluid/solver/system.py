@@ -9,7 +9,7 @@ import numpy as np
 Entry = tuple[int, int]
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Tail:
     """Unknowns that meet the others at one end and go among themselves by one constant matrix.
 
@@ -44,7 +44,7 @@ class Tail:
         return alike and len(self.sources) == len(other.sources)
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class TailRates:
     """Step times rate of a tail. Tails with the very same rates (the same object) cost hardly more than one.
 
@@ -58,7 +58,7 @@ class TailRates:
     damping: np.ndarray | float = 0.0
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class StepRates:
     """Step times rate of a system, a lane for every mode and step asked for.
 

@@ -17,12 +17,11 @@ from collections.abc import Iterator, Sequence
 
 import numpy as np
 
-from .collocation import INVERSE_WEIGHTS, STAGES, STATE_LOAD
+from .collocation import INVERSE_WEIGHTS, LAST, STAGES, STATE_LOAD
 from .system import Tail, TailRates
 
 MOST_ROUNDING = 1e10  # condition number of the eigenvectors, beyond which the members lose their digits
 _CYCLES = ((0, 1, 2), (1, 2, 0), (2, 0, 1))
-LAST = STAGES - 1
 
 
 class EigenTail:
@@ -235,11 +234,11 @@ class Family:
 
 
 def families(tails: Sequence[Tail], sample: Sequence[TailRates]) -> list[Family]:
-    """Put tails of one kind together."""
+    """Put tails of one kind together, those that act on one sink apart."""
     kinds: list[list[int]] = []
     for place, tail in enumerate(tails):
         for kind in kinds:
-            if tail.like(tails[kind[0]]):
+            if tail.like(tails[kind[0]]) and tail.sink not in [tails[other].sink for other in kind]:
                 kind.append(place)
                 break
         else:
