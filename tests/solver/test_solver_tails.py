@@ -141,9 +141,10 @@ def test_parallel_eigenvectors_are_refused():
         Elimination(1, StepRates({(0, 0): np.ones(1)}, [TailRates(np.ones(1))]), [tail])
 
 
-def test_unknowns_without_entries_that_tails_touch():
-    # Nothing but a tail, from the first of two unknowns to the second: neither is a leaf.
-    tail = chain(3, (2, 3, 4), {0: 1.0}, 1)
+@pytest.mark.parametrize(("source", "sink"), [(0, 1), (1, 0)])
+def test_unknowns_without_entries_that_tails_touch(source, sink):
+    # Nothing but a tail from one of two unknowns to the other: neither is a leaf.
+    tail = chain(3, (2, 3, 4), {source: 1.0}, sink)
     rates = StepRates({}, [TailRates(np.full(1, 0.7), np.full(1, 0.2))])
     elimination = Elimination(2, rates, [tail])
     assert not any(pivot.leaf for pivot in elimination.pivots)
@@ -151,7 +152,7 @@ def test_unknowns_without_entries_that_tails_touch():
     end = elimination.read(elimination.factor(rates, 1, 1, 1).advance(elimination.split(state), 0), np.arange(5))
     rate = np.zeros((5, 5))
     rate[2:, 2:] = 0.7 * tail.matrix - 0.2 * np.eye(3)
-    rate[2:, 0], rate[1, 2:] = 0.7 * tail.entrance, 0.7 * tail.exit
+    rate[2:, source], rate[sink, 2:] = 0.7 * tail.entrance, 0.7 * tail.exit
     matrix = np.kron(np.eye(5), INVERSE_WEIGHTS) - np.kron(rate, np.eye(3))
     expected = np.linalg.solve(matrix, np.kron(state[:, 0], STATE_LOAD)).reshape(5, 3)[:, -1]
     np.testing.assert_allclose(end[:, 0], expected, rtol=1e-11)
