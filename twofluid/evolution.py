@@ -81,6 +81,7 @@ def evolve_many(
     *,
     wavenumbers=None,
     redshifts=None,
+    universes: Sequence[Universe] | None = None,
     resolution: Resolution | None = None,
     progress: Progress | None = None,
 ) -> list[History]:
@@ -89,6 +90,8 @@ def evolve_many(
     Parameters
     ----------
     scenarios : sequence of Scenario
+    universes : sequence of Universe, optional
+        Their smooth universes, if they are there already.
     wavenumbers, redshifts, resolution, progress
         As in `evolve`, for all scenarios alike.
 
@@ -100,9 +103,12 @@ def evolve_many(
     Raises
     ------
     ValueError, UniverseError, SolverFailure
-        As `evolve`.
+        As `evolve`; ValueError also if there is not one universe for each scenario.
     """
-    universes = build_universes([scenario.cosmology for scenario in scenarios])
+    if universes is None:
+        universes = build_universes([scenario.cosmology for scenario in scenarios])
+    elif len(universes) != len(scenarios):
+        raise ValueError(f"{len(scenarios)} scenarios need as many universes, got {len(universes)}")
     requests = [
         _request(scenario, universe, wavenumbers, redshifts, resolution, named=len(scenarios) > 1)
         for scenario, universe in zip(scenarios, universes, strict=True)

@@ -17,10 +17,11 @@ from twofluid.fluids import KineticSystem, resolution_for, start_time
 from twofluid.scenario import Cosmology, Primordial, Sampling, Scenario
 from twofluid.solver import Elimination, blocks, rate_matrix
 from twofluid.solver.blocks import FULL
-from twofluid.universe import Universe
+from twofluid.universe import Universe, build_universes
 
 REPEATS = 5
 COSMOLOGY = Cosmology(67.5, 0.0223, 0.1195)  # Saltmarsh
+MANY = np.geomspace(1e-3, 1e3, 64)  # wavenumbers of each of many universes [1/Mpc]
 LONGEST_GENERAL_RUN = 120.0  # [s] beyond which a general solver is given up
 
 
@@ -118,15 +119,27 @@ def many_universes():
     """Print what stacking universes costs."""
     cosmologies = [Cosmology(67.5, 0.0223 * (1 + 0.001 * n), 0.1195 * (1 - 0.0005 * n)) for n in range(200)]
     requests = [scenario(cosmology) for cosmology in cosmologies]
-    wavenumbers = np.geomspace(1e-3, 1e3, 64)
-    several = best(lambda: evolve_many(requests[:8], wavenumbers=wavenumbers, redshifts=[0.0]), 3)
-    universes = 8 * best(lambda: Universe(COSMOLOGY).conditions(1.0), 3)
-    one = best(lambda: evolve(requests[0], wavenumbers=np.geomspace(1e-3, 1e3, 512), redshifts=[0.0]), 3)
-    print(f"\n8 universes of 64 modes over one of 512: {several / one:.2f} (with 8 universes built one by one it would")
-    print(f"be at least {(one + universes * 7 / 8) / one:.2f})")
+    eight = build_universes(cosmologies[:8])
+    print("\n| eight universes of 64 modes over one of 512 | |\n| --- | --- |")
+    for label, one, many in (("universes there", eight[0], eight), ("universes built as well", None, None)):
+        several = best(
+            lambda many=many: evolve_many(requests[:8], wavenumbers=MANY, redshifts=[0.0], universes=many), REPEATS
+        )
+        single = best(
+            lambda one=one: evolve(requests[0], wavenumbers=np.geomspace(1e-3, 1e3, 512), redshifts=[0.0], universe=one)
+        )
+        print(f"| {label} | {several / single:.2f} |")
+    alone = best(lambda: complete(Universe(COSMOLOGY)))
+    together = best(lambda: [complete(universe) for universe in build_universes(cosmologies)], 1) / len(cosmologies)
+    print(f"\na universe with landmarks and tables: {1e3 * alone:.0f} ms, {1e3 * together:.0f} ms each of 200")
     start = time.process_time()
-    evolve_many(requests, wavenumbers=wavenumbers, redshifts=[0.0])
+    evolve_many(requests, wavenumbers=MANY, redshifts=[0.0])
     print(f"200 universes of 64 modes: {time.process_time() - start:.1f} s")
+
+
+def complete(universe):
+    """Work out landmarks and tables of a universe."""
+    return universe.landmarks, universe.conditions(1.0)
 
 
 def operations(elimination, lanes):

@@ -7,7 +7,7 @@ import numpy as np
 import pytest
 from brute_force import DELTA_BARYON, DELTA_DARK, DELTA_GAS_TEMPERATURE, REDSHIFTS, WAVENUMBERS
 
-from twofluid import evolve
+from twofluid import evolve, evolve_many
 from twofluid.fluids import ChainLengths, Resolution, Stepping
 from twofluid.scenario import Cosmology, Method, Neutrinos, Primordial, Sampling, Scenario
 
@@ -124,6 +124,19 @@ def test_results_do_not_depend_on_companions():
         alone = evolve(scenario(), wavenumbers=wavenumbers[mode], redshifts=[1000.0, 10.0])
         for name in ("delta_dark", "delta_baryon", "theta_baryon"):
             np.testing.assert_allclose(getattr(alone, name)[0], getattr(together, name)[mode], rtol=1e-9)
+
+
+def test_many_universes_in_one_sweep_are_what_each_is_alone():
+    asked = [scenario(), scenario(baryon_density=0.03), scenario(dark_matter_density=0.1)]
+    wavenumbers = np.geomspace(1e-3, 1e3, 9)
+    alone = [evolve(one, wavenumbers=wavenumbers, redshifts=[1000.0, 10.0]) for one in asked]
+    universes = [history.universe for history in alone]
+    for given in (None, universes):
+        together = evolve_many(asked, wavenumbers=wavenumbers, redshifts=[1000.0, 10.0], universes=given)
+        for one, other in zip(alone, together, strict=True):
+            np.testing.assert_allclose(other.delta_baryon, one.delta_baryon, rtol=1e-8)
+    with pytest.raises(ValueError, match="3 scenarios need as many universes, got 2"):
+        evolve_many(asked, wavenumbers=wavenumbers, universes=universes[:2])
 
 
 def test_results_do_not_depend_on_other_threads():

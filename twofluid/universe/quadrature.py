@@ -2,7 +2,7 @@
 
 import numpy as np
 
-_POINTS = 10  # Gauss-Legendre points a panel
+_POINTS = 6  # Gauss-Legendre points a panel
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(_POINTS)
 _PARTS = 64  # into which a bracket is divided at once; all their ends are looked at together
 _DIVISIONS = 10  # of one bracket: below the spacing of double precision
@@ -21,7 +21,7 @@ class RunningIntegral:
     start, stop : float
         The range.
     panels : int
-        Number of equal panels; each is integrated with 10 Gauss-Legendre points.
+        Number of equal panels; each is integrated with 6 Gauss-Legendre points.
     initial : float
         Value of the integral at `start`.
 
