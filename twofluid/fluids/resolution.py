@@ -90,8 +90,8 @@ ACCURACIES = {
     "standard": Accuracy(
         promise=3e-4,
         dark_ruled=_resolution(
-            (10, 10, 12, 12, 5), outside_step=0.5, smooth_step=0.2, free_step=0.4, scattering_change=0.4,
-            phase_step=1.2, diffusion_exponent=20.0, felt_phase=150.0, felt_fading=0.7, radiation_stretch=1.5,
+            (10, 10, 12, 12, 5), outside_step=0.45, smooth_step=0.2, free_step=0.4, scattering_change=0.4,
+            phase_step=1.15, diffusion_exponent=20.0, felt_phase=150.0, felt_fading=0.75, radiation_stretch=1.5,
             gas_swing=2e-3,
         ),
         baryon_ruled=_resolution(
