@@ -96,7 +96,7 @@ def test_long_waves_need_the_hold_on_the_constraint(monkeypatch):
     held = reference("baryon")
     monkeypatch.setitem(twofluid.evolution.MIXTURE_CLOSURES, "kinetic", KineticSystem)
     monkeypatch.setattr("twofluid.fluids.stepping.MIXTURES_OUTSIDE", 1.0)
-    assert misfit(alone("baryon"), held) > 1e-3
+    assert misfit(alone("baryon"), held) > 3e-4  # held to it 1e-5, see above
 
 
 def test_compensated_mode_is_the_difference_of_the_other_two():
