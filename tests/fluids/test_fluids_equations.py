@@ -215,10 +215,10 @@ def test_oscillation_is_resolved_up_to_a_redshift_asked_for():
 
 
 def test_steps_a_mode_takes_are_bounded():
-    # Cost is guarded by counts: measured 180 at the most (k = 1), 112 on average for this range in a standard universe.
+    # Cost is guarded by counts: measured 186 at the most (k = 0.6), 99 on average for this range in a standard universe.
     _, _, plan = laid_out(cosmology(), np.geomspace(1e-4, 1e4, 60))
     assert plan.steps.max() <= 190
-    assert plan.steps.mean() <= 120
+    assert plan.steps.mean() <= 105
     smallest, acoustic = (laid_out(cosmology(), k)[2].steps[0] for k in (1e4, 0.1))
     assert smallest <= 1.2 * acoustic  # short waves are born early, in steps that are long for that
 
