@@ -215,7 +215,7 @@ def test_oscillation_is_resolved_up_to_a_redshift_asked_for():
 
 
 def test_steps_a_mode_takes_are_bounded():
-    # Cost is guarded by counts: measured 186 at the most (k = 0.6), 99 on average for this range in a standard universe.
+    # Cost is guarded by counts: measured 186 at the most (k = 0.6), 99 on average in a standard universe.
     _, _, plan = laid_out(cosmology(), np.geomspace(1e-4, 1e4, 60))
     assert plan.steps.max() <= 190
     assert plan.steps.mean() <= 105
