@@ -13,7 +13,7 @@ from ..universe import Universe
 from .kinetic import ChainLengths
 from .stepping import Stepping
 
-RULING_FRACTION = 0.25  # dark matter over dark matter and baryons, from which on dark matter rules (measured)
+RULING_FRACTION = 0.45  # dark matter over dark matter and baryons, from which on dark matter rules (measured)
 HOT_SHARE = 0.2  # of neutrinos with mass in all matter, from which on how they stream shapes everything (measured)
 MOMENTA_IF_HOT = 4  # times as many momenta then
 LONGER_CHAINS = 1.5  # chains of a refined resolution over those it refines
@@ -61,7 +61,7 @@ class Accuracy:
         Numerical error that is not exceeded: of the dark-matter contrast, relative, and of the ratio of
         baryon to dark-matter contrast, absolute [unitless]. Measured; see the guide for developers.
     dark_ruled, baryon_ruled : Resolution
-        Settings where dark matter is cold and more than a quarter of the matter, and where it is not.
+        Settings where dark matter is cold and more of the matter than `RULING_FRACTION`, and where it is not.
     """
 
     promise: float
@@ -91,7 +91,7 @@ ACCURACIES = {
         promise=3e-4,
         dark_ruled=_resolution(
             (10, 10, 12, 12, 5), outside_step=0.45, smooth_step=0.2, free_step=0.4, scattering_change=0.4,
-            phase_step=1.15, diffusion_exponent=20.0, felt_phase=150.0, felt_fading=0.75, radiation_stretch=1.5,
+            phase_step=1.15, diffusion_exponent=20.0, felt_phase=140.0, felt_fading=0.75, radiation_stretch=1.5,
             gas_swing=2e-3,
         ),
         baryon_ruled=_resolution(

@@ -6,7 +6,7 @@ matters. Once it no longer does it is left unresolved and the method damps it. I
 
 * diffusion has not yet damped it, (k / k_D)^2 < `Stepping.diffusion_exponent`, and
 * photons still push baryons, r kappa' > `Stepping.drag_ratio` times the expansion rate, and
-* its gravity is felt, k tau < `Stepping.felt_phase` / sqrt(dark-matter fraction), or diffusion
+* its gravity is felt, k tau < `Stepping.felt_phase` / (dark-matter fraction), or diffusion
   will not have damped it when the baryons are released, or at a later time that is asked for.
   Without dark matter there is no such bound.
 
@@ -273,5 +273,5 @@ def oscillation_matters(
     seen = alive[:, np.searchsorted(time, looks).clip(max=len(time) - 1)]
     will_be_seen = time <= np.max(np.where(seen, looks, 0.0), axis=1)[:, None]
     dark_fraction = now.gravity_dark[0] / (now.gravity_dark[0] + now.gravity_baryon[0])
-    felt = wavenumber[:, None] * np.sqrt(dark_fraction) < stepping.felt_phase / time
+    felt = wavenumber[:, None] * dark_fraction < stepping.felt_phase / time
     return alive & (felt | will_be_seen), will_be_seen
