@@ -19,10 +19,10 @@ class Certificate:
         Error of the dark-matter contrast (without dark matter: of the dust that carries the frame), relative to
         the larger of its value and a tenth of its largest so far [unitless].
     ratio_error : array, shape (mode, redshift)
-        Error of the ratio of baryon to dark-matter contrast, absolute; of a mixture of initial modes, whose ratio can
-        be any number, relative to the larger of it and 1; without dark matter of the baryon contrast, relative to
-        the larger of the baryons' and the dust's; where the dark matter has pressure, and the ratio poles, likewise
-        with the dark matter's [unitless].
+        Error of the ratio of baryon to dark-matter contrast, absolute, and relative where it is above 1 (then the
+        dark matter may be passing through zero); without dark matter of the baryon contrast, relative to the larger
+        of the baryons' and the dust's; where the dark matter has pressure, and the ratio poles, likewise with the
+        dark matter's [unitless].
     temperature_error : array, shape (mode, redshift)
         Error of the gas temperature contrast, relative to the larger of its value and the baryons' [unitless].
     constraint : float

@@ -14,7 +14,6 @@ from .certificate import Certificate
 from .evolution import evolve
 from .fluids import ACCURACIES, resolution_for
 from .history import History
-from .scenario import ADIABATIC
 
 BUDGET = 0.25  # of the cost of a run that its certificate may take
 FIXED_COST = 350_000  # what a run costs beside its steps (universe, tables, figures), in steps of one mode (measured)
@@ -68,17 +67,9 @@ def _spread(history: History) -> np.ndarray:
 
 
 def _compare(history: History, modes: np.ndarray, finer: History, promise: float) -> Certificate:
-    dark, baryon, warmth = (
-        getattr(history, name)[modes] for name in ("delta_dark", "delta_baryon", "delta_gas_temperature")
-    )
-    dark_size, baryon_size = np.abs(finer.delta_dark), np.abs(finer.delta_baryon)
-    dark_size = np.maximum(dark_size, SMALL_CONTRAST * _largest_so_far(dark_size, history.redshift))
-    dark_error = np.abs(dark - finer.delta_dark) / dark_size
-    if history.has_dark_matter and history.theta_dark is None:
-        ratio_size = dark_size if history.initial_modes == ADIABATIC else np.maximum(dark_size, baryon_size)
-        ratio_error = np.abs(baryon - dark * finer.delta_baryon / finer.delta_dark) / ratio_size
-    else:
-        ratio_error = np.abs(baryon - finer.delta_baryon) / np.maximum(baryon_size, dark_size)
+    dark_error, ratio_error = contrast_errors(history, finer, modes)
+    baryon_size = np.abs(finer.delta_baryon)
+    warmth = history.delta_gas_temperature[modes]
     warmth_size = np.maximum(np.abs(finer.delta_gas_temperature), baryon_size)
     return Certificate(
         wavenumber=history.wavenumber[modes],
@@ -89,6 +80,33 @@ def _compare(history: History, modes: np.ndarray, finer: History, promise: float
         constraint=float(np.max(history.constraint)),
         promise=promise,
     )
+
+
+def contrast_errors(history: History, finer: History, modes=slice(None)) -> tuple[np.ndarray, np.ndarray]:
+    """Errors of dark-matter contrast and ratio, as a much finer run shows them.
+
+    Parameters
+    ----------
+    history, finer : History
+        The finer one has the modes asked for only.
+    modes : index of the modes, optional
+
+    Returns
+    -------
+    two arrays, shape (mode, redshift)
+        Of the contrast, relative; of the ratio, absolute, and relative where the baryons' contrast is the larger one
+        [unitless]. Where the dark matter passes through zero its size is a share `SMALL_CONTRAST` of its largest so
+        far, in both. Without dark matter to compare with the second is that of the baryons' contrast.
+    """
+    dark, baryon = history.delta_dark[modes], history.delta_baryon[modes]
+    size = np.abs(finer.delta_dark)
+    size = np.maximum(size, SMALL_CONTRAST * _largest_so_far(size, history.redshift))
+    larger = np.maximum(size, np.abs(finer.delta_baryon))
+    dark_change, baryon_change = dark - finer.delta_dark, baryon - finer.delta_baryon
+    if history.has_dark_matter and history.theta_dark is None:
+        ratio = finer.delta_baryon / np.copysign(size, finer.delta_dark)
+        baryon_change = baryon_change - dark_change * ratio
+    return np.abs(dark_change) / size, np.abs(baryon_change) / larger
 
 
 def _largest_so_far(size: np.ndarray, redshift: np.ndarray) -> np.ndarray:

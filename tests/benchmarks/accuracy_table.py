@@ -12,7 +12,7 @@ import time
 import numpy as np
 
 from twofluid import evolve
-from twofluid.certification import SMALL_CONTRAST, _largest_so_far
+from twofluid.certification import contrast_errors
 from twofluid.fluids import ACCURACIES, resolution_for
 from twofluid.scenario import Cosmology, Neutrinos, Primordial, Sampling, Scenario
 from twofluid.universe import Universe
@@ -67,15 +67,7 @@ def survey(count):
 
 def errors(history, truth):
     """Return the largest errors of dark-matter contrast and of ratio, as the certificate measures them."""
-    dark = np.abs(truth.delta_dark)
-    dark = np.maximum(dark, SMALL_CONTRAST * _largest_so_far(dark, REDSHIFTS))
-    baryon = np.abs(truth.delta_baryon)
-    first = np.abs(history.delta_dark - truth.delta_dark) / dark
-    if history.has_dark_matter:
-        second = np.abs(history.delta_baryon - history.delta_dark * truth.delta_baryon / truth.delta_dark) / dark
-    else:
-        second = np.abs(history.delta_baryon - truth.delta_baryon) / np.maximum(baryon, dark)
-    return first.max(), second.max()
+    return tuple(float(error.max()) for error in contrast_errors(history, truth))
 
 
 def main():

@@ -1,6 +1,7 @@
 """The certificate: honest about the error, noticing what is broken, within its budget."""
 
 from dataclasses import fields, replace
+from types import SimpleNamespace
 
 import numpy as np
 import pytest
@@ -9,7 +10,7 @@ from test_evolve_accuracy import scenario
 
 from twofluid import SolverFailure, certify, evolve, load_history
 from twofluid.certificate import Certificate
-from twofluid.certification import BUDGET, FIXED_COST
+from twofluid.certification import BUDGET, FIXED_COST, contrast_errors
 from twofluid.fluids import ACCURACIES, ChainLengths, KineticSystem, Resolution, resolution_for
 from twofluid.products import lag_table
 from twofluid.scenario import Method
@@ -42,6 +43,22 @@ def test_promise_is_kept(accuracy):
     history = certify(run(accuracy, wavenumbers), modes=np.arange(0, 13, 2))
     assert history.certificate.kept
     assert history.certificate.promise == ACCURACIES[accuracy].promise
+
+
+def test_error_of_the_ratio_where_the_dark_matter_passes_through_zero():
+    # Contrasts of one mode at four redshifts, the dark matter negative at the third; worked out by hand.
+    def made_up(dark, baryon):
+        redshift = np.array([100.0, 50.0, 20.0, 10.0])
+        return SimpleNamespace(
+            delta_dark=np.array([dark]), delta_baryon=np.array([baryon]), redshift=redshift,
+            has_dark_matter=True, theta_dark=None,
+        )  # fmt: skip
+
+    finer = made_up([2.0, 1.0, -1e-3, 4.0], [1.0, 3.0, 5.0, 2.0])
+    dark, ratio = contrast_errors(made_up([2.0, 1.01, 0.001, 4.0], [1.002, 3.0, 5.0, 2.0]), finer)
+    np.testing.assert_allclose(dark[0], [0.0, 0.01, 0.002 / 0.2, 0.0], atol=1e-15)  # a tenth of the largest so far
+    # 0.002 / 2; 0.01 x 3 over the larger, 3; 0.002 x 5 / 0.2 over the larger, 5; nothing
+    np.testing.assert_allclose(ratio[0], [0.001, 0.01, 0.01, 0.0], atol=1e-15)
 
 
 def test_accuracies_differ_as_promised():

@@ -59,7 +59,7 @@ class Accuracy:
     ----------
     promise : float
         Numerical error that is not exceeded: of the dark-matter contrast, relative, and of the ratio of
-        baryon to dark-matter contrast, absolute [unitless]. Measured; see the guide for developers.
+        baryon to dark-matter contrast, absolute, relative above 1 [unitless]. Measured; see the guide for developers.
     dark_ruled, baryon_ruled : Resolution
         Settings where dark matter is cold and more of the matter than `RULING_FRACTION`, and where it is not.
     """
