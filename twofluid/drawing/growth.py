@@ -3,18 +3,16 @@
 from __future__ import annotations
 
 import numpy as np
-from matplotlib.figure import Figure
 from matplotlib.ticker import FixedLocator, NullLocator, StrMethodFormatter
 
 from twofluid.drawing.axes import all_empty, by_redshift, logarithmic_abscissa, with_room
 from twofluid.drawing.style import (
     LABEL_SIZE,
-    PAGE_WIDTH,
-    PANEL_HEIGHT,
     axes_or_new,
     draw_curves,
     journal_style,
     label_curves,
+    page,
 )
 from twofluid.quantities import QUANTITIES
 
@@ -32,7 +30,6 @@ WORDS = {
 }
 POLE = 5.0  # change of sign with a jump beyond this, from one wavenumber to the next: the contrast passes zero
 RATE_TICKS = (0.3, 0.5, 1, 2, 3, 5, 10)
-GUTTER = 0.04  # between the panels, over what their labels need [fraction of the figure]
 
 
 def draw_suppression(table, axes=None):
@@ -98,9 +95,7 @@ def growth_figure(tables):
     table = tables["growth"]
     rows = 1 if all_empty(table["rate_dark"]) else 2
     with journal_style():
-        figure = Figure(figsize=(PAGE_WIDTH, rows * PANEL_HEIGHT), layout="constrained")
-        figure.get_layout_engine().set(wspace=GUTTER, hspace=GUTTER)
-        panels = figure.subplots(rows, 2).ravel()
+        figure, panels = page(rows)
         draw_suppression(table, panels[0])
         for axes, fluid in zip(panels[1:], ("matter", "dark", "baryon"), strict=False):
             draw_growth_rate(table, fluid, axes)

@@ -3,23 +3,20 @@
 from __future__ import annotations
 
 import numpy as np
-from matplotlib.figure import Figure
 
 from twofluid.drawing.axes import by_redshift, logarithmic_abscissa, with_room
 from twofluid.drawing.style import (
-    PAGE_WIDTH,
-    PANEL_HEIGHT,
     REDSHIFT_TICKS,
     axes_or_new,
     axis_label,
     draw_curves,
     journal_style,
     label_curves,
+    page,
     redshift_axis,
 )
 
 RATIO_VIEW = (-1.0, 2.0)  # ratios beyond are cut off: dark matter passing through zero makes them infinite
-GUTTER = 0.04  # between the panels, over what their labels need [fraction of the figure]
 
 
 def draw_ratio(table, axes=None):
@@ -95,9 +92,7 @@ def lag_figure(tables):
     if np.all(np.ma.getmaskarray(np.ma.asarray(tables["lag"]["ratio"]))):
         return None
     with journal_style():
-        figure = Figure(figsize=(PAGE_WIDTH, PANEL_HEIGHT), layout="constrained")
-        figure.get_layout_engine().set(wspace=GUTTER)
-        left, right = figure.subplots(1, 2)
+        figure, (left, right) = page()
         draw_ratio(tables["lag"], left)
         draw_catchup(tables["catchup"], right)
     return figure

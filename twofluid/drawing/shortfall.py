@@ -3,23 +3,20 @@
 from __future__ import annotations
 
 import numpy as np
-from matplotlib.figure import Figure
 
 from twofluid.drawing.axes import FLUID_COLOURS, all_empty, logarithmic_abscissa, logarithmic_ordinate
 from twofluid.drawing.style import (
     LABEL_SIZE,
-    PAGE_WIDTH,
-    PANEL_HEIGHT,
     axes_or_new,
     draw_curves,
     journal_style,
     label_curves,
+    page,
 )
 from twofluid.products.matter import FLUID_NAMES
 from twofluid.quantities import QUANTITIES
 
 THRESHOLD = {"color": "0.35", "linewidth": 0.8, "linestyle": (0, (1, 2)), "zorder": 0}
-GUTTER = 0.04  # between the panels, over what their labels need [fraction of the figure]
 
 
 def draw_at_decoupling(table, axes=None):
@@ -77,9 +74,7 @@ def shortfall_figure(tables):
     """
     table = tables["shortfall"]
     with journal_style():
-        figure = Figure(figsize=(PAGE_WIDTH, PANEL_HEIGHT), layout="constrained")
-        figure.get_layout_engine().set(wspace=GUTTER)
-        left, right = figure.subplots(1, 2)
+        figure, (left, right) = page()
         draw_at_decoupling(table, left)
         draw_at_target(table, right)
     return figure

@@ -3,22 +3,18 @@
 from __future__ import annotations
 
 import numpy as np
-from matplotlib.figure import Figure
 
 from twofluid.drawing.axes import all_empty, by_redshift, logarithmic_abscissa, logarithmic_ordinate, with_room
 from twofluid.drawing.style import (
     COLUMN_WIDTH,
-    PAGE_WIDTH,
-    PANEL_HEIGHT,
     axes_or_new,
     axis_label,
     draw_curves,
     journal_style,
     label_curves,
+    page,
 )
 from twofluid.quantities import QUANTITIES
-
-GUTTER = 0.04  # between the panels, over what their labels need [fraction of the figure]
 
 
 def draw_spheres(table, axes=None):
@@ -93,10 +89,7 @@ def spheres_figure(tables):
         return None
     alone = all_empty(table["sigma_dark"])
     with journal_style():
-        size = (COLUMN_WIDTH if alone else PAGE_WIDTH, PANEL_HEIGHT)
-        figure = Figure(figsize=size, layout="constrained")
-        figure.get_layout_engine().set(wspace=GUTTER)
-        panels = figure.subplots(1, 1 if alone else 2, squeeze=False)[0]
+        figure, panels = page(columns=1, width=COLUMN_WIDTH) if alone else page()
         draw_spheres(table, panels[0])
         if not alone:
             draw_baryon_share(table, panels[1])

@@ -3,22 +3,19 @@
 from __future__ import annotations
 
 import numpy as np
-from matplotlib.figure import Figure
 
 from twofluid.drawing.axes import all_empty, by_redshift, logarithmic_abscissa, logarithmic_ordinate, with_room
 from twofluid.drawing.style import (
-    PAGE_WIDTH,
-    PANEL_HEIGHT,
     axes_or_new,
     axis_label,
     draw_curves,
     journal_style,
     label_curves,
+    page,
 )
 from twofluid.products.matter import FLUID_NAMES
 from twofluid.quantities import QUANTITIES
 
-GUTTER = 0.04  # between the panels, over what their labels need [fraction of the figure]
 ALL_PATCHES = "all patches"  # the average over velocities
 
 
@@ -104,9 +101,7 @@ def streaming_figure(tables):
         return None
     rows = 1 if all_empty(streaming["suppression_matter"]) else 2
     with journal_style():
-        figure = Figure(figsize=(PAGE_WIDTH, rows * PANEL_HEIGHT), layout="constrained")
-        figure.get_layout_engine().set(wspace=GUTTER, hspace=GUTTER)
-        panels = figure.subplots(rows, 2 if rows == 2 else 1, squeeze=False).ravel()
+        figure, panels = page(rows, columns=rows)
         draw_velocity_spectrum(spectrum, panels[0])
         if rows == 2:
             last = float(np.min(streaming["redshift"]))

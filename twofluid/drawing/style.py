@@ -16,6 +16,7 @@ STYLE_FILE = Path(__file__).with_name("journal.mplstyle")
 COLUMN_WIDTH = 3.5  # one journal column [inch]
 PAGE_WIDTH = 7.1  # both columns and the gap between [inch]
 PANEL_HEIGHT = 2.6  # one panel [inch]
+GUTTER = 0.04  # between panels, over what their labels need [fraction of the figure]
 
 DARK_MATTER = "#2c3e52"  # slate
 BARYONS = "#d08208"  # amber
@@ -73,6 +74,27 @@ def axes_or_new(axes):
     if axes is not None:
         return axes
     return Figure(figsize=(COLUMN_WIDTH, PANEL_HEIGHT), layout="constrained").add_subplot()
+
+
+def page(rows=1, columns=2, width=PAGE_WIDTH):
+    """Return a new figure of panels of equal size, and its axes.
+
+    Parameters
+    ----------
+    rows, columns : int, optional
+        Number of panels.
+    width : float, optional
+        Of the figure, two columns of a journal by default [inch].
+
+    Returns
+    -------
+    figure : matplotlib.figure.Figure
+    panels : array of matplotlib.axes.Axes, shape (row times column,)
+        Row by row.
+    """
+    figure = Figure(figsize=(width, rows * PANEL_HEIGHT), layout="constrained")
+    figure.get_layout_engine().set(wspace=GUTTER, hspace=GUTTER)
+    return figure, figure.subplots(rows, columns, squeeze=False).ravel()
 
 
 def axis_label(name, words=None):

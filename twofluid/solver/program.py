@@ -33,6 +33,7 @@ class _Operation:
 
     @property
     def is_stack(self) -> bool:
+        """Whether it puts other results into one array."""
         return bool(self.parts)
 
 
