@@ -144,15 +144,7 @@ def lag_lines(tables):
         return [f"  lag: {lag.meta['no_dark_matter']}"]
     modes = _few(len(catchup), SCALES_SHOWN)
     wavenumbers = [f"{catchup['wavenumber'][mode]:.4g}" for mode in modes]
-    redshifts = np.asarray(lag["redshift"]).reshape(len(catchup), -1)[0]
-    ratio = np.ma.asarray(lag["ratio"]).reshape(len(catchup), -1)
     unit = QUANTITIES["wavenumber"].unit
-    shown = _few(len(redshifts), COLUMNS_SHOWN)
-    ratio_rows = [("  ratio", *(f"z = {redshifts[i]:g}" for i in shown))]
-    ratio_rows += [
-        (f"    k = {k} {unit}", *(f"{ratio[mode, i]:.4f}" for i in shown))
-        for k, mode in zip(wavenumbers, modes, strict=True)
-    ]
     fractions = list(catchup.meta["fractions"].items())
     fractions = [fractions[i] for i in _few(len(fractions), COLUMNS_SHOWN)]
     catchup_rows = [("  caught up at redshift", *(f"{100 * fraction:g} %" for _, fraction in fractions))]
@@ -160,7 +152,7 @@ def lag_lines(tables):
         (f"    k = {k} {unit}", *(_redshift_text(catchup[name][mode]) for name, _ in fractions))
         for k, mode in zip(wavenumbers, modes, strict=True)
     ]
-    return aligned(ratio_rows) + aligned(catchup_rows)
+    return _grid(lag, "wavenumber", "ratio", "ratio", ".4f") + aligned(catchup_rows)
 
 
 def scales_lines(tables):

@@ -177,7 +177,7 @@ def operations(elimination, lanes):
             count += 15 + sum(18 if elimination.kind(block) == FULL else 6 for block in blocks_beside)
     for family in elimination.families:
         size = family.kind.size  # complex coordinates: polynomials, their quotients, and what is made of the state
-        count += len(family.blocks) * (220 + 160 * size) + len(family.tails) * 32 * size
+        count += len(family.factors.blocks) * (220 + 160 * size) + len(family.tails) * 32 * size
     return count
 
 

@@ -120,9 +120,8 @@ class Elimination:
     def _attach(self, number: int, family: Family, work: dict[Entry, Symbol]) -> None:
         """Add what the tails of one kind do to their sinks once they are eliminated."""
         program = self.program
-        family.prepare(1)
         for tail, place in zip(family.tails, family.set_of, strict=True):
-            block = program.input(("tail", number, place), family.blocks[place])
+            block = program.input(("tail", number, place), family.factors.blocks[place])
             for source, weight in tail.sources.items():
                 entry, weighted = (tail.sink, source), program.scaled(block, weight)
                 work[entry] = program.sum(work[entry], weighted) if entry in work else weighted
@@ -210,9 +209,8 @@ class Elimination:
         """
         inputs = dict(rates.entries)
         for number, family in enumerate(self.families):
-            family.prepare(lanes)
-            family.factor(rates.tails)
-            inputs |= {("tail", number, place): block for place, block in enumerate(family.blocks)}
+            family.factor(rates.tails, lanes)
+            inputs |= {("tail", number, place): block for place, block in enumerate(family.factors.blocks)}
         bound = self.program.bind(lanes)
         bound.run(inputs)
         if self._factors is None or self._factors.shape != (lanes, steps, modes):

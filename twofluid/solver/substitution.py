@@ -254,8 +254,8 @@ class _TailSubstitution:
     """One family of tails in the two passes."""
 
     def __init__(self, family: Family, shape: tuple, load: np.ndarray, stages: np.ndarray):
-        sets, size = len(family.blocks), family.kind.size
-        factors = family.factors
+        factors, size = family.factors, family.kind.size
+        sets = len(factors.blocks)
         self._share = _by_step(factors.share, shape, (sets, 2 * size, STAGES))
         self._feed = _by_step(factors.feed, shape, (sets, 2 * size, STAGES))
         self._turn = _by_step(factors.turn, shape, (sets, 2, 2, size))

@@ -68,21 +68,17 @@ class EigenTail:
         through = (exit_ * entrance)[:, None] * powers[:, :STAGES]
         self._through = np.concatenate([through.real, -through.imag]).T.copy()
 
-    def solve(self, rates: TailRates, room: "_Room", block: np.ndarray, factors: "TailFactors", number: int) -> None:
+    def solve(self, rates: TailRates, factors: "TailFactors", number: int) -> None:
         """Solve the stage equations of all members for many lanes.
 
         Parameters
         ----------
         rates : TailRates
-        room : _Room
-            For what is worked out on the way.
-        block : array, shape (stage, stage, lane)
-            Filled with the rate of the sink by the driver through the tail.
         factors : TailFactors
-            Filled with the factors of these rates.
+            Set `number` of them is filled.
         number : int
-            Where among the factors.
         """
+        room, block = factors.room, factors.blocks[number]
         pace = np.broadcast_to(rates.pace, block.shape[1:])
         adjugate, determinant = room.adjugate, room.determinant
         _expand(pace, np.diag(INVERSE_WEIGHTS)[:, None] + rates.damping, adjugate, determinant)
@@ -163,7 +159,7 @@ class _Room:
 
 
 class TailFactors:
-    """What the substitution needs of the tails of one kind, set by set.
+    """What elimination and substitution need of the tails of one kind, set by set, for one number of lanes.
 
     Attributes
     ----------
@@ -173,11 +169,15 @@ class TailFactors:
         What becomes of their old state by itself.
     feed : array, shape (set, 2, size, stage, lane)
         What the driver's stages add to that.
+    blocks : list of array, shape (stage, stage, lane)
+        Rate of the sink by the driver through the tail.
     """
 
     def __init__(self, sets: int, size: int, lanes: int):
+        self.lanes, self.room = lanes, _Room(size, lanes)
         self.share, self.feed = np.empty((2, sets, 2, size, STAGES, lanes))
         self.turn = np.empty((sets, 2, 2, size, lanes))
+        self.blocks = list(np.empty((sets, STAGES, STAGES, lanes)))  # kept: the elimination knows arrays by identity
 
 
 class Family:
@@ -196,9 +196,8 @@ class Family:
     ----------
     set_of : sequence of int
         Which set of factors each tail has.
-    blocks : list of array, shape (stage, stage, lane)
-        Rate of the sinks by the drivers through the tails, set by set.
     factors : TailFactors
+        Of the last stretch; before the first, of one lane.
     """
 
     def __init__(self, tails: Sequence[Tail], places: Sequence[int], sample: Sequence[TailRates]):
@@ -206,20 +205,17 @@ class Family:
         shared = len({id(sample[place]) for place in places}) == 1
         self._sets = places[:1] if shared else places  # tails whose rates are worked out
         self.set_of = [0] * len(places) if shared else range(len(places))
-        self.lanes = 0
+        self.factors = self._room_for(1)
 
-    def prepare(self, lanes: int) -> None:
-        """Make room for the factors of so many lanes."""
-        if self.lanes == lanes:
-            return
-        self.lanes, sets = lanes, len(self._sets)
-        self.factors, self._room = TailFactors(sets, self.kind.size, lanes), _Room(self.kind.size, lanes)
-        self.blocks = list(np.empty((sets, STAGES, STAGES, lanes)))  # kept: the elimination knows arrays by identity
+    def _room_for(self, lanes: int) -> TailFactors:
+        return TailFactors(len(self._sets), self.kind.size, lanes)
 
-    def factor(self, rates: Sequence[TailRates]) -> None:
-        """Work out all factors."""
-        for number, (place, block) in enumerate(zip(self._sets, self.blocks, strict=True)):
-            self.kind.solve(rates[place], self._room, block, self.factors, number)
+    def factor(self, rates: Sequence[TailRates], lanes: int) -> None:
+        """Work out all factors for so many lanes."""
+        if self.factors.lanes != lanes:
+            self.factors = self._room_for(lanes)
+        for number, place in enumerate(self._sets):
+            self.kind.solve(rates[place], self.factors, number)
 
     def coordinates(self, state: np.ndarray) -> np.ndarray:
         """Take the coordinates from a state, shape (unknown, mode): shape (tail, 2 size, mode)."""
